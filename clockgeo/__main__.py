@@ -1,0 +1,5 @@
+"""`python -m clockgeo` is the same as the `clockgeo` command."""
+
+from clockgeo.cli import main
+
+main()

@@ -1,0 +1,1 @@
+"""The campaign document, from reading and checking to results."""

@@ -1,0 +1,1 @@
+"""The frequency wing: records, screening, stability, noise and the uncertainty of a mean."""

@@ -1,0 +1,1 @@
+"""The gravity wing: potentials, heights, tide systems, tides and geoid grids."""

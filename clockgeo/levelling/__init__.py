@@ -1,0 +1,1 @@
+"""The hall: where a fractional frequency becomes a potential difference."""

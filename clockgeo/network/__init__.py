@@ -1,0 +1,1 @@
+"""Adjustment of everything that speaks of the same potential."""

@@ -1,0 +1,1 @@
+"""Before the survey: prediction, optimal use of days, simulation."""

@@ -1,0 +1,1 @@
+"""Results as pictures, tables and one page; computes nothing."""
