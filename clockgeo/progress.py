@@ -32,7 +32,7 @@ def track(steps: Iterable[T], label: str, total: int | None = None) -> Iterator[
     """
     listener = _listener.get()
     if total is None and hasattr(steps, "__len__"):
-        total = len(steps)
+        total = len(steps)  # type: ignore[arg-type]
     yield from steps if listener is None else listener(steps, label, total)
 
 
