@@ -18,7 +18,13 @@ class Table(BaseModel):
     """
 
     model_config = ConfigDict(
-        extra="forbid", frozen=True, allow_inf_nan=False, use_attribute_docstrings=True
+        extra="forbid",
+        frozen=True,
+        allow_inf_nan=False,
+        use_attribute_docstrings=True,
+        validate_by_name=True,
+        validate_by_alias=True,
+        serialize_by_alias=True,
     )
 
 

@@ -12,6 +12,7 @@ from __future__ import annotations
 from collections.abc import Hashable, Mapping
 from dataclasses import dataclass
 from functools import cached_property
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -111,7 +112,7 @@ class Solution:
         return _root(weights @ (self.model.noise @ weights))
 
 
-def _root(variance: float) -> float:
+def _root(variance: Any) -> float:
     """Square root of a variance that rounding may have put just below zero."""
     return float(np.sqrt(max(float(variance), 0.0)))
 

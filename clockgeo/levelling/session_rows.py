@@ -1,0 +1,233 @@
+"""From session means to rows of the linear model: signs, transfers to the marker, shared effects.
+
+For the numerator clock n at site B and the denominator clock d at site A the row reads, in m² s⁻²,
+
+    c² y - (t_B - t_A) = C_B - C_A + c² r + loads · z + noise,
+
+where t is the potential difference from marker to atoms, r the error of the nominal ratio of two
+different transitions, and the loads are those of `effects.loading_of`.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Hashable, Mapping, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from clockgeo.gravity import marker_to_atoms, normal_gravity
+from clockgeo.levelling.effects import EffectKey, loading_of
+from clockgeo.levelling.linear_model import ModelBuilder
+from clockgeo.levelling.redshift import potential_from_shift
+from clockgeo.levelling.stations import Clock, Link, Site
+
+__all__ = [
+    "SITE_TRANSFER",
+    "TIDE",
+    "RatioPrior",
+    "SessionMean",
+    "add_known_number",
+    "add_session_rows",
+    "number_of",
+    "ratio_of",
+    "stays_of",
+    "systematic_loads",
+    "transfer_difference",
+]
+
+TIDE = "tide model"
+SITE_TRANSFER = "marker to atoms"
+_U_UNMEASURED_GRAVITY = 2e-3
+"""m s⁻²: what normal gravity may be off at a place where gravity was not measured (200 mGal)."""
+
+
+@dataclass(frozen=True)
+class SessionMean:
+    """What one session says, before any solution.
+
+    Attributes
+    ----------
+    id : str
+    numerator, denominator : Clock
+    numerator_site, denominator_site : Site
+    links : tuple of Link
+    start_ns : int
+        Start in TAI nanoseconds; orders the stays of a clock.
+    y : float
+        Mean fractional frequency with all corrections applied.
+    u_tide : float
+        Standard uncertainty of the tide correction, with the sign of the correction: one model
+        serves all sessions, so this is one variable.
+    """
+
+    id: str
+    numerator: Clock
+    numerator_site: Site
+    denominator: Clock
+    denominator_site: Site
+    links: tuple[Link, ...]
+    start_ns: int
+    y: float
+    u_tide: float = 0.0
+
+
+@dataclass(frozen=True)
+class RatioPrior:
+    """Prior knowledge of a nominal ratio: standard uncertainty `u`, fractional."""
+
+    u: float
+
+
+def number_of(site: str) -> Hashable:
+    """Name of the unknown geopotential number of a site's marker."""
+    return ("number", site)
+
+
+def ratio_of(numerator: Clock, denominator: Clock) -> tuple[Hashable, float] | None:
+    """Name and sign of the nominal-ratio error between two clocks; None for one species.
+
+    To first order the error of B/A is minus that of A/B, so both share one unknown.
+    """
+    n, d = numerator.species, denominator.species
+    if n == d:
+        return None
+    return ("ratio", *sorted((n, d))), 1.0 if n < d else -1.0
+
+
+def stays_of(means: Sequence[SessionMean]) -> dict[tuple[str, str], str]:
+    """Name the stay of each clock in each session: (clock, session) -> stay.
+
+    A stay lasts from a clock's first session at a site to its first session elsewhere; coming
+    back begins a new stay.
+    """
+    stays: dict[tuple[str, str], str] = {}
+    last: dict[str, tuple[str, int]] = {}
+    for mean in sorted(means, key=lambda m: (m.start_ns, m.id)):
+        for clock, site in (
+            (mean.numerator, mean.numerator_site),
+            (mean.denominator, mean.denominator_site),
+        ):
+            place, count = last.get(clock.id, ("", 0))
+            last[clock.id] = (site.id, count + (place != site.id))
+            stays[clock.id, mean.id] = f"stay {last[clock.id][1]} at {site.id}"
+    return stays
+
+
+def systematic_loads(
+    mean: SessionMean, stays: Mapping[tuple[str, str], str]
+) -> dict[Hashable, float]:
+    """All effects that act on a session, with sign, in m² s⁻² (clocks, links, tide, transfer)."""
+    loads: dict[Hashable, float] = {}
+    owners = [(mean.numerator, 1.0), (mean.denominator, -1.0), *((link, 1.0) for link in mean.links)]
+    for owner, sign in owners:
+        stay = stays.get((owner.id, mean.id), "")
+        parts = loading_of(
+            owner.effects, owner=owner.id, stay=stay, session=mean.id, sign=sign
+        )
+        for key, load in parts.items():
+            loads[key] = loads.get(key, 0.0) + potential_from_shift(load)
+    if mean.u_tide:
+        loads[EffectKey("solid Earth", TIDE)] = potential_from_shift(mean.u_tide)
+    for clock, site, sign in _placed(mean):
+        for key, load in _transfer_loads(site, clock).items():
+            loads[key] = loads.get(key, 0.0) + sign * load
+    return {key: load for key, load in loads.items() if load}
+
+
+def _placed(mean: SessionMean) -> tuple[tuple[Clock, Site, float], tuple[Clock, Site, float]]:
+    return (
+        (mean.numerator, mean.numerator_site, 1.0),
+        (mean.denominator, mean.denominator_site, -1.0),
+    )
+
+
+def _gravity(site: Site) -> tuple[float, float]:
+    """Gravity at the marker and its u; normal gravity where it was not measured."""
+    if site.gravity is not None:
+        return site.gravity, site.u_gravity
+    return float(normal_gravity(site.latitude, site.ellipsoidal_height or 0.0)), _U_UNMEASURED_GRAVITY
+
+
+def transfer_difference(mean: SessionMean) -> float:
+    """Marker-to-atoms potential difference of the numerator minus the denominator, m² s⁻²."""
+    return sum(sign * _transfer(site, clock) for clock, site, sign in _placed(mean))
+
+
+def _transfer(site: Site, clock: Clock) -> float:
+    """Potential difference from marker to atoms in m² s⁻²."""
+    gravity, _ = _gravity(site)
+    rise = site.atoms_height(clock.id)
+    return float(marker_to_atoms(rise, gravity=gravity, gradient=site.gravity_gradient))
+
+
+def _transfer_loads(site: Site, clock: Clock) -> dict[EffectKey, float]:
+    gravity, u_gravity = _gravity(site)
+    return {
+        EffectKey(clock.id, f"{SITE_TRANSFER}, height", site.id): gravity
+        * site.u_atoms_above_marker,
+        EffectKey(site.id, f"{SITE_TRANSFER}, gravity"): site.atoms_height(clock.id) * u_gravity,
+    }
+
+
+def add_session_rows(
+    builder: ModelBuilder,
+    means: Sequence[SessionMean],
+    covariance: ArrayLike,
+    *,
+    ratios: Mapping[Hashable, RatioPrior] | None = None,
+) -> NDArray[np.float64]:
+    """Add one row per session, with the statistical covariance of all of them.
+
+    Parameters
+    ----------
+    builder : ModelBuilder
+        Where the rows go.
+    means : sequence of SessionMean, length K
+        What was measured.
+    covariance : array, shape (K, K)
+        Statistical covariance of the means, in fractional frequency squared.
+    ratios : mapping, optional
+        Prior knowledge of nominal ratios by the name `ratio_of` gives them; a ratio without an
+        entry is unknown and estimated.
+
+    Returns
+    -------
+    float array, shape (K,)
+        Systematic standard uncertainty of each session alone, in m² s⁻².
+    """
+    priors = dict(ratios or {})
+    stays = stays_of(means)
+    systematic = np.zeros(len(means))
+    for place, mean in enumerate(means):
+        loads = systematic_loads(mean, stays)
+        on: dict[Hashable, float] = {}
+        ratio = ratio_of(mean.numerator, mean.denominator)
+        if ratio is not None:
+            name, sign = ratio
+            if name in priors:
+                loads[EffectKey(str(name[1]), f"nominal ratio to {name[2]}")] = (  # type: ignore[index]
+                    potential_from_shift(sign * priors[name].u)
+                )
+            else:
+                on[name] = sign
+        value = potential_from_shift(mean.y)
+        for _, site, sign in _placed(mean):
+            on[number_of(site.id)] = on.get(number_of(site.id), 0.0) + sign
+        value -= transfer_difference(mean)
+        builder.observe(mean.id, kind="clock", value=value, on=on, effects=loads)
+        systematic[place] = float(np.sqrt(sum(load**2 for load in loads.values())))
+    scale = potential_from_shift(1.0) ** 2
+    builder.correlate([mean.id for mean in means], np.asarray(covariance) * scale)
+    return systematic
+
+
+def add_known_number(builder: ModelBuilder, site: str, value: float, u: float) -> None:
+    """Take the geopotential number of a site as known: `value` with standard uncertainty `u`."""
+    builder.observe(
+        f"known number of {site}",
+        kind="known",
+        value=value,
+        on={number_of(site): 1.0},
+        variance=u**2,
+    )
