@@ -1,1 +1,62 @@
-"""The frequency wing: records, screening, stability, noise and the uncertainty of a mean."""
+"""The frequency wing: records, screening, stability, noise and the uncertainty of a mean.
+
+Names are imported when first used, so that a command pays only for what it needs.
+"""
+
+from __future__ import annotations
+
+import importlib
+from typing import TYPE_CHECKING, Any
+
+if TYPE_CHECKING:
+    from clockgeo.frequency.layout import RecordLayout
+    from clockgeo.frequency.ratio import exact_number, fractional_frequency, ratio_text
+    from clockgeo.frequency.reading import read_record
+    from clockgeo.frequency.record import Record, Source
+    from clockgeo.frequency.sampling import Sampling, estimate_interval, sample_ticks
+    from clockgeo.frequency.transitions import RECOMMENDED_FREQUENCIES, Transition, find_transition
+
+_HOMES = {
+    # records
+    "RECOMMENDED_FREQUENCIES": "transitions",
+    "Record": "record",
+    "RecordLayout": "layout",
+    "Sampling": "sampling",
+    "Source": "record",
+    "Transition": "transitions",
+    "estimate_interval": "sampling",
+    "exact_number": "ratio",
+    "find_transition": "transitions",
+    "fractional_frequency": "ratio",
+    "ratio_text": "ratio",
+    "read_record": "reading",
+    "sample_ticks": "sampling",
+}
+"""Public name -> module of this package that holds it. No name may equal a module's."""
+
+__all__ = [
+    "RECOMMENDED_FREQUENCIES",
+    "Record",
+    "RecordLayout",
+    "Sampling",
+    "Source",
+    "Transition",
+    "estimate_interval",
+    "exact_number",
+    "find_transition",
+    "fractional_frequency",
+    "ratio_text",
+    "read_record",
+    "sample_ticks",
+]
+
+
+def __getattr__(name: str) -> Any:
+    if name not in _HOMES:
+        message = f"module {__name__!r} has no attribute {name!r}"
+        raise AttributeError(message)
+    return getattr(importlib.import_module(f"{__name__}.{_HOMES[name]}"), name)
+
+
+def __dir__() -> list[str]:
+    return sorted([*globals(), *_HOMES])
