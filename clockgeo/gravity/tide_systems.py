@@ -162,7 +162,7 @@ def tide_system_shift(
     ellipsoid: W_mean = W_zero + Wp; W_zero = W_free + k Wp in space and + (k - h) Wp on the crust;
     C changes as -W, H as -W/γ of the crust; N_mean = N_zero + Wp/γ, N_zero = N_free + k Wp/γ;
     h_mean = h_zero = h_free + h Wp/γ; g_mean = g_zero - 2 Wp/r, g_zero = g_free - (δ - 1) 2 Wp/r.
-    Ekman 1989, Bull. Géod. 63:281; Mäkinen 2021, J. Geod. 95:106. Round trips are exact to rounding.
+    Ekman 1989, Bull. Géod. 63:281; Mäkinen 2021, J. Geod. 95:106. Round trips return the value.
     """
     what = _quantity(quantity)
     start, end = _system(source), _system(target)
@@ -203,7 +203,7 @@ def convert_tide_system(
     ...     748.0, 52.3, quantity="geopotential_number", source="zero_tide", target="mean_tide"
     ... )
     >>> round(mean, 4)
-    748.8409
+    748.841
     """
     shift = tide_system_shift(
         quantity,
