@@ -76,8 +76,16 @@ class Record:
                 raise DataError(f"the {label} do not increase", where=self.name)
         if not np.all(np.isfinite(self.y[self.usable])):
             raise DataError("a usable row holds no finite value", where=self.name)
-        for column in columns:
-            column.flags.writeable = False
+        for label in ("tai_ns", "y", "usable", "tick", "u"):
+            self._lock(label)
+
+    def _lock(self, label: str) -> None:
+        """Keep a read-only view, so that the record cannot change and its maker's array may."""
+        column = getattr(self, label)
+        if column is not None:
+            view = column.view()
+            view.flags.writeable = False
+            object.__setattr__(self, label, view)
 
     def __len__(self) -> int:
         return int(self.y.size)
