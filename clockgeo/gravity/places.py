@@ -2,14 +2,50 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
+
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from clockgeo.errors import DataError
 
-__all__ = ["checked_gravity", "checked_height", "checked_latitude", "checked_longitude", "plain"]
+__all__ = [
+    "Place",
+    "checked_gravity",
+    "checked_height",
+    "checked_latitude",
+    "checked_longitude",
+    "plain",
+]
 
 _LOWEST, _HIGHEST = -12_000.0, 9_000.0  # m: below the deepest hole, above the highest peak
+
+
+@dataclass(frozen=True)
+class Place:
+    """A point by its geodetic coordinates.
+
+    Attributes
+    ----------
+    latitude, longitude : float
+        Degrees, north and east positive.
+    ellipsoidal_height : float
+        m.
+
+    Raises
+    ------
+    DataError
+        If a coordinate is out of range.
+    """
+
+    latitude: float
+    longitude: float
+    ellipsoidal_height: float = 0.0
+
+    def __post_init__(self) -> None:
+        checked_latitude(self.latitude)
+        checked_longitude(self.longitude)
+        checked_height(self.ellipsoidal_height)
 
 
 def checked_latitude(latitude: ArrayLike) -> NDArray[np.float64]:
