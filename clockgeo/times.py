@@ -98,7 +98,7 @@ def _split_utc(tai_ns: ArrayLike) -> tuple[NDArray[np.int64], NDArray[np.int64]]
 def mjd_utc(tai_ns: ArrayLike) -> NDArray[np.float64]:
     """Modified Julian Date (UTC) as float64, good to about 1 µs; for display and files only."""
     day, nanosecond = _split_utc(tai_ns)
-    return np.asarray(day + np.minimum(nanosecond, DAY_NS - 1) / DAY_NS)
+    return np.asarray(day + np.minimum(nanosecond, DAY_NS - 1000) / DAY_NS)
 
 
 def iso_utc(tai_ns: int, *, digits: int = 3) -> str:

@@ -132,9 +132,7 @@ def _known_keys(location: tuple[int | str, ...]) -> list[str]:
     for step in location:
         if isinstance(step, int) or table is None:
             continue
-        field = next(
-            (f for name, f in table.model_fields.items() if step in (name, f.alias)), None
-        )
+        field = next((f for name, f in table.model_fields.items() if step in (name, f.alias)), None)
         table = _table_in(field.annotation) if field else None
     if table is None:
         return []
@@ -142,7 +140,7 @@ def _known_keys(location: tuple[int | str, ...]) -> list[str]:
 
 
 def _table_in(annotation: Any) -> type[BaseModel] | None:
-    """Return the table type inside an annotation such as ``tuple[Site, ...]`` or ``Head | None``."""
+    """Return the table type inside an annotation such as ``tuple[Site, ...]``."""
     if isinstance(annotation, type) and issubclass(annotation, BaseModel):
         return annotation
     if get_origin(annotation) in (tuple, list, Union, UnionType):

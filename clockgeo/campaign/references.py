@@ -8,6 +8,8 @@ from itertools import combinations
 from typing import Any
 
 from clockgeo.campaign.schema import Campaign, Session
+from clockgeo.errors import DataError
+from clockgeo.frequency import find_transition
 
 __all__ = ["reference_problems"]
 
@@ -114,18 +116,15 @@ def _overlap(first: Session, second: Session) -> bool:
 
 
 def _clocks(campaign: Campaign) -> Iterator[str]:
-    from clockgeo.frequency import TRANSITIONS
-
     for clock in campaign.clocks:
         place = f"[[clock]] {clock.id!r}"
         if clock.transition is None and clock.nominal_frequency is None:
             yield f"{place}: needs a transition (such as '87Sr') or a nominal_frequency in Hz"
-        elif clock.nominal_frequency is None and clock.transition not in TRANSITIONS:
-            yield (
-                f"{place}: transition {clock.transition!r} is not in the list of recommended "
-                f"frequencies; {_nearest(str(clock.transition), TRANSITIONS)} "
-                "Or give nominal_frequency"
-            )
+        elif clock.nominal_frequency is None and clock.transition is not None:
+            try:
+                find_transition(clock.transition)
+            except DataError as error:
+                yield f"{place}: {error}"
 
 
 def _truth(campaign: Campaign) -> Iterator[str]:

@@ -168,9 +168,9 @@ class Truth(Table):
 
     geopotential_numbers: dict[Identifier, float]
     """Site -> true C of the marker in m² s⁻², in the document's zero level and tide system."""
-    nominal_ratio_errors: dict[Identifier, float] = {}
+    nominal_ratio_errors: dict[Identifier, float] = Field(default_factory=dict)
     """Species of the numerator clock "/" that of the denominator -> error of the nominal ratio."""
-    instability: dict[Identifier, NoiseModel] = {}
+    instability: dict[Identifier, NoiseModel] = Field(default_factory=dict)
     """Clock or link -> true noise, where it differs from the stated model."""
     session_scatter: NonNegative = 0.0
     """Standard deviation of an extra offset drawn for each session, fractional."""

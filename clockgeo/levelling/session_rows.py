@@ -119,12 +119,14 @@ def systematic_loads(
 ) -> dict[Hashable, float]:
     """All effects that act on a session, with sign, in m² s⁻² (clocks, links, tide, transfer)."""
     loads: dict[Hashable, float] = {}
-    owners = [(mean.numerator, 1.0), (mean.denominator, -1.0), *((link, 1.0) for link in mean.links)]
+    owners = [
+        (mean.numerator, 1.0),
+        (mean.denominator, -1.0),
+        *((link, 1.0) for link in mean.links),
+    ]
     for owner, sign in owners:
         stay = stays.get((owner.id, mean.id), "")
-        parts = loading_of(
-            owner.effects, owner=owner.id, stay=stay, session=mean.id, sign=sign
-        )
+        parts = loading_of(owner.effects, owner=owner.id, stay=stay, session=mean.id, sign=sign)
         for key, load in parts.items():
             loads[key] = loads.get(key, 0.0) + potential_from_shift(load)
     if mean.u_tide:
@@ -146,7 +148,9 @@ def _gravity(site: Site) -> tuple[float, float]:
     """Gravity at the marker and its u; normal gravity where it was not measured."""
     if site.gravity is not None:
         return site.gravity, site.u_gravity
-    return float(normal_gravity(site.latitude, site.ellipsoidal_height or 0.0)), _U_UNMEASURED_GRAVITY
+    return float(
+        normal_gravity(site.latitude, site.ellipsoidal_height or 0.0)
+    ), _U_UNMEASURED_GRAVITY
 
 
 def transfer_difference(mean: SessionMean) -> float:

@@ -27,7 +27,7 @@ class Site(Table):
     """Standard uncertainty of the ellipsoidal height in m."""
     atoms_above_marker: float = Field(default=0.0, ge=-2_000.0, le=2_000.0)
     """Height of a clock's atoms above the marker in m."""
-    atoms_of: dict[Identifier, float] = {}
+    atoms_of: dict[Identifier, float] = Field(default_factory=dict)
     """The same for single clocks that stand differently: clock id -> m."""
     u_atoms_above_marker: Uncertainty = 0.0
     """Standard uncertainty of the height of the atoms in m."""

@@ -129,7 +129,7 @@ def simulate_sessions(
     streams = [np.random.default_rng(s) for s in session_seed.spawn(len(means))]
     steps = zip(campaign.sessions, means, streams, strict=True)
     for session, mean, stream in track(steps, "drawing records", len(means)):
-        offset = _true_shift(campaign, truth, mean) - _corrections(mean)
+        offset = _true_shift(truth, mean) - _corrections(mean)
         for key, load in systematic_loads(mean, stays).items():
             if key not in effects:
                 effects[key] = float(effect_stream.normal())
@@ -220,7 +220,7 @@ def _true_mean(campaign: Campaign, session: Session) -> SessionMean:
     )
 
 
-def _true_shift(campaign: Campaign, truth: Truth, mean: SessionMean) -> float:
+def _true_shift(truth: Truth, mean: SessionMean) -> float:
     """Fractional frequency that the true potentials and nominal ratio give."""
     numbers = truth.geopotential_numbers
     difference = numbers[mean.numerator_site.id] - numbers[mean.denominator_site.id]

@@ -4,11 +4,11 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
+
+from checks import assert_close, assert_published
 from clockgeo.errors import DataError
 from clockgeo.levelling.linear_model import ModelBuilder
 from clockgeo.levelling.solution import solve
-
-from checks import assert_close, assert_published
 
 UNIT = 1.0
 

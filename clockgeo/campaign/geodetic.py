@@ -1,0 +1,191 @@
+"""The geodetic side of the comparison: ΔC from heights and a geoid, or known numbers."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+from pathlib import Path
+
+import numpy as np
+
+from clockgeo.campaign.results import Comparison
+from clockgeo.campaign.schema import Campaign, GeoidSource
+from clockgeo.errors import DataError
+from clockgeo.files import shipped_grid
+from clockgeo.gravity import (
+    GeoidModel,
+    TideSystem,
+    convert_tide_system,
+    number_of,
+    open_geoid,
+    zero_level_shift,
+)
+from clockgeo.levelling.session_rows import number_of as unknown_number
+from clockgeo.levelling.solution import Solution
+from clockgeo.levelling.stations import Site
+
+__all__ = ["GeodeticNumbers", "compare", "geodetic_numbers", "geoid_path"]
+
+
+@dataclass(frozen=True, eq=False)
+class GeodeticNumbers:
+    """Geopotential numbers of sites from geodesy alone.
+
+    Attributes
+    ----------
+    sites : tuple of str, length K
+    values : float array, shape (K,)
+        C in m² s⁻², in the campaign's zero level and tide system.
+    covariance : float array, shape (K, K)
+        m⁴ s⁻⁴.
+    source : str
+        Where they come from.
+    """
+
+    sites: tuple[str, ...]
+    values: np.ndarray
+    covariance: np.ndarray
+    source: str
+
+    def difference(self, first: str, second: str) -> tuple[float, float]:
+        """Second minus first, and its u, in m² s⁻²."""
+        weights = np.array([float(s == second) - float(s == first) for s in self.sites])
+        variance = float(weights @ self.covariance @ weights)
+        return float(weights @ self.values), variance**0.5
+
+
+def geoid_path(source: GeoidSource, folder: Path) -> Path:
+    """Find the grid beside the document, or among those that come with clockgeo."""
+    beside = folder / source.grid
+    if beside.is_file():
+        return beside
+    try:
+        return shipped_grid(source.grid)
+    except FileNotFoundError:
+        raise DataError(
+            "the geoid grid is not there",
+            value=source.grid,
+            where="[geoid], grid",
+            advice="Give a path relative to the document, or the name of a shipped grid",
+        ) from None
+
+
+def geodetic_numbers(
+    campaign: Campaign, folder: Path, solved: Sequence[str]
+) -> GeodeticNumbers | None:
+    """Geopotential numbers of the solved sites from ellipsoidal heights and the geoid.
+
+    Returns None where the document names no geoid or fewer than two sites have ellipsoidal heights.
+
+    Raises
+    ------
+    ConventionError
+        If the grid's conventions are missing or do not fit.
+    DataError
+        If the grid is not there or a site lies outside it.
+    """
+    sites = [campaign.site(name) for name in solved]
+    placed = [site for site in sites if site.ellipsoidal_height is not None]
+    if campaign.geoid is None or len(placed) < 2:
+        return None
+    source = campaign.geoid
+    model = open_geoid(
+        geoid_path(source, folder),
+        quantity=source.quantity,
+        tide_system=source.tide_system,
+        zero_level=source.zero_level,
+        ellipsoid=source.ellipsoid,
+        interpolation=source.interpolation,
+        u=source.u,
+        correlation_length=source.correlation_length,
+    )
+    latitude = np.array([site.latitude for site in placed])
+    longitude = np.array([site.longitude for site in placed])
+    separation = np.asarray(model.sample(latitude, longitude))
+    errors = model.covariance(latitude, longitude)
+    values, slopes = np.zeros(len(placed)), np.zeros(len(placed))
+    for place, site in enumerate(placed):
+        values[place], slopes[place] = _number(campaign, model, site, float(separation[place]))
+    own = np.diag([site.u_ellipsoidal_height**2 for site in placed])
+    return GeodeticNumbers(
+        sites=tuple(site.id for site in placed),
+        values=values,
+        covariance=np.outer(slopes, slopes) * (errors + own),
+        source=f"ellipsoidal heights and {source.grid}",
+    )
+
+
+def _number(
+    campaign: Campaign, model: GeoidModel, site: Site, separation: float
+) -> tuple[float, float]:
+    """C of one site in the campaign's conventions, and dC/dh."""
+    target = campaign.head.tide_system
+    given = campaign.head.ellipsoidal_tide_system or target
+    assert site.ellipsoidal_height is not None
+    ellipsoidal = _in_system("ellipsoidal_height", site.ellipsoidal_height, site, given, target)
+    undulation = _in_system(model.quantity, separation, site, model.tide_system, target)
+    height = ellipsoidal - undulation
+    kind = "normal" if model.quantity == "height_anomaly" else "orthometric"
+    if kind == "orthometric" and site.gravity is None:
+        raise DataError(
+            "an orthometric height needs gravity to become a geopotential number",
+            where=f"site {site.id}",
+            advice="Give the site's gravity, or use a quasigeoid",
+        )
+    number, higher = (
+        number_of(value, kind=kind, latitude=site.latitude, gravity=site.gravity)[0]
+        for value in (height, height + 1.0)
+    )
+    shift = zero_level_shift(source=model.zero_level, target=campaign.head.zero_level)
+    return number + shift, higher - number
+
+
+def _in_system(
+    quantity: str, value: float, site: Site, source: TideSystem, target: TideSystem
+) -> float:
+    return float(
+        convert_tide_system(value, site.latitude, quantity=quantity, source=source, target=target)
+    )
+
+
+def compare(
+    campaign: Campaign,
+    solution: Solution,
+    pairs: Sequence[tuple[str, str]],
+    geodetic: GeodeticNumbers | None,
+) -> Iterator[Comparison]:
+    """Set the clocks' differences against geodesy, for every pair that has both."""
+    sources = [source for source in (geodetic, _known_numbers(campaign)) if source is not None]
+    for source in sources:
+        for first, second in pairs:
+            if first not in source.sites or second not in source.sites:
+                continue
+            combination = {unknown_number(second): 1.0, unknown_number(first): -1.0}
+            clock, u_clock = solution.value(combination), solution.u(combination)
+            value, u_value = source.difference(first, second)
+            u = float(np.hypot(u_clock, u_value))
+            yield Comparison(
+                from_site=first,
+                to_site=second,
+                clock=clock,
+                u_clock=u_clock,
+                geodetic=value,
+                u_geodetic=u_value,
+                difference=clock - value,
+                u=u,
+                normalised_error=(clock - value) / u if u else 0.0,
+                source=source.source,
+            )
+
+
+def _known_numbers(campaign: Campaign) -> GeodeticNumbers | None:
+    """Numbers stated in the document for sites beside the reference."""
+    known = [site for site in campaign.sites if site.geopotential_number is not None]
+    if len(known) < 2:
+        return None
+    return GeodeticNumbers(
+        sites=tuple(site.id for site in known),
+        values=np.array([site.geopotential_number for site in known]),
+        covariance=np.diag([site.u_geopotential_number**2 for site in known]),
+        source="geopotential numbers stated in the document",
+    )
