@@ -59,6 +59,9 @@ class SiteTransfer:
     gravity_at_end: float
     method: str
 
+    def __float__(self) -> float:
+        return self.geopotential_difference
+
 
 class RockLayer(Table):
     """A layer of ground between two levels of a shaft."""
