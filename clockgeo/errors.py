@@ -53,7 +53,8 @@ class ClockgeoError(Exception):
         if self.where is not None:
             first += f" (at {self.where})"
         rest = [part for part in (self.allowed, self.advice) if part]
-        return " ".join(sentence.rstrip(".") + "." for sentence in [first, *rest])
+        ended = (s if s.endswith("?") else s.rstrip(".") + "." for s in [first, *rest])
+        return " ".join(ended)
 
 
 class DataError(ClockgeoError):

@@ -18,7 +18,7 @@ class RecordLayout(Table):
     """Where a frequency record is and how it is to be read."""
 
     file: str | tuple[str, ...]
-    """File, or files, relative to the document; shell patterns such as `day*.txt.gz` are allowed."""
+    """File, or files, relative to the document; shell patterns such as `day*.gz` are allowed."""
     format: Literal["text", "netcdf"] | None = None
     """Kind of file; by its ending (`.nc` is netCDF) where not stated."""
     time: Literal["mjd", "iso8601"] = "mjd"

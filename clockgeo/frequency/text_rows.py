@@ -1,0 +1,272 @@
+"""Rows of a record from text: exact times and values, column by column.
+
+Whole columns are read as 128-bit decimals or floats; the few rows that do not parse that way (odd
+spellings, exponents, damage) are looked at one by one as exact numbers.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator
+from dataclasses import dataclass
+from fractions import Fraction
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from clockgeo.errors import DataError
+from clockgeo.frequency.layout import RecordLayout
+from clockgeo.frequency.ratio import (
+    decimal_places,
+    exact_number,
+    fractional_from_decimals,
+)
+from clockgeo.frequency.rows import BadRows, Rows
+from clockgeo.frequency.text_table import open_table, unpacked
+from clockgeo.times import DAY_NS, tai_from_iso, tai_from_mjd_utc
+
+if TYPE_CHECKING:
+    import polars as pl
+
+__all__ = ["text_rows"]
+
+_MJD_PLACES = 15
+_FIRST_MJD, _LAST_MJD = 41_317, 142_000
+_UNIX_EPOCH_MJD = 40_587
+_NOT_FINITE = {"nan", "inf", "infinity"}
+
+
+def text_rows(
+    content: bytes, layout: RecordLayout, *, nominal: Fraction | None, where: str, bad: BadRows
+) -> Rows:
+    """Read the rows of one text file.
+
+    Parameters
+    ----------
+    content : bytes
+        The file as stored, gzip'd or not.
+    layout : RecordLayout
+        What its columns mean.
+    nominal : Fraction or None
+        Nominal ratio, or carrier in Hz, that values are referred to; None for fractional values.
+    where : str
+        The file, for messages.
+    bad : BadRows
+        Gains the rows that cannot be used; they are left out of the result.
+
+    Raises
+    ------
+    DataError
+        If the file is not text, or has no such columns.
+    """
+    import polars as pl
+
+    table = open_table(unpacked(content, where=where), where=where)
+    columns: dict[str, tuple[int, pl.DataType]] = {
+        "time": (table.position(layout.time_column), _time_type(layout)),
+        "value": (table.position(layout.value_column), _value_type(layout, nominal)),
+    }
+    if layout.flag_column is not None:
+        columns["flag"] = (table.position(layout.flag_column), pl.String())
+    if layout.u_column is not None:
+        columns["u"] = (table.position(layout.u_column), pl.Float64())
+    frame, texts, lines = table.fields(columns)
+    tai, timed = _times(frame["time"], layout)
+    y = _values(frame["value"], layout, nominal)
+    u = None if layout.u_column is None else _fractional(frame["u"].to_numpy(), layout, nominal)
+    keep = timed.copy()
+    _tell_impossible_days(frame["time"], timed, lines, where=where, bad=bad)
+    if texts.height:
+        tai, y = tai.copy(), y.copy()
+        u = None if u is None else u.copy()
+        look = _SecondLook(layout, nominal, tai, y, u, keep)
+        for cells in _unread(frame, texts):
+            look.row(cells, f"{where}, line {lines[cells['row']]}", bad)
+    usable = ~np.isnan(y)
+    if layout.flag_column is not None:
+        usable &= _allowed(frame["flag"], layout)
+    rows = Rows(where, tai, y, usable, u, lines)
+    return rows if keep.all() else rows.kept(keep)
+
+
+def _time_type(layout: RecordLayout) -> pl.DataType:
+    import polars as pl
+
+    return pl.Decimal(38, _MJD_PLACES) if layout.time == "mjd" else pl.String()
+
+
+def _value_type(layout: RecordLayout, nominal: Fraction | None) -> pl.DataType:
+    import polars as pl
+
+    if layout.value == "ratio" and nominal is not None:
+        return pl.Decimal(38, decimal_places(nominal))
+    return pl.Float64()
+
+
+def _times(column: pl.Series, layout: RecordLayout) -> tuple[NDArray[np.int64], NDArray[np.bool_]]:
+    """TAI of every row, and where it is known."""
+    day, rest = _split_mjd(column) if layout.time == "mjd" else _split_iso(column)
+    known = (day >= _FIRST_MJD) & (day <= _LAST_MJD)
+    if not np.all(known):
+        day = np.where(known, day, _FIRST_MJD)
+    return tai_from_mjd_utc(day, rest), known
+
+
+def _split_mjd(column: pl.Series) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+    """Day number (-1 where null) and nanosecond of the day, rounded once."""
+    import polars as pl
+
+    steps = pl.col("time").to_physical()
+    one_day = pl.lit(10**_MJD_PLACES, dtype=pl.Int128)
+    parts = column.to_frame("time").select(
+        day=(steps // one_day).cast(pl.Int64, strict=False).fill_null(-1),
+        part=(steps % one_day).cast(pl.Int64).fill_null(0),
+    )
+    day = parts["day"].to_numpy()
+    # 86 400e9 ns a day over 1e15 steps a day is 864/10 000; the product stays below 2^63.
+    rest = (parts["part"].to_numpy() * 864 + 5_000) // 10_000
+    return day + (rest == DAY_NS), np.where(rest == DAY_NS, 0, rest)
+
+
+def _split_iso(column: pl.Series) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+    """Day number (-1 where the text is not plain UTC) and nanosecond of the day."""
+    import polars as pl
+
+    text = pl.col("time").str.strip_suffix("Z").str.replace(" ", "T", literal=True)
+    plain = (
+        pl.when(~pl.col("time").str.contains(":60", literal=True))
+        .then(text)
+        .str.strptime(pl.Datetime("ns"), "%Y-%m-%dT%H:%M:%S%.f", strict=False)
+    )
+    unix = column.to_frame("time").select(plain.cast(pl.Int64).alias("ns"))["ns"]
+    nanosecond = unix.fill_null(0).to_numpy()
+    day, rest = np.divmod(nanosecond, DAY_NS)
+    return np.where(unix.is_null().to_numpy(), -1, day + _UNIX_EPOCH_MJD), rest
+
+
+def _values(
+    column: pl.Series, layout: RecordLayout, nominal: Fraction | None
+) -> NDArray[np.float64]:
+    if layout.value == "ratio" and nominal is not None:
+        return fractional_from_decimals(column, nominal)
+    return _fractional(column.to_numpy(), layout, nominal)
+
+
+def _fractional(
+    values: NDArray[np.float64], layout: RecordLayout, nominal: Fraction | None
+) -> NDArray[np.float64]:
+    """Offsets in Hz as parts of the carrier, a u of ratios as a part of the nominal."""
+    if layout.value == "fractional" or nominal is None:
+        return values
+    return np.asarray(values / float(nominal))
+
+
+def _allowed(column: pl.Series, layout: RecordLayout) -> NDArray[np.bool_]:
+    """Rows whose flag is one of the stated ones, as text or as a number."""
+    import polars as pl
+
+    stated = {str(flag) for flag in layout.valid_flags}
+    numbers = {_number_or_none(flag) for flag in stated} - {None}
+    good = [
+        text
+        for text in column.unique().drop_nulls().to_list()
+        if text in stated or _number_or_none(text) in numbers
+    ]
+    return np.asarray(column.is_in(pl.Series(good, dtype=pl.String)).fill_null(False).to_numpy())
+
+
+def _number_or_none(text: str) -> Fraction | None:
+    try:
+        return exact_number(text)
+    except DataError:
+        return None
+
+
+def _tell_impossible_days(
+    column: pl.Series,
+    timed: NDArray[np.bool_],
+    lines: NDArray[np.int64],
+    *,
+    where: str,
+    bad: BadRows,
+) -> None:
+    """Report times that were read but lie outside the years of UTC."""
+    for row in np.flatnonzero(~timed & column.is_not_null().to_numpy()).tolist():
+        if column.dtype.is_decimal():
+            problem = f"MJD {column[row].normalize()} lies outside the years 1972 to 2247"
+            bad.add(f"{where}, line {lines[row]}", problem)
+
+
+def _unread(frame: pl.DataFrame, texts: pl.DataFrame) -> Iterator[dict[str, Any]]:
+    """Cells of the rows that need a second look: all those with a null but for a plain `nan`."""
+    import polars as pl
+
+    others = [name for name in frame.columns if name != "value"]
+    complete = frame.select(pl.all_horizontal(pl.col(others).is_not_null()))[:, 0]
+    word = pl.col("value").str.strip_chars("+-").str.to_lowercase().fill_null("")
+    plain_nan = (word == "nan") & complete.gather(texts["row"])
+    yield from texts.filter(~plain_nan).iter_rows(named=True)
+
+
+@dataclass(frozen=True)
+class _SecondLook:
+    """Reads single rows as exact numbers into the columns, or tells why it cannot."""
+
+    layout: RecordLayout
+    nominal: Fraction | None
+    tai: NDArray[np.int64]
+    y: NDArray[np.float64]
+    u: NDArray[np.float64] | None
+    keep: NDArray[np.bool_]
+
+    def row(self, cells: dict[str, Any], where: str, bad: BadRows) -> None:
+        """Read one row; blank rows are passed over."""
+        row = cells.pop("row")
+        self.keep[row] = False
+        if not any((text or "").strip() for text in cells.values()):
+            return
+        try:
+            self.tai[row] = self._time(cells["time"])
+            self.y[row] = self._value(cells["value"], "value")
+            if self.u is not None:
+                self.u[row] = self._value(cells["u"], "u")
+            if "flag" in cells and cells["flag"] is None:
+                raise DataError("the flag is missing")
+        except DataError as error:
+            bad.add(where, str(error.args[0]).rstrip("."))
+            return
+        self.keep[row] = True
+
+    def _time(self, text: str | None) -> int:
+        text = (text or "").strip()
+        if text.lower().strip("+-") in _NOT_FINITE:
+            raise DataError("the time is not finite", value=text)
+        if self.layout.time == "iso8601":
+            return tai_from_iso(text)
+        day, part = divmod(_number(text, "time"), 1)
+        rest = round(part * DAY_NS)
+        carried, rest = divmod(rest, DAY_NS)
+        return int(tai_from_mjd_utc(day + carried, rest))
+
+    def _value(self, text: str | None, column: str) -> float:
+        text = (text or "").strip()
+        if text.lower().strip("+-") == "nan":
+            return math.nan
+        number = _number(text, column)
+        if self.nominal is not None and self.layout.value != "fractional":
+            offset = self.nominal if (column, self.layout.value) == ("value", "ratio") else 0
+            return float((number - offset) / self.nominal)
+        return float(number)
+
+
+def _number(text: str, column: str) -> Fraction:
+    """Exact number of one cell."""
+    if not text:
+        raise DataError(f"the {column} is missing")
+    if text.lower().strip("+-") in _NOT_FINITE:
+        raise DataError(f"the {column} is not finite", value=text)
+    try:
+        return exact_number(text.replace("/", "|"))
+    except DataError:
+        raise DataError(f"the {column} is not a number", value=repr(text)) from None

@@ -1,0 +1,305 @@
+"""A text table as bytes: comments, header line, separator, and the columns a reader asks for."""
+
+from __future__ import annotations
+
+import difflib
+import gzip
+import re
+import zlib
+from collections.abc import Iterator, Mapping
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+from numpy.typing import NDArray
+
+from clockgeo.errors import DataError
+
+if TYPE_CHECKING:
+    import polars as pl
+
+__all__ = ["TextTable", "open_table", "unpacked"]
+
+_GZIP_MAGIC = b"\x1f\x8b"
+_CONTROL = re.compile(rb"[\x00-\x08\x0e-\x1f]")
+_NUMERIC = re.compile(r"[+-]?(\d|\.\d).*|[+-]?(nan|inf(inity)?)", re.IGNORECASE)
+_SAMPLED_LINES = 50
+
+
+def unpacked(content: bytes, *, where: str) -> bytes:
+    """Undo gzip, recognised by its first bytes, and check that this is text.
+
+    Raises
+    ------
+    DataError
+        If the file is empty, binary, or a damaged or truncated gzip.
+    """
+    if content.startswith(_GZIP_MAGIC):
+        try:
+            content = gzip.decompress(content)
+        except (EOFError, zlib.error, gzip.BadGzipFile) as error:
+            raise DataError(
+                f"the gzip file is truncated or damaged ({error})",
+                where=where,
+                advice="Copy the file again from its source",
+            ) from None
+    if not content.strip():
+        raise DataError("the file is empty", where=where)
+    if _CONTROL.search(content[:65_536]):
+        raise DataError(
+            "the file is binary, not text",
+            where=where,
+            allowed="Text, gzip'd text, or netCDF with the ending .nc",
+        )
+    return content.removeprefix(b"\xef\xbb\xbf")
+
+
+@dataclass(frozen=True)
+class TextTable:
+    """Where the rows of a text begin, and how their fields are separated.
+
+    Attributes
+    ----------
+    body : bytes
+        Everything from the first row on.
+    first_line : int
+        Number of the first row's line in the file, counted from 1.
+    separator : bytes
+        One byte; a blank stands for any run of blanks.
+    width : int
+        Fields of the first row.
+    names : tuple of str
+        Column names of the header line; empty without one.
+    where : str
+        The file, for messages.
+    """
+
+    body: bytes
+    first_line: int
+    separator: bytes
+    width: int
+    names: tuple[str, ...]
+    where: str
+
+    def position(self, column: int | str) -> int:
+        """Position, from 0, of a column given by number (from 1) or name.
+
+        Raises
+        ------
+        DataError
+            If the table has no such column.
+        """
+        if isinstance(column, int):
+            if column <= self.width:
+                return column - 1
+            raise DataError(
+                "there is no such column",
+                value=column,
+                where=self.where,
+                allowed=f"Columns 1 to {self.width}, counted from the first row",
+            )
+        if column in self.names:
+            return self.names.index(column)
+        near = difflib.get_close_matches(column, self.names, n=1, cutoff=0.4)
+        raise DataError(
+            "there is no column of this name",
+            value=repr(column),
+            where=self.where,
+            allowed=f"Names in the header: {', '.join(self.names)}" if self.names else None,
+            advice=f"Did you mean {near[0]!r}?" if near else "Give the column by its number",
+        )
+
+    def fields(
+        self, wanted: Mapping[str, tuple[int, pl.DataType]]
+    ) -> tuple[pl.DataFrame, pl.DataFrame, NDArray[np.int64]]:
+        """Read columns by position and type.
+
+        Parameters
+        ----------
+        wanted : mapping of name to (position from 0, polars type)
+            The columns to read.
+
+        Returns
+        -------
+        frame : polars DataFrame
+            A column a name; null where the text is not of the column's type.
+        texts : polars DataFrame
+            Column ``row`` and, as text, the columns of every row that holds a null.
+        lines : int64 array
+            Line number of each row of `frame`.
+        """
+        body, lines, width, places = self._regular(
+            {name: place for name, (place, _) in wanted.items()}
+        )
+        types = {name: kind for name, (_, kind) in wanted.items()}
+        frame = _parsed(body, width, places, types, self.separator)
+        if lines is None:
+            lines = np.arange(frame.height) + self.first_line
+        return frame, _texts_of_nulls(frame, body, width, places, self.separator), lines
+
+    def _regular(
+        self, places: dict[str, int]
+    ) -> tuple[bytes, NDArray[np.int64] | None, int, dict[str, int]]:
+        """Tidy rows without comments; their lines unless consecutive; width and places."""
+        body = self.body
+        if b"\r" in body:
+            body = body.replace(b"\r\n", b"\n").replace(b"\r", b"\n")
+        if self.separator == b" ":
+            rows = body.count(b"\n") + (not body.endswith(b"\n"))
+            tidy = body.count(b" ") == rows * (self.width - 1)
+        else:
+            tidy = b" " not in body
+        if tidy and max(places.values()) < self.width and not (b"#" in body or b'"' in body):
+            return body, None, self.width, places
+        return self._tidied(body, places)
+
+    def _tidied(
+        self, body: bytes, places: dict[str, int]
+    ) -> tuple[bytes, NDArray[np.int64], int, dict[str, int]]:
+        """The wanted fields of every row that is not blank or a comment, row by row."""
+        rows: list[bytes] = []
+        lines: list[int] = []
+        order = sorted(set(places.values()))
+        for number, line in enumerate(body.split(b"\n"), start=self.first_line):
+            text = line.partition(b"#")[0].strip()
+            if not text:
+                continue
+            parts = _split(text, self.separator)
+            fields = [parts[at].strip(b' \t"') if at < len(parts) else b"" for at in order]
+            rows.append(self.separator.join(fields))
+            lines.append(number)
+        moved = {name: order.index(at) for name, at in places.items()}
+        return b"\n".join(rows), np.array(lines, dtype=np.int64), len(order), moved
+
+
+def _parsed(
+    body: bytes,
+    width: int,
+    places: Mapping[str, int],
+    types: Mapping[str, pl.DataType],
+    separator: bytes,
+) -> pl.DataFrame:
+    import polars as pl
+
+    if not body:
+        return pl.DataFrame(schema=dict(types))
+    names = [f"column {position}" for position in range(width)]
+    at = {position: name for name, position in places.items()}
+    schema = {
+        name: types[at[position]] if position in at else pl.String()
+        for position, name in enumerate(names)
+    }
+    frame = pl.read_csv(
+        body,
+        has_header=False,
+        separator=separator.decode(),
+        quote_char=None,
+        schema=schema,
+        columns=sorted(at),
+        truncate_ragged_lines=True,
+        ignore_errors=True,
+        encoding="utf8-lossy",
+    )
+    return frame.select(pl.col(names[position]).alias(name) for name, position in places.items())
+
+
+def _texts_of_nulls(
+    frame: pl.DataFrame,
+    body: bytes,
+    width: int,
+    places: Mapping[str, int],
+    separator: bytes,
+) -> pl.DataFrame:
+    """The rows that hold a null, as text."""
+    import polars as pl
+
+    if not any(frame[name].null_count() for name in frame.columns):
+        return pl.DataFrame(schema={"row": pl.Int64(), **dict.fromkeys(places, pl.String())})
+    unread = frame.select(pl.any_horizontal(pl.all().is_null()))[:, 0]
+    texts = _parsed(body, width, places, dict.fromkeys(places, pl.String()), separator)
+    rows = pl.Series("row", np.arange(frame.height))
+    return texts.with_columns(rows).filter(unread)
+
+
+def open_table(content: bytes, *, where: str) -> TextTable:
+    """Find the header, the separator and the first row of a text.
+
+    The header is the first line whose fields are all words, or the last comment before the first
+    row.
+
+    Parameters
+    ----------
+    content : bytes
+        Text as `unpacked` gives it.
+    where : str
+        The file, for messages.
+
+    Raises
+    ------
+    DataError
+        If there is no row.
+    """
+    comment, header = b"", b""
+    starts = _content_lines(content)
+    for number, offset, line in starts:
+        if line.startswith(b"#"):
+            comment = line.lstrip(b"#").strip()
+            continue
+        if not header and _is_words(line):
+            header = line
+            continue
+        sample = [line, *_rows_after(starts)]
+        separator = _separator_of(sample)
+        width = len(_split(line, separator))
+        names = tuple(_words(header or comment, separator)) if header or comment else ()
+        return TextTable(content[offset:], number, separator, width, names, where)
+    raise DataError("the file holds no row", where=where)
+
+
+def _content_lines(content: bytes) -> Iterator[tuple[int, int, bytes]]:
+    """Line number, offset and stripped text of every line that is not blank."""
+    number, offset = 0, 0
+    while offset < len(content):
+        number += 1
+        end = content.find(b"\n", offset)
+        end = len(content) if end < 0 else end
+        line = content[offset:end].strip()
+        if line:
+            yield number, offset, line
+        offset = end + 1
+
+
+def _rows_after(lines: Iterator[tuple[int, int, bytes]]) -> list[bytes]:
+    sample: list[bytes] = []
+    for _, _, line in lines:
+        if not line.startswith(b"#"):
+            sample.append(line.partition(b"#")[0].strip())
+        if len(sample) == _SAMPLED_LINES:
+            break
+    return sample
+
+
+def _separator_of(rows: list[bytes]) -> bytes:
+    """Tab, semicolon or comma where most rows have it; else blanks."""
+    for separator in (b"\t", b";", b","):
+        if sum(separator in row for row in rows) > len(rows) / 2:
+            return separator
+    return b" "
+
+
+def _split(line: bytes, separator: bytes) -> list[bytes]:
+    return line.split() if separator == b" " else line.split(separator)
+
+
+def _words(line: bytes, separator: bytes) -> list[str]:
+    """Column names of a header; one written with another separator than the rows counts too."""
+    text = line.decode("utf-8", errors="replace")
+    mark = separator.decode()
+    parts = text.split(mark) if mark.strip() and mark in text else re.split(r"[,;\t ]+", text)
+    return [part.strip().strip('"') for part in parts]
+
+
+def _is_words(line: bytes) -> bool:
+    """Whether no field of the line starts like a number, as in a header."""
+    fields = re.split(r"[,;\s]+", line.decode("utf-8", errors="replace"))
+    return not any(_NUMERIC.fullmatch(field.strip('"')) for field in fields if field)
