@@ -22,6 +22,7 @@ __all__ = [
     "SECOND_NS",
     "iso_utc",
     "mjd_utc",
+    "mjd_utc_parts",
     "tai_from_iso",
     "tai_from_mjd_utc",
     "tt_julian_date",
@@ -93,6 +94,11 @@ def _split_utc(tai_ns: ArrayLike) -> tuple[NDArray[np.int64], NDArray[np.int64]]
     last_day = np.append(first_days[1:], _LAST_MJD + 1)[era] - 1 - _ORIGIN_MJD
     day = np.minimum(day, last_day)
     return day + _ORIGIN_MJD, utc - day * DAY_NS
+
+
+def mjd_utc_parts(tai_ns: ArrayLike) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+    """UTC day number (MJD) and ns of that day, exact; 86 400e9 ns and more in a leap second."""
+    return _split_utc(tai_ns)
 
 
 def mjd_utc(tai_ns: ArrayLike) -> NDArray[np.float64]:

@@ -177,8 +177,16 @@ def ratio_text(y: ArrayLike, nominal: Fraction, *, digits: int) -> list[str]:
         raise DataError("a fractional frequency is not small", value=worst, allowed="|y| < 1e-3")
     places = digits - _leading_digits(nominal)
     scaled = nominal * Fraction(10) ** places
-    steps = [round(scaled * (1 + Fraction(v))) if v == v else None for v in values.tolist()]
+    steps = [_nearest_step(scaled, v) if v == v else None for v in values.tolist()]
     return ["nan" if step is None else _decimal_text(step, places) for step in steps]
+
+
+def _nearest_step(scaled: Fraction, y: float) -> int:
+    """Integer nearest to scaled (1 + y), half to even; in integers, for `Fraction` is slow."""
+    n, d = y.as_integer_ratio()
+    numerator, denominator = scaled.numerator * (d + n), scaled.denominator * d
+    step, rest = divmod(numerator, denominator)
+    return step + (2 * rest > denominator or (2 * rest == denominator and step % 2))
 
 
 def _leading_digits(nominal: Fraction) -> int:
