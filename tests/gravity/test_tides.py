@@ -37,10 +37,9 @@ EPOCHS = [
 ]
 
 
-@pytest.mark.parametrize(
-    ("mjd", "latitude", "longitude", "moon2", "moon3", "sun2", "total"), EPOCHS
-)
-def test_four_epochs(mjd, latitude, longitude, moon2, moon3, sun2, total):
+@pytest.mark.parametrize("epoch", EPOCHS, ids=lambda epoch: f"{epoch[0]}")
+def test_four_epochs(epoch):
+    mjd, latitude, longitude, moon2, moon3, sun2, total = epoch
     tide = tidal_potential(at_mjd(mjd), Place(latitude, longitude))
     expected = {("moon", 2): moon2, ("moon", 3): moon3, ("sun", 2): sun2}
     for term, value in expected.items():
@@ -73,7 +72,7 @@ def test_a_day_with_a_third_ephemeris(hour, degree2, degree3):
     terms = tidal_potential(tai, Place(52.0, 10.0)).terms
     # DE430 against the analytic theories, 3.3e-4 at most
     assert_close(terms["moon", 2][0] + terms["sun", 2][0], degree2, tolerance=5e-4)
-    assert_close(terms["moon", 3][0], degree3, tolerance=2e-5)
+    assert_close(terms["moon", 3][0] + terms["sun", 3][0], degree3, tolerance=2e-5)
 
 
 def test_four_years_with_an_independent_ephemeris(independent_sky, rng):
@@ -90,12 +89,12 @@ def test_four_years_with_an_independent_ephemeris(independent_sky, rng):
 def test_a_time_error_of_37_seconds_is_visible():
     """TAI taken for UTC: at the steepest part 0.016 m² s⁻², eight times what the checks allow."""
     tai = tai_from_iso("2024-01-01T00:00:00Z") + np.arange(0, 30 * 24 * 4) * 900 * SECOND_NS
-    place = Place(0.0, 10.5)
+    place = Place(45.0, 10.5)
     error = np.abs(
         tidal_potential(tai + 37 * SECOND_NS, place).generating
         - tidal_potential(tai, place).generating
     )
-    assert_close(np.max(error), 0.0160, tolerance=0.0025)
+    assert_close(np.max(error), 0.0160, tolerance=0.0005)
 
 
 def test_half_a_second_of_earth_rotation_is_not():
@@ -116,9 +115,9 @@ def node_cycle():
 @pytest.mark.parametrize("latitude", [0.0, 30.0, 52.3, 60.7, 90.0])
 def test_long_mean_is_the_permanent_tide(node_cycle, latitude):
     tide = tidal_potential_from(node_cycle[1], Place(latitude, 10.5))
-    assert_close(
-        np.mean(tide.generating), float(permanent_tide_potential(latitude)), tolerance=5e-4
-    )
+    degree2 = np.mean(tide.terms["moon", 2] + tide.terms["sun", 2])
+    assert_close(degree2, float(permanent_tide_potential(latitude)), tolerance=5e-4)
+    # the small means of degrees 3 and 4, and 0.694 of the difference above
     assert abs(np.mean(tide.variable)) < 5e-4
 
 
@@ -135,77 +134,15 @@ CATALOGUE = {
 }
 # Relative: 0.1 % and, for waves whose neighbours need 8.85 years to part from them, 0.5 %.
 TOLERANCE = {"N2": 5e-3, "Mm": 5e-3}
-OTHERS = [
-    "055.565",
-    "056.554",
-    "057.555",
-    "058.554",
-    "063.655",
-    "065.655",
-    "065.445",
-    "065.465",
-    "073.555",
-    "075.355",
-    "075.565",
-    "085.455",
-    "085.465",
-    "093.555",
-    "095.355",
-    "115.855",
-    "117.655",
-    "125.755",
-    "125.745",
-    "127.555",
-    "127.545",
-    "135.655",
-    "135.645",
-    "137.455",
-    "137.445",
-    "145.545",
-    "147.555",
-    "153.655",
-    "155.455",
-    "155.655",
-    "155.665",
-    "157.455",
-    "162.556",
-    "163.545",
-    "164.556",
-    "165.545",
-    "165.565",
-    "166.554",
-    "167.555",
-    "173.655",
-    "175.455",
-    "175.465",
-    "183.555",
-    "185.355",
-    "185.555",
-    "185.565",
-    "195.455",
-    "225.855",
-    "227.655",
-    "235.755",
-    "237.555",
-    "237.545",
-    "235.745",
-    "245.645",
-    "247.455",
-    "253.755",
-    "254.556",
-    "255.545",
-    "263.655",
-    "265.455",
-    "265.445",
-    "265.655",
-    "271.557",
-    "272.556",
-    "274.554",
-    "275.555",
-    "275.565",
-    "283.655",
-    "285.455",
-]
+OTHERS = """
+    055.565 056.554 057.555 058.554 063.655 065.655 065.445 065.465 073.555 075.355 075.565
+    085.455 085.465 093.555 095.355 115.855 117.655 125.755 125.745 127.555 127.545 135.655
+    135.645 137.455 137.445 145.545 147.555 153.655 155.455 155.655 155.665 157.455 162.556
+    163.545 164.556 165.545 165.565 166.554 167.555 173.655 175.455 175.465 183.555 185.355
+    185.555 185.565 195.455 225.855 227.655 235.755 237.555 237.545 235.745 245.645 247.455
+    253.755 254.556 255.545 263.655 265.455 265.445 265.655 271.557 272.556 274.554 275.555
+    275.565 283.655 285.455
+"""
 
 
 def test_amplitudes_of_the_main_waves(node_cycle):
@@ -213,12 +150,12 @@ def test_amplitudes_of_the_main_waves(node_cycle):
     tai, sky = node_cycle
     terms = tidal_potential_from(sky, Place(52.0, 10.0)).terms
     potential = terms["moon", 2] + terms["sun", 2]
-    numbers = [doodson for doodson, _ in CATALOGUE.values()] + OTHERS
+    numbers = [*(doodson for doodson, _ in CATALOGUE.values()), *OTHERS.split()]
     phases = [doodson_argument(tai, doodson) for doodson in numbers]
     columns = [np.ones(tai.size), *itertools.chain(*((np.cos(p), np.sin(p)) for p in phases))]
     fit, *_ = np.linalg.lstsq(np.array(columns).T, potential, rcond=None)
     amplitudes = np.hypot(fit[1::2], fit[2::2])
-    radius, gravity, sine = 6378136.6, 9.79828685, None
+    radius, gravity = 6378136.6, 9.79828685
     geodetic = np.radians(52.0)
     p, z = 6378137.0 * np.cos(geodetic), 6378137.0 * (1 - 0.00669438) * np.sin(geodetic)
     p, z = np.array([p, z]) / np.sqrt(1 - 0.00669438 * np.sin(geodetic) ** 2)
@@ -237,13 +174,13 @@ def test_amplitudes_of_the_main_waves(node_cycle):
 
 @pytest.mark.parametrize(
     ("latitude", "lowest", "highest"),
-    # extremes over 1990-2008, hourly, independent computation; 2 % for the coarser step here
+    # extremes over 1990-2008, hourly, independent computation; 3 % for the coarser step here
     [(0.0, -3.037, 6.042), (45.0, -3.035, 5.091), (60.0, -3.027, 3.231)],
 )
 def test_size_of_the_tide(node_cycle, latitude, lowest, highest):
     tide = tidal_potential_from(node_cycle[1], Place(latitude, 10.0)).generating
-    assert np.min(tide) == pytest.approx(lowest, rel=0.02)
-    assert np.max(tide) == pytest.approx(highest, rel=0.02)
+    assert np.min(tide) == pytest.approx(lowest, rel=0.03)
+    assert np.max(tide) == pytest.approx(highest, rel=0.03)
 
 
 def test_love_numbers_by_degree():
