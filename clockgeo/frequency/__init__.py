@@ -9,21 +9,30 @@ import importlib
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
+    from clockgeo.frequency.diagnosis import Finding, diagnose
     from clockgeo.frequency.layout import RecordLayout
     from clockgeo.frequency.ratio import exact_number, fractional_frequency, ratio_text
     from clockgeo.frequency.reading import read_record
     from clockgeo.frequency.record import Record, Source
     from clockgeo.frequency.sampling import Sampling, estimate_interval, sample_ticks
+    from clockgeo.frequency.screening import Mask, Reason, Screening, ScreeningRules, screen
     from clockgeo.frequency.transitions import RECOMMENDED_FREQUENCIES, Transition, find_transition
+    from clockgeo.frequency.writing import write_record
 
 _HOMES = {
     # records
+    "Finding": "diagnosis",
+    "Mask": "screening",
     "RECOMMENDED_FREQUENCIES": "transitions",
+    "Reason": "screening",
     "Record": "record",
     "RecordLayout": "layout",
     "Sampling": "sampling",
+    "Screening": "screening",
+    "ScreeningRules": "screening",
     "Source": "record",
     "Transition": "transitions",
+    "diagnose": "diagnosis",
     "estimate_interval": "sampling",
     "exact_number": "ratio",
     "find_transition": "transitions",
@@ -31,16 +40,24 @@ _HOMES = {
     "ratio_text": "ratio",
     "read_record": "reading",
     "sample_ticks": "sampling",
+    "screen": "screening",
+    "write_record": "writing",
 }
 """Public name -> module of this package that holds it. No name may equal a module's."""
 
 __all__ = [
+    "Finding",
+    "Mask",
     "RECOMMENDED_FREQUENCIES",
+    "Reason",
     "Record",
     "RecordLayout",
     "Sampling",
+    "Screening",
+    "ScreeningRules",
     "Source",
     "Transition",
+    "diagnose",
     "estimate_interval",
     "exact_number",
     "find_transition",
@@ -48,6 +65,8 @@ __all__ = [
     "ratio_text",
     "read_record",
     "sample_ticks",
+    "screen",
+    "write_record",
 ]
 
 

@@ -59,7 +59,8 @@ class ScreeningRules(Table):
     largest_slip: Annotated[int, Field(ge=1)] = 10
     """Most cycles lost in one slip."""
     slip_tolerance: Annotated[float, Field(gt=0.0, lt=0.5)] = 0.2
-    """Largest distance from a whole number of cycles; must hold three standard deviations."""
+    """Largest distance from a whole number of cycles. Slips are named only where it holds three
+    standard deviations of the noise."""
     masks: tuple[Mask, ...] = ()
     """Times left out by hand."""
 
@@ -208,7 +209,8 @@ def _outliers(
     noise = running.spread[rows] * carrier_hz * interval
     whole = np.rint(cycles)
     is_whole = (whole != 0) & (np.abs(whole) <= rules.largest_slip)
-    is_whole &= np.abs(cycles - whole) <= rules.slip_tolerance
+    # No further off than the noise explains, with a little for the level.
+    is_whole &= np.abs(cycles - whole) <= np.minimum(rules.slip_tolerance, 4.0 * noise + 0.02)
     is_whole &= 3.0 * noise <= rules.slip_tolerance
     slips = rows[is_whole & _isolated(tick, rows)]
     flags[slips] = Reason.CYCLE_SLIP
