@@ -22,8 +22,6 @@ class Table(BaseModel):
         frozen=True,
         allow_inf_nan=False,
         use_attribute_docstrings=True,
-        validate_by_name=True,
-        validate_by_alias=True,
         serialize_by_alias=True,
     )
 

@@ -1,1 +1,71 @@
-"""The campaign document, from reading and checking to results."""
+"""The campaign document, from reading and checking to results.
+
+Names are imported when first used, so that a command pays only for what it needs.
+"""
+
+from __future__ import annotations
+
+import importlib
+from typing import TYPE_CHECKING, Any
+
+if TYPE_CHECKING:
+    from clockgeo.campaign.checking import CheckReport, check_campaign
+    from clockgeo.campaign.document import Document, campaign_schema, read_document
+    from clockgeo.campaign.evidence import Evidence
+    from clockgeo.campaign.leveller import Levelled, level, level_measured
+    from clockgeo.campaign.measuring import Measured, measure
+    from clockgeo.campaign.output import prepare_folder, read_result, result_dataset, write_result
+    from clockgeo.campaign.results import LevelResult
+    from clockgeo.campaign.schema import Campaign
+
+_HOMES = {
+    "Campaign": "schema",
+    "CheckReport": "checking",
+    "Document": "document",
+    "Evidence": "evidence",
+    "LevelResult": "results",
+    "Levelled": "leveller",
+    "Measured": "measuring",
+    "campaign_schema": "document",
+    "check_campaign": "checking",
+    "level": "leveller",
+    "level_measured": "leveller",
+    "measure": "measuring",
+    "prepare_folder": "output",
+    "read_document": "document",
+    "read_result": "output",
+    "result_dataset": "output",
+    "write_result": "output",
+}
+"""Public name -> module of this package that defines it."""
+
+__all__ = [
+    "Campaign",
+    "CheckReport",
+    "Document",
+    "Evidence",
+    "LevelResult",
+    "Levelled",
+    "Measured",
+    "campaign_schema",
+    "check_campaign",
+    "level",
+    "level_measured",
+    "measure",
+    "prepare_folder",
+    "read_document",
+    "read_result",
+    "result_dataset",
+    "write_result",
+]
+
+
+def __getattr__(name: str) -> Any:
+    if name not in _HOMES:
+        message = f"module {__name__!r} has no attribute {name!r}"
+        raise AttributeError(message)
+    return getattr(importlib.import_module(f"{__name__}.{_HOMES[name]}"), name)
+
+
+def __dir__() -> list[str]:
+    return sorted([*globals(), *_HOMES])

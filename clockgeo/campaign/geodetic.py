@@ -20,7 +20,7 @@ from clockgeo.gravity import (
     open_geoid,
     zero_level_shift,
 )
-from clockgeo.levelling.session_rows import number_of as unknown_number
+from clockgeo.levelling.session_rows import NumberOf
 from clockgeo.levelling.solution import Solution
 from clockgeo.levelling.stations import Site
 
@@ -160,7 +160,7 @@ def compare(
         for first, second in pairs:
             if first not in source.sites or second not in source.sites:
                 continue
-            combination = {unknown_number(second): 1.0, unknown_number(first): -1.0}
+            combination = {NumberOf(second): 1.0, NumberOf(first): -1.0}
             clock, u_clock = solution.value(combination), solution.u(combination)
             value, u_value = source.difference(first, second)
             u = float(np.hypot(u_clock, u_value))

@@ -37,6 +37,7 @@ from clockgeo.gravity import CAUTION, zero_level
 from clockgeo.levelling.linear_model import LinearModel, ModelBuilder
 from clockgeo.levelling.redshift import potential_from_shift, shift_from_potential
 from clockgeo.levelling.session_rows import (
+    RatioError,
     RatioPrior,
     SessionMean,
     add_known_number,
@@ -200,8 +201,10 @@ def _model(
     )
     priors = {}
     for ratio in campaign.nominal_ratios:
-        priors["ratio", *sorted((ratio.numerator, ratio.denominator))] = RatioPrior(ratio.u)
-    systematic = add_session_rows(builder, means, covariance, ratios=priors)
+        priors[RatioError.between(ratio.numerator, ratio.denominator)] = RatioPrior(ratio.u)
+    systematic = add_session_rows(
+        builder, means, covariance, tide_system=campaign.head.tide_system, ratios=priors
+    )
     return builder.build(), systematic
 
 

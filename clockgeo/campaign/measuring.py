@@ -20,11 +20,12 @@ from clockgeo.frequency import (
     read_record,
     screen,
 )
-from clockgeo.gravity import TideCorrection, tide_correction_of_pair
+from clockgeo.gravity import Place, SiteTide
 from clockgeo.levelling.session_rows import SessionMean
-from clockgeo.levelling.stations import Clock
+from clockgeo.levelling.stations import Clock, Site
+from clockgeo.levelling.tide_correction import TideCorrection, tide_correction
 
-__all__ = ["Measured", "measure", "nominal_frequency_of", "nominal_ratio_of", "tide_correction"]
+__all__ = ["Measured", "measure", "nominal_frequency_of", "nominal_ratio_of", "tide_of"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -84,7 +85,7 @@ class Measured:
             links=tuple(campaign.link(link) for link in session.links),
             start_ns=self.record.start,
             y=self.y,
-            u_tide=float(np.copysign(self.tide.u, self.tide.mean)),
+            u_tide=self.tide.u,
         )
 
 
@@ -113,9 +114,7 @@ def nominal_ratio_of(campaign: Campaign, session: Session) -> Fraction:
     return nominal_frequency_of(n) / nominal_frequency_of(d)
 
 
-def tide_correction(
-    campaign: Campaign, session: Session, tai_ns: NDArray[np.int64]
-) -> TideCorrection:
+def tide_of(campaign: Campaign, session: Session, tai_ns: NDArray[np.int64]) -> TideCorrection:
     """Correction that removes the time-variable tide from a session's y at the given epochs.
 
     Parameters
@@ -135,11 +134,11 @@ def tide_correction(
     n, d = (campaign.site(place.site) for place in session.places)
     if campaign.head.tide == "none" or n.id == d.id or tai_ns.size == 0:
         return TideCorrection.none(tai_ns.size)
-    return tide_correction_of_pair(
-        tai_ns,
-        numerator=(n.latitude, n.longitude, n.ellipsoidal_height or 0.0),
-        denominator=(d.latitude, d.longitude, d.ellipsoidal_height or 0.0),
-    )
+    return tide_correction(tai_ns, numerator=_tide_at(n), denominator=_tide_at(d))
+
+
+def _tide_at(site: Site) -> SiteTide:
+    return SiteTide(Place(site.latitude, site.longitude, site.ellipsoidal_height or 0.0))
 
 
 def measure(
@@ -188,7 +187,7 @@ def measure(
             advice="Look at it with clockgeo screen, and at the screening rules",
         )
     valid = screening.valid
-    usable_tide = tide_correction(campaign, session, record.tai_ns[record.usable])
+    usable_tide = tide_of(campaign, session, record.tai_ns[record.usable])
     correction = _systematic_correction(campaign, session)
     corrected = record.y[record.usable] + usable_tide.at_epochs + correction
     counted = valid[record.usable]

@@ -7,10 +7,10 @@ says why.
 
 from __future__ import annotations
 
-from pydantic import Field
+from pydantic import ConfigDict, Field
 
 from clockgeo.gravity.tide_systems import TideSystem
-from clockgeo.tables import Table
+from clockgeo.tables import Table as DocumentTable
 
 __all__ = [
     "Comparison",
@@ -31,6 +31,12 @@ __all__ = [
 ]
 
 LEVEL_SCHEMA = "clockgeo/level/1"
+
+
+class Table(DocumentTable):
+    """A part of a result; made by name in Python, written under its published name."""
+
+    model_config = ConfigDict(validate_by_name=True, validate_by_alias=True)
 
 
 class Quantity(Table):

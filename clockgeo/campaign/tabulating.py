@@ -21,7 +21,7 @@ from clockgeo.campaign.schema import Campaign
 from clockgeo.gravity import heights_of
 from clockgeo.gravity.zero_levels import zero_level
 from clockgeo.levelling.redshift import shift_from_potential
-from clockgeo.levelling.session_rows import number_of
+from clockgeo.levelling.session_rows import NumberOf
 from clockgeo.levelling.solution import Solution
 
 __all__ = ["Freedom", "budget", "covariance_of", "differences", "site_results", "site_pairs"]
@@ -58,7 +58,7 @@ def site_results(campaign: Campaign, solution: Solution, solved: Sequence[str]) 
     results = []
     for name in solved:
         site = campaign.site(name)
-        number, u = solution.value({number_of(name): 1.0}), solution.u({number_of(name): 1.0})
+        number, u = solution.value({NumberOf(name): 1.0}), solution.u({NumberOf(name): 1.0})
         heights = heights_of(
             number,
             latitude=site.latitude,
@@ -104,14 +104,14 @@ def differences(
 ) -> list[DifferenceResult]:
     """Potential and normal-height difference of every pair, second minus first."""
     names = {name for pair in pairs for name in pair}
-    numbers = {name: solution.value({number_of(name): 1.0}) for name in sorted(names)}
+    numbers = {name: solution.value({NumberOf(name): 1.0}) for name in sorted(names)}
     slopes = _slopes(campaign, numbers)
     results = []
     for first, second in pairs:
-        combination = {number_of(second): 1.0, number_of(first): -1.0}
+        combination = {NumberOf(second): 1.0, NumberOf(first): -1.0}
         u = solution.u(combination)
         (low, low_slope), (high, high_slope) = slopes[first], slopes[second]
-        in_height = {number_of(second): high_slope, number_of(first): -low_slope}
+        in_height = {NumberOf(second): high_slope, NumberOf(first): -low_slope}
         effective = freedom.of(solution.noise_u(combination, "clock"), u)
         finite = effective if np.isfinite(effective) else 1e9
         results.append(
@@ -131,7 +131,7 @@ def differences(
 
 def covariance_of(solution: Solution, solved: Sequence[str]) -> CovarianceTable:
     """Covariance of the sites' geopotential numbers."""
-    weights = np.array([solution.weights({number_of(name): 1.0}) for name in solved])
+    weights = np.array([solution.weights({NumberOf(name): 1.0}) for name in solved])
     matrix = weights @ solution.covariance @ weights.T
     return CovarianceTable(
         order=tuple(solved), matrix=tuple(tuple(float(v) for v in row) for row in matrix)
@@ -156,7 +156,7 @@ def budget(
         Variance of the excess scatter per session that is part of the noise, m⁴ s⁻⁴.
     """
     for first, second in pairs:
-        combination = {number_of(second): 1.0, number_of(first): -1.0}
+        combination = {NumberOf(second): 1.0, NumberOf(first): -1.0}
         gravity = campaign.site(second).gravity or 9.81
         weights = solution.weights(combination) @ solution.gain
         clock_rows = np.array(solution.model.kinds) == "clock"

@@ -4,8 +4,10 @@ For the numerator clock n at site B and the denominator clock d at site A the ro
 
     c² y - (t_B - t_A) = C_B - C_A + c² r + loads · z + noise,
 
-where t is the potential difference from marker to atoms, r the error of the nominal ratio of two
-different transitions, and the loads are those of `effects.loading_of`.
+where t leads from the marker's number to what the atoms feel (the height of the atoms, and the
+permanent tide where the document's tide system is not the mean-tide system of averaged clock
+data), r is the error of the nominal ratio of two different transitions, and the loads are those of
+`effects.loading_of`.
 """
 
 from __future__ import annotations
@@ -16,7 +18,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from clockgeo.gravity import marker_to_atoms, normal_gravity
+from clockgeo.gravity import TideSystem, marker_to_atoms, normal_gravity, tide_system_shift
 from clockgeo.levelling.effects import EffectKey, loading_of
 from clockgeo.levelling.linear_model import ModelBuilder
 from clockgeo.levelling.redshift import potential_from_shift
@@ -25,11 +27,12 @@ from clockgeo.levelling.stations import Clock, Link, Site
 __all__ = [
     "SITE_TRANSFER",
     "TIDE",
+    "NumberOf",
+    "RatioError",
     "RatioPrior",
     "SessionMean",
     "add_known_number",
     "add_session_rows",
-    "number_of",
     "ratio_of",
     "stays_of",
     "systematic_loads",
@@ -57,8 +60,8 @@ class SessionMean:
     y : float
         Mean fractional frequency with all corrections applied.
     u_tide : float
-        Standard uncertainty of the tide correction, with the sign of the correction: one model
-        serves all sessions, so this is one variable.
+        Standard uncertainty of the session's tide correction; its phase is unknown, so it is a
+        variable of the session's own.
     """
 
     id: str
@@ -79,12 +82,33 @@ class RatioPrior:
     u: float
 
 
-def number_of(site: str) -> Hashable:
-    """Name of the unknown geopotential number of a site's marker."""
-    return ("number", site)
+@dataclass(frozen=True)
+class NumberOf:
+    """Name of an unknown: the geopotential number of a site's marker."""
+
+    site: str
+
+    def __str__(self) -> str:
+        return f"geopotential number of {self.site}"
 
 
-def ratio_of(numerator: Clock, denominator: Clock) -> tuple[Hashable, float] | None:
+@dataclass(frozen=True)
+class RatioError:
+    """Name of an unknown: the error of the nominal ratio of two transitions, in c² y."""
+
+    first: str
+    second: str
+
+    def __str__(self) -> str:
+        return f"error of the nominal ratio {self.first}/{self.second}"
+
+    @classmethod
+    def between(cls, first: str, second: str) -> RatioError:
+        """Return the one name for both directions of a ratio."""
+        return cls(*sorted((first, second)))
+
+
+def ratio_of(numerator: Clock, denominator: Clock) -> tuple[RatioError, float] | None:
     """Name and sign of the nominal-ratio error between two clocks; None for one species.
 
     To first order the error of B/A is minus that of A/B, so both share one unknown.
@@ -92,7 +116,7 @@ def ratio_of(numerator: Clock, denominator: Clock) -> tuple[Hashable, float] | N
     n, d = numerator.species, denominator.species
     if n == d:
         return None
-    return ("ratio", *sorted((n, d))), 1.0 if n < d else -1.0
+    return RatioError.between(n, d), 1.0 if n < d else -1.0
 
 
 def stays_of(means: Sequence[SessionMean]) -> dict[tuple[str, str], str]:
@@ -130,7 +154,7 @@ def systematic_loads(
         for key, load in parts.items():
             loads[key] = loads.get(key, 0.0) + potential_from_shift(load)
     if mean.u_tide:
-        loads[EffectKey("solid Earth", TIDE)] = potential_from_shift(mean.u_tide)
+        loads[EffectKey("solid Earth", TIDE, mean.id)] = potential_from_shift(mean.u_tide)
     for clock, site, sign in _placed(mean):
         for key, load in _transfer_loads(site, clock).items():
             loads[key] = loads.get(key, 0.0) + sign * load
@@ -153,16 +177,33 @@ def _gravity(site: Site) -> tuple[float, float]:
     ), _U_UNMEASURED_GRAVITY
 
 
-def transfer_difference(mean: SessionMean) -> float:
-    """Marker-to-atoms potential difference of the numerator minus the denominator, m² s⁻²."""
-    return sum(sign * _transfer(site, clock) for clock, site, sign in _placed(mean))
+def transfer_difference(mean: SessionMean, tide_system: TideSystem) -> float:
+    """What the clocks feel beyond the difference of the markers' numbers, in m² s⁻².
+
+    Parameters
+    ----------
+    mean : SessionMean
+        Which clocks stand where.
+    tide_system : TideSystem
+        Tide system of the markers' geopotential numbers.
+
+    Returns
+    -------
+    float
+        Numerator minus denominator of: height of the atoms above the marker, plus the step from
+        `tide_system` to the mean-tide system of averaged clock data.
+    """
+    return sum(sign * _transfer(site, clock, tide_system) for clock, site, sign in _placed(mean))
 
 
-def _transfer(site: Site, clock: Clock) -> float:
-    """Potential difference from marker to atoms in m² s⁻²."""
+def _transfer(site: Site, clock: Clock, tide_system: TideSystem) -> float:
     gravity, _ = _gravity(site)
     rise = site.atoms_height(clock.id)
-    return float(marker_to_atoms(rise, gravity=gravity, gradient=site.gravity_gradient))
+    to_atoms = marker_to_atoms(rise, gravity=gravity, gradient=site.gravity_gradient)
+    to_mean_tide = tide_system_shift(
+        "geopotential_number", site.latitude, source=tide_system, target=TideSystem.MEAN_TIDE
+    )
+    return to_atoms.geopotential_difference + float(to_mean_tide)
 
 
 def _transfer_loads(site: Site, clock: Clock) -> dict[EffectKey, float]:
@@ -179,7 +220,8 @@ def add_session_rows(
     means: Sequence[SessionMean],
     covariance: ArrayLike,
     *,
-    ratios: Mapping[Hashable, RatioPrior] | None = None,
+    tide_system: TideSystem,
+    ratios: Mapping[RatioError, RatioPrior] | None = None,
 ) -> NDArray[np.float64]:
     """Add one row per session, with the statistical covariance of all of them.
 
@@ -191,6 +233,8 @@ def add_session_rows(
         What was measured.
     covariance : array, shape (K, K)
         Statistical covariance of the means, in fractional frequency squared.
+    tide_system : TideSystem
+        Tide system of the markers' geopotential numbers.
     ratios : mapping, optional
         Prior knowledge of nominal ratios by the name `ratio_of` gives them; a ratio without an
         entry is unknown and estimated.
@@ -210,15 +254,14 @@ def add_session_rows(
         if ratio is not None:
             name, sign = ratio
             if name in priors:
-                loads[EffectKey(str(name[1]), f"nominal ratio to {name[2]}")] = (  # type: ignore[index]
-                    potential_from_shift(sign * priors[name].u)
-                )
+                key = EffectKey(name.first, f"nominal ratio to {name.second}")
+                loads[key] = potential_from_shift(sign * priors[name].u)
             else:
                 on[name] = sign
         value = potential_from_shift(mean.y)
         for _, site, sign in _placed(mean):
-            on[number_of(site.id)] = on.get(number_of(site.id), 0.0) + sign
-        value -= transfer_difference(mean)
+            on[NumberOf(site.id)] = on.get(NumberOf(site.id), 0.0) + sign
+        value -= transfer_difference(mean, tide_system)
         builder.observe(mean.id, kind="clock", value=value, on=on, effects=loads)
         systematic[place] = float(np.sqrt(sum(load**2 for load in loads.values())))
     scale = potential_from_shift(1.0) ** 2
@@ -232,6 +275,6 @@ def add_known_number(builder: ModelBuilder, site: str, value: float, u: float) -
         f"known number of {site}",
         kind="known",
         value=value,
-        on={number_of(site): 1.0},
+        on={NumberOf(site): 1.0},
         variance=u**2,
     )

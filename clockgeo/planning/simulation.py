@@ -14,7 +14,7 @@ from pathlib import Path
 import numpy as np
 from numpy.typing import NDArray
 
-from clockgeo.campaign.measuring import nominal_ratio_of, tide_correction
+from clockgeo.campaign.measuring import nominal_ratio_of, tide_of
 from clockgeo.campaign.schema import Campaign, Session, Truth
 from clockgeo.errors import DataError
 from clockgeo.frequency import NoiseModel, draw_noise, write_record
@@ -129,7 +129,7 @@ def simulate_sessions(
     streams = [np.random.default_rng(s) for s in session_seed.spawn(len(means))]
     steps = zip(campaign.sessions, means, streams, strict=True)
     for session, mean, stream in track(steps, "drawing records", len(means)):
-        offset = _true_shift(truth, mean) - _corrections(mean)
+        offset = _true_shift(campaign, truth, mean) - _corrections(mean)
         for key, load in systematic_loads(mean, stays).items():
             if key not in effects:
                 effects[key] = float(effect_stream.normal())
@@ -138,7 +138,7 @@ def simulate_sessions(
         first, count = timeline.place(session)
         y = offset + _session_noise(session, noise, slice(first, first + count))
         stamps = mean.start_ns + np.arange(count) * timeline.step_ns
-        y -= tide_correction(campaign, session, stamps).at_epochs
+        y -= tide_of(campaign, session, stamps).at_epochs
         yield _with_gaps(session, truth, stamps, y, stream)
 
 
@@ -220,11 +220,11 @@ def _true_mean(campaign: Campaign, session: Session) -> SessionMean:
     )
 
 
-def _true_shift(truth: Truth, mean: SessionMean) -> float:
+def _true_shift(campaign: Campaign, truth: Truth, mean: SessionMean) -> float:
     """Fractional frequency that the true potentials and nominal ratio give."""
     numbers = truth.geopotential_numbers
     difference = numbers[mean.numerator_site.id] - numbers[mean.denominator_site.id]
-    shift = shift_from_potential(difference + transfer_difference(mean))
+    shift = shift_from_potential(difference + transfer_difference(mean, campaign.head.tide_system))
     if ratio_of(mean.numerator, mean.denominator) is not None:
         n, d = mean.numerator.species, mean.denominator.species
         errors = truth.nominal_ratio_errors
