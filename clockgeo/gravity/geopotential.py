@@ -7,7 +7,7 @@ from enum import StrEnum
 
 import numpy as np
 
-from clockgeo.errors import ConventionError
+from clockgeo.errors import ConventionError, DataError
 from clockgeo.gravity import heights as formulas
 from clockgeo.gravity.normal_field import normal_gravity
 from clockgeo.gravity.places import checked_gravity
@@ -16,7 +16,12 @@ from clockgeo.gravity.tide_systems import (
     require_same_tide_system,
     tide_system_shift,
 )
-from clockgeo.gravity.zero_levels import ZeroLevel, require_same_zero_level, zero_level
+from clockgeo.gravity.zero_levels import (
+    ZeroLevel,
+    require_same_zero_level,
+    zero_level,
+    zero_level_shift,
+)
 
 __all__ = ["GeopotentialNumber", "Height", "HeightKind", "height_of", "heights_of", "number_of"]
 
@@ -83,8 +88,6 @@ class GeopotentialNumber:
         ConventionError
             If the potential of one of the levels is not known.
         """
-        from clockgeo.gravity.zero_levels import zero_level_shift
-
         target = zero_level(level)
         if target == self.zero_level:
             return self
@@ -154,6 +157,7 @@ def height_of(
     0.01019...
     """
     wanted = _kind(kind)
+    _check_uncertainties(u, u_gravity)
     if wanted is HeightKind.NORMAL:
         phi = _needed(latitude, wanted, "latitude")
         value = float(formulas.normal_height(geopotential_number, phi, ellipsoid=ellipsoid))
@@ -221,6 +225,7 @@ def number_of(
     Parameters and errors are those of `height_of`, with `u` in m.
     """
     wanted = _kind(kind)
+    _check_uncertainties(u, u_gravity)
     if wanted is HeightKind.NORMAL:
         phi = _needed(latitude, wanted, "latitude")
         number = formulas.number_of_normal_height(height, phi, ellipsoid=ellipsoid)
@@ -249,6 +254,12 @@ def _kind(stated: HeightKind | str) -> HeightKind:
         raise ConventionError(
             "unknown kind of height", value=repr(stated), allowed=f"One of {', '.join(HeightKind)}"
         ) from None
+
+
+def _check_uncertainties(*uncertainties: float) -> None:
+    for u in uncertainties:
+        if not 0.0 <= u < np.inf:
+            raise DataError("a standard uncertainty must not be negative", value=u)
 
 
 def _needed(value: float | None, kind: HeightKind, name: str) -> float:

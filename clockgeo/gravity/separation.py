@@ -12,7 +12,7 @@ from clockgeo.errors import ConventionError, DataError
 from clockgeo.gravity.geopotential import GeopotentialNumber, number_of
 from clockgeo.gravity.places import checked_height
 from clockgeo.gravity.tide_systems import TideSystem, convert_tide_system
-from clockgeo.gravity.zero_levels import ZeroLevel
+from clockgeo.gravity.zero_levels import ZeroLevel, zero_level
 
 __all__ = [
     "BOUGUER_ANOMALY",
@@ -153,8 +153,8 @@ def number_from_ellipsoidal_height(
         )
         if separation.quantity == "geoid_height":
             u_number = float(np.hypot(u_number, BOUGUER_ANOMALY.u * height))
-    level, system = separation.zero_level, TideSystem(tide_system)
-    return GeopotentialNumber(value, u_number, level, system)  # type: ignore[arg-type]
+    level = zero_level(separation.zero_level)
+    return GeopotentialNumber(value, u_number, level, TideSystem(tide_system))
 
 
 def require_independent_geoid(*, geoid: str, fitted_to: str | None, levelling: str) -> None:
