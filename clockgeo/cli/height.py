@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING, Annotated, Any, Literal
 
 import typer
 
-from clockgeo.cli.options import Json, Quiet
+from clockgeo.cli.options import Json, Latitude, Quiet
 
 if TYPE_CHECKING:
     pass
@@ -17,7 +17,6 @@ Number = Annotated[
     float | None, typer.Option("--geopotential-number", help="C = W0 - W in m² s⁻².")
 ]
 HeightValue = Annotated[float | None, typer.Option("--height", help="Height of --kind, m.")]
-Latitude = Annotated[float, typer.Option("--latitude", help="Geodetic latitude, degrees.")]
 Kind = Annotated[str, typer.Option("--kind", help="normal, orthometric or dynamic.")]
 Gravity = Annotated[
     float | None, typer.Option("--gravity", help="Gravity at the point, m s⁻² (orthometric).")
@@ -100,7 +99,7 @@ def command(
         )
         number += float(shift)
     if from_zero_level is not None and to_zero_level is not None:
-        number += zero_level_shift(source=_level(from_zero_level), target=_level(to_zero_level))
+        number += zero_level_shift(source=from_zero_level, target=to_zero_level)
     converted = height_of(number, u=u_number, **(place if height is None else _exact(place)))
     result = {
         "schema": "clockgeo/height/1",
@@ -131,13 +130,6 @@ def _fixed_in(stated: str) -> Literal["crust", "space"]:
     if stated not in ("crust", "space"):
         raise typer.BadParameter("--fixed-in takes crust or space")
     return "crust" if stated == "crust" else "space"
-
-
-def _level(stated: str) -> str | float:
-    try:
-        return float(stated)
-    except ValueError:
-        return stated
 
 
 def _tell(result: dict[str, Any]) -> None:

@@ -7,14 +7,11 @@ from typing import TYPE_CHECKING, Annotated, Any
 
 import typer
 
-from clockgeo.cli.options import Json, Quiet
+from clockgeo.cli.options import EllipsoidalHeight, Json, Latitude, Longitude, Quiet
 
 if TYPE_CHECKING:
     from clockgeo.gravity import GeopotentialNumber, Separation, SiteTransfer
 
-Latitude = Annotated[float, typer.Option("--latitude", help="Geodetic latitude, degrees.")]
-Longitude = Annotated[float, typer.Option("--longitude", help="Longitude, degrees, east positive.")]
-Height = Annotated[float, typer.Option("--ellipsoidal-height", help="Of the marker, m.")]
 UHeight = Annotated[float, typer.Option("--u-height", help="u of the ellipsoidal height, m.")]
 HeightTide = Annotated[
     str, typer.Option("--height-tide", help="Tide system of the ellipsoidal height.")
@@ -54,7 +51,7 @@ _UNMEASURED_GRAVITY = 1e-3  # m s-2: real gravity about the normal one (100 mGal
 def command(
     latitude: Latitude,
     longitude: Longitude,
-    ellipsoidal_height: Height,
+    ellipsoidal_height: EllipsoidalHeight,
     u_height: UHeight = 0.0,
     height_tide: HeightTide = "tide_free",
     grid: Grid = None,
@@ -132,18 +129,10 @@ def _stated(
             "a stated geoid height or height anomaly needs --u-separation, --tide-system and "
             "--zero-level; none of them can be guessed"
         )
-    level = _level(zero_level)
     if geoid_height is not None:
-        return Separation(geoid_height, u, "geoid_height", tide_system, level)
+        return Separation(geoid_height, u, "geoid_height", tide_system, zero_level)
     assert height_anomaly is not None
-    return Separation(height_anomaly, u, "height_anomaly", tide_system, level)
-
-
-def _level(stated: str) -> str | float:
-    try:
-        return float(stated)
-    except ValueError:
-        return stated
+    return Separation(height_anomaly, u, "height_anomaly", tide_system, zero_level)
 
 
 def _to_atoms(
@@ -252,7 +241,7 @@ def _from_grid(
     model = open_geoid(
         path,
         tide_system=tide_system,
-        zero_level=None if zero_level is None else _level(zero_level),
+        zero_level=zero_level,
         u=u,
     )
     value = float(model.sample(place.latitude, place.longitude))

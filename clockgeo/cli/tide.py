@@ -7,7 +7,15 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from clockgeo.cli.options import Force, Json, OutFile, Quiet
+from clockgeo.cli.options import (
+    EllipsoidalHeight,
+    Force,
+    Json,
+    Latitude,
+    Longitude,
+    OutFile,
+    Quiet,
+)
 
 if TYPE_CHECKING:
     import numpy as np
@@ -15,9 +23,6 @@ if TYPE_CHECKING:
 
     from clockgeo.gravity import SiteTide, TideSeries
 
-Latitude = Annotated[float, typer.Option("--latitude", help="Geodetic latitude, degrees.")]
-Longitude = Annotated[float, typer.Option("--longitude", help="Longitude, degrees, east positive.")]
-Height = Annotated[float, typer.Option("--ellipsoidal-height", help="Ellipsoidal height, m.")]
 Start = Annotated[str, typer.Option("--start", help="First epoch, ISO 8601, UTC.")]
 Stop = Annotated[str, typer.Option("--stop", help="Last epoch, ISO 8601, UTC.")]
 Step = Annotated[float, typer.Option("--step", help="Step in s.")]
@@ -44,7 +49,7 @@ def command(
     longitude: Longitude,
     start: Start,
     stop: Stop,
-    ellipsoidal_height: Height = 0.0,
+    ellipsoidal_height: EllipsoidalHeight = 0.0,
     step: Step = 3600.0,
     to_latitude: ToLatitude = None,
     to_longitude: ToLongitude = None,

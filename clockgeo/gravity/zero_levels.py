@@ -109,7 +109,7 @@ def zero_level(stated: str | float | ZeroLevel) -> ZeroLevel:
     Parameters
     ----------
     stated : str, float or ZeroLevel
-        A name of `named_zero_levels`, or W0 in m² s⁻². A value that equals a named one (to 1e-4)
+        A name of `named_zero_levels`, or W0 in m² s⁻² as a number or its text. A value that equals a named one (to 1e-4)
         is that one; any other becomes a level of its own, named after its value.
 
     Raises
@@ -127,18 +127,20 @@ def zero_level(stated: str | float | ZeroLevel) -> ZeroLevel:
     if isinstance(stated, ZeroLevel):
         return stated
     named = named_zero_levels()
-    if isinstance(stated, str):
-        if stated in named:
-            return named[stated]
+    if isinstance(stated, str) and stated in named:
+        return named[stated]
+    try:
+        w0 = float(stated)
+    except ValueError:
         raise ConventionError(
             "unknown zero level",
             value=repr(stated),
             allowed=f"One of {', '.join(named)}, or W0 as a number in m² s⁻²",
-        )
+        ) from None
     for level in named.values():
-        if level.w0 is not None and abs(level.w0 - stated) < _SAME:
+        if level.w0 is not None and abs(level.w0 - w0) < _SAME:
             return level
-    return ZeroLevel(f"W0 = {float(stated)!r}", float(stated))
+    return ZeroLevel(f"W0 = {w0!r}", w0)
 
 
 def zero_level_shift(*, source: ZeroLevel | str | float, target: ZeroLevel | str | float) -> float:

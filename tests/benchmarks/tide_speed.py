@@ -41,7 +41,7 @@ def main() -> None:
     print(f"largest error {error:.1e} (aim: below 1e-21)")
 
 
-def _seconds(work) -> float:  # noqa: ANN001
+def _seconds(work) -> float:
     begin = time.perf_counter()
     work()
     return time.perf_counter() - begin

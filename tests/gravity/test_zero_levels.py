@@ -38,6 +38,7 @@ def test_named_levels(name, potential):
     assert level.source
     assert zero_level(level.w0) == level
     assert zero_level(level) is level
+    assert zero_level(repr(level.w0)) == level
     assert named_zero_levels()[name] == level
 
 
