@@ -73,7 +73,6 @@ def command(
     ellipsoidal height is taken above the geoid or quasigeoid of a grid, or above a value given.
 
     Example: clockgeo redshift --latitude 52.3 --longitude 10.5 --ellipsoidal-height 130
-    --height-anomaly 43.5 --u-separation 0.02 --tide-system zero_tide --zero-level height_reference
     """
     from clockgeo.cli.terminal import print_json
     from clockgeo.gravity import Place, number_from_ellipsoidal_height

@@ -80,6 +80,7 @@ if TYPE_CHECKING:
         mean_tide_height_evrf2019,
         permanent_tide_potential,
         require_same_tide_system,
+        tide_system,
         tide_system_shift,
         zero_tide_height_evrf2019,
     )
@@ -161,6 +162,7 @@ __all__ = [
     "tidal_potential",
     "tidal_potential_from",
     "tide_series",
+    "tide_system",
     "tide_system_shift",
     "uplift_difference",
     "write_load_table",
@@ -220,6 +222,7 @@ _HOME = {
     "mean_tide_height_evrf2019": "tide_systems",
     "permanent_tide_potential": "tide_systems",
     "require_same_tide_system": "tide_systems",
+    "tide_system": "tide_systems",
     "tide_system_shift": "tide_systems",
     "zero_tide_height_evrf2019": "tide_systems",
     "LOVE_NUMBERS": "tides",

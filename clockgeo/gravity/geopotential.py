@@ -14,6 +14,7 @@ from clockgeo.gravity.places import checked_gravity
 from clockgeo.gravity.tide_systems import (
     TideSystem,
     require_same_tide_system,
+    tide_system,
     tide_system_shift,
 )
 from clockgeo.gravity.zero_levels import (
@@ -78,7 +79,7 @@ class GeopotentialNumber:
         if not self.u >= 0.0:
             raise ConventionError("u of a geopotential number must not be negative", value=self.u)
         object.__setattr__(self, "zero_level", zero_level(self.zero_level))
-        object.__setattr__(self, "tide_system", TideSystem(self.tide_system))
+        object.__setattr__(self, "tide_system", tide_system(self.tide_system))
 
     def counted_from(self, level: ZeroLevel | str | float) -> GeopotentialNumber:
         """Count the same point from another zero level; u of a measured W0 is added.
@@ -100,7 +101,7 @@ class GeopotentialNumber:
         shift = tide_system_shift(
             "geopotential_number", latitude, source=self.tide_system, target=system
         )
-        return replace(self, value=self.value + float(shift), tide_system=TideSystem(system))
+        return replace(self, value=self.value + float(shift), tide_system=tide_system(system))
 
     def above(self, other: GeopotentialNumber) -> float:
         """Difference to `other` in m² s⁻², positive if this point is higher.

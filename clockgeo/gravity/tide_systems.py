@@ -30,6 +30,7 @@ __all__ = [
     "mean_tide_height_evrf2019",
     "permanent_tide_potential",
     "require_same_tide_system",
+    "tide_system",
     "tide_system_shift",
     "zero_tide_height_evrf2019",
 ]
@@ -165,7 +166,7 @@ def tide_system_shift(
     Ekman 1989, Bull. Géod. 63:281; Mäkinen 2021, J. Geod. 95:106. Round trips return the value.
     """
     what = _quantity(quantity)
-    start, end = _system(source), _system(target)
+    start, end = tide_system(source), tide_system(target)
     if fixed_in not in ("crust", "space"):
         raise ConventionError(
             "unknown kind of point", value=repr(fixed_in), allowed="Use crust or space"
@@ -249,7 +250,7 @@ def require_same_tide_system(parties: Mapping[str, TideSystem | str]) -> TideSys
     ConventionError
         If two of them differ; names both.
     """
-    stated = {name: _system(system) for name, system in parties.items()}
+    stated = {name: tide_system(system) for name, system in parties.items()}
     (first_name, first), *others = stated.items()
     for name, system in others:
         if system is not first:
@@ -290,7 +291,14 @@ def _per_potential(quantity: TidalQuantity, latitude: ArrayLike) -> NDArray[np.f
     return np.asarray(1.0 / normal_gravity(latitude))
 
 
-def _system(stated: TideSystem | str) -> TideSystem:
+def tide_system(stated: TideSystem | str) -> TideSystem:
+    """Tide system by its text.
+
+    Raises
+    ------
+    ConventionError
+        If the text is none of `mean_tide`, `zero_tide` and `tide_free`.
+    """
     try:
         return TideSystem(stated)
     except ValueError:

@@ -14,10 +14,11 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from clockgeo.constants import GM_MOON, GM_SUN, Constant
+from clockgeo.errors import DataError
 from clockgeo.gravity.normal_field import cartesian
 from clockgeo.gravity.places import Place
 from clockgeo.gravity.tide_systems import permanent_tide_potential
-from clockgeo.times import tt_julian_date, utc_julian_date
+from clockgeo.times import iso_utc, tai_from_iso, tt_julian_date, utc_julian_date
 
 __all__ = [
     "LOVE_NUMBERS",
@@ -31,6 +32,7 @@ __all__ = [
 ]
 
 _AU = erfa.DAU
+_LAST_TAI_NS = tai_from_iso("2099-12-31T12:00:00Z")
 _DEGREES = {"moon": (2, 3, 4), "sun": (2, 3)}
 _GM: dict[str, Constant] = {"moon": GM_MOON, "sun": GM_SUN}
 
@@ -130,6 +132,11 @@ def sky_positions(tai_ns: ArrayLike, *, ut1_minus_utc: ArrayLike = 0.0) -> SkyPo
     -------
     SkyPositions
 
+    Raises
+    ------
+    DataError
+        If an epoch is later than 2099, where the ephemeris of the Earth ends.
+
     Notes
     -----
     Analytic lunar theory (Meeus 1998, truncated ELP 2000) and Earth ephemeris as in ERFA `moon98`
@@ -137,6 +144,12 @@ def sky_positions(tai_ns: ArrayLike, *, ut1_minus_utc: ArrayLike = 0.0) -> SkyPo
     a numerical ephemeris the potential differs by at most 3.3e-4 m² s⁻² (3.7e-21).
     """
     epochs = np.atleast_1d(np.asarray(tai_ns, dtype=np.int64))
+    if epochs.size and int(epochs.max()) > _LAST_TAI_NS:
+        raise DataError(
+            "the positions of Moon and Sun end with the year 2099",
+            value=iso_utc(int(epochs.max())),
+            allowed="Epochs from 1972 to 2099",
+        )
     terrestrial = tt_julian_date(epochs)
     day, fraction = utc_julian_date(epochs)
     rotation = (day, fraction + np.asarray(ut1_minus_utc) / 86_400.0)

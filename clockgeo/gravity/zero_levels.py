@@ -109,8 +109,8 @@ def zero_level(stated: str | float | ZeroLevel) -> ZeroLevel:
     Parameters
     ----------
     stated : str, float or ZeroLevel
-        A name of `named_zero_levels`, or W0 in m² s⁻² as a number or its text. A value that equals a named one (to 1e-4)
-        is that one; any other becomes a level of its own, named after its value.
+        A name of `named_zero_levels`, or W0 in m² s⁻² as a number or its text. A value that equals
+        a named one (to 1e-4) is that one; any other becomes a level of its own, named after it.
 
     Raises
     ------

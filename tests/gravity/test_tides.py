@@ -8,6 +8,7 @@ import numpy as np
 import pytest
 
 from checks import assert_close
+from clockgeo.errors import DataError
 from clockgeo.gravity import (
     LOVE_NUMBERS,
     Place,
@@ -208,3 +209,8 @@ def test_the_moon_overhead_pulls_most():
     assert under > 2.5
     assert far == pytest.approx(under, rel=1e-3)
     assert beside == pytest.approx(-under / 2, rel=0.05)
+
+
+def test_epochs_beyond_the_ephemeris_are_refused():
+    with pytest.raises(DataError, match=r"end with the year 2099: 2150-01-01"):
+        tidal_potential(tai_from_iso("2150-01-01T00:00:00Z"), Place(52.3, 10.5))

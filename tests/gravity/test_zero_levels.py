@@ -114,5 +114,7 @@ def test_the_u_of_a_datum_is_added():
     datum = ZeroLevel("harbour", 62_636_856.5, u=0.3, source="test")
     number = GeopotentialNumber(10.0, 0.4, datum, "mean_tide")
     assert number.counted_from("height_reference").u == pytest.approx(0.5)
+    with pytest.raises(ConventionError, match="unknown tide system: 'wet'"):
+        GeopotentialNumber(10.0, 0.1, datum, "wet")
     with pytest.raises(ConventionError, match=r"must not be negative: -0.1"):
         GeopotentialNumber(10.0, -0.1, datum, "mean_tide")
