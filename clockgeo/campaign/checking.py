@@ -101,8 +101,8 @@ def _check_session(
     report.sessions.append(
         SessionState(session.id, *ends, "measured", valid, valid / one.record.span)
     )
-    report.notes += [f"[[session]] {session.id!r}: {note}" for note in one.record.notes]
-    report.problems += _outside_its_time(session, one)
+    report.notes.extend(f"[[session]] {session.id!r}: {note}" for note in one.record.notes)
+    report.problems.extend(_outside_its_time(session, one))
 
 
 def _outside_its_time(session: Session, one: Measured) -> list[str]:

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 import numpy as np
 
@@ -12,17 +13,13 @@ from clockgeo.campaign.results import Comparison
 from clockgeo.campaign.schema import Campaign, GeoidSource
 from clockgeo.errors import DataError
 from clockgeo.files import shipped_grid
-from clockgeo.gravity import (
-    GeoidModel,
-    TideSystem,
-    convert_tide_system,
-    number_of,
-    open_geoid,
-    zero_level_shift,
-)
+from clockgeo.gravity import TideSystem, convert_tide_system, number_of, zero_level_shift
 from clockgeo.levelling.session_rows import NumberOf
 from clockgeo.levelling.solution import Solution
 from clockgeo.levelling.stations import Site
+
+if TYPE_CHECKING:
+    from clockgeo.gravity import GeoidModel
 
 __all__ = ["GeodeticNumbers", "compare", "geodetic_numbers", "geoid_path"]
 
@@ -88,6 +85,8 @@ def geodetic_numbers(
     placed = [site for site in sites if site.ellipsoidal_height is not None]
     if campaign.geoid is None or len(placed) < 2:
         return None
+    from clockgeo.gravity import open_geoid  # heavy: only where a geoid is named
+
     source = campaign.geoid
     model = open_geoid(
         geoid_path(source, folder),

@@ -165,7 +165,7 @@ def level_measured(
         ),
         sessions=tuple(_session_results(measured, statistics, systematic, solution)),
         sites=tuple(site_results(campaign, solution, solved)),
-        differences=tuple(differences(campaign, solution, pairs, statistics.freedom)),
+        differences=tuple(differences(campaign, solution, pairs, statistics.degrees_of_freedom)),
         covariance=covariance_of(solution, solved),
         effects=tuple(budget(campaign, solution, pairs, scatter)),
         fit=FitResult(
@@ -174,7 +174,7 @@ def level_measured(
             p_value=solution.fit.p_value,
         ),
         scatter=statistics.scatter,
-        noise=statistics.noise,
+        noise=statistics.noise_results(measured),
         comparison=tuple(compare(campaign, solution, pairs, geodetic)),
         notes=(*notes, *statistics.notes),
         provenance=Provenance(

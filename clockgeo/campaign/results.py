@@ -153,7 +153,8 @@ class ScatterResult(Table):
 
     standard_deviation: float
     lower: float
-    upper: float
+    upper: float | None
+    """Ends of the 95 % interval; null where there is no upper limit."""
     birge_ratio: float | None
     applied: bool
     """Whether it is part of the stated u."""

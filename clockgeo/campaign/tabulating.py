@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass
 from itertools import combinations
 
 import numpy as np
@@ -24,26 +23,22 @@ from clockgeo.levelling.redshift import shift_from_potential
 from clockgeo.levelling.session_rows import NumberOf
 from clockgeo.levelling.solution import Solution
 
-__all__ = ["Freedom", "budget", "covariance_of", "differences", "site_results", "site_pairs"]
+__all__ = ["budget", "covariance_of", "differences", "effective_freedom", "site_results", "site_pairs"]
 
 
-@dataclass(frozen=True)
-class Freedom:
-    """Degrees of freedom of what was estimated from the data themselves.
+def effective_freedom(statistical: float, u_statistical: float, u: float) -> float:
+    """Effective degrees of freedom of `u` after Welch and Satterthwaite (JCGM 100, G.4).
 
-    Attributes
+    Parameters
     ----------
     statistical : float
-        Of the statistical part of every u (noise and excess scatter); may be infinite.
+        Degrees of freedom of the statistical part; the rest of u counts as known.
+    u_statistical, u : float
+        The statistical part and the whole, in one unit.
     """
-
-    statistical: float
-
-    def of(self, u_statistical: float, u: float) -> float:
-        """Effective degrees of freedom of `u` after Welch and Satterthwaite (JCGM 100, G.4)."""
-        if not np.isfinite(self.statistical) or u_statistical <= 0.0:
-            return float("inf")
-        return self.statistical * (u / u_statistical) ** 4
+    if not np.isfinite(statistical) or u_statistical <= 0.0:
+        return float("inf")
+    return statistical * (u / u_statistical) ** 4
 
 
 def site_pairs(campaign: Campaign, solved: Sequence[str]) -> list[tuple[str, str]]:
@@ -100,7 +95,7 @@ def _slopes(campaign: Campaign, numbers: Mapping[str, float]) -> dict[str, tuple
 
 
 def differences(
-    campaign: Campaign, solution: Solution, pairs: Sequence[tuple[str, str]], freedom: Freedom
+    campaign: Campaign, solution: Solution, pairs: Sequence[tuple[str, str]], freedom: float
 ) -> list[DifferenceResult]:
     """Potential and normal-height difference of every pair, second minus first."""
     names = {name for pair in pairs for name in pair}
@@ -112,7 +107,7 @@ def differences(
         u = solution.u(combination)
         (low, low_slope), (high, high_slope) = slopes[first], slopes[second]
         in_height = {NumberOf(second): high_slope, NumberOf(first): -low_slope}
-        effective = freedom.of(solution.noise_u(combination, "clock"), u)
+        effective = effective_freedom(freedom, solution.noise_u(combination, "clock"), u)
         finite = effective if np.isfinite(effective) else 1e9
         results.append(
             DifferenceResult(

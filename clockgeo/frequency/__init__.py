@@ -9,6 +9,11 @@ import importlib
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
+    from clockgeo.frequency.scatter import ExcessScatter, excess_scatter
+    from clockgeo.frequency.generator import draw_noise
+    from clockgeo.frequency.mean import TickSeries, mean_covariance
+    from clockgeo.frequency.noise import NoiseModel
+    from clockgeo.frequency.noise_fit import NoiseFit, fit_noise
     from clockgeo.frequency.diagnosis import Finding, diagnose
     from clockgeo.frequency.layout import RecordLayout
     from clockgeo.frequency.ratio import exact_number, fractional_frequency, ratio_text
@@ -20,6 +25,15 @@ if TYPE_CHECKING:
     from clockgeo.frequency.writing import write_record
 
 _HOMES = {
+    # noise
+    "ExcessScatter": "scatter",
+    "excess_scatter": "scatter",
+    "NoiseFit": "noise_fit",
+    "NoiseModel": "noise",
+    "TickSeries": "mean",
+    "draw_noise": "generator",
+    "fit_noise": "noise_fit",
+    "mean_covariance": "mean",
     # records
     "Finding": "diagnosis",
     "Mask": "screening",
@@ -46,6 +60,14 @@ _HOMES = {
 """Public name -> module of this package that holds it. No name may equal a module's."""
 
 __all__ = [
+    "ExcessScatter",
+    "excess_scatter",
+    "NoiseFit",
+    "NoiseModel",
+    "TickSeries",
+    "draw_noise",
+    "fit_noise",
+    "mean_covariance",
     "Finding",
     "Mask",
     "RECOMMENDED_FREQUENCIES",

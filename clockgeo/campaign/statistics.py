@@ -1,0 +1,245 @@
+"""Statistics of a campaign: noise of each pair, covariance of the session means, excess scatter."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from clockgeo.campaign.evidence import Evidence, GroupEvidence, RecordEvidence
+from clockgeo.campaign.measuring import Measured
+from clockgeo.campaign.results import NoiseResult, ScatterResult
+from clockgeo.campaign.schema import Campaign
+from clockgeo.errors import DataError
+from clockgeo.frequency import (
+    ExcessScatter,
+    NoiseModel,
+    TickSeries,
+    diagnose,
+    excess_scatter,
+    fit_noise,
+    mean_covariance,
+)
+from clockgeo.levelling.linear_model import ModelBuilder
+from clockgeo.levelling.redshift import potential_from_shift
+from clockgeo.levelling.session_rows import SessionMean, add_session_rows
+
+__all__ = ["Group", "SessionStatistics", "session_statistics"]
+
+_MATTERS = 0.1
+"""A link counts in the grouping where its deviation exceeds this share of the clocks'."""
+
+
+@dataclass(frozen=True, eq=False)
+class Group:
+    """Sessions whose noise is one process: same clocks, alike links, one sampling interval.
+
+    Attributes
+    ----------
+    name : str
+    members : tuple of int
+        Places in the list of sessions.
+    model : NoiseModel
+    fitted : bool
+        False where the records are too short and the document's model is used.
+    degrees_of_freedom : float
+        Of the fitted white level; infinite for a stated model.
+    """
+
+    name: str
+    members: tuple[int, ...]
+    model: NoiseModel
+    fitted: bool
+    degrees_of_freedom: float
+
+
+@dataclass(frozen=True, eq=False)
+class SessionStatistics:
+    """What the data themselves say about the uncertainty of the session means.
+
+    Attributes
+    ----------
+    covariance : float array, shape (K, K)
+        Statistical covariance of the means, excess scatter included, fractional squared.
+    scatter_u : float
+        Excess scatter that is included, fractional.
+    degrees_of_freedom : float
+        Of the statistical part of the uncertainty.
+    """
+
+    covariance: NDArray[np.float64]
+    groups: tuple[Group, ...]
+    scatter: ScatterResult | None
+    scatter_u: float
+    degrees_of_freedom: float
+    findings: tuple[tuple[str, ...], ...]
+    notes: tuple[str, ...]
+
+    def noise_results(self, measured: Sequence[Measured]) -> tuple[NoiseResult, ...]:
+        """The noise models as they stand in the result; zero levels as null."""
+        return tuple(
+            NoiseResult(
+                pair=group.name,
+                sessions=tuple(measured[place].session.id for place in group.members),
+                source="fitted" if group.fitted else "stated in the document",
+                **{name: level or None for name, level in group.model.model_dump().items()},
+            )
+            for group in self.groups
+        )
+
+
+    def evidence(self, measured: Sequence[Measured]) -> Evidence:
+        """What pictures are drawn from."""
+        return Evidence(
+            records=tuple(
+                RecordEvidence(
+                    session=one.session.id,
+                    tai_ns=one.record.tai_ns,
+                    y=one.record.y,
+                    reasons=one.screening.reasons,
+                    interval=one.record.interval,
+                )
+                for one in measured
+            ),
+            groups=tuple(
+                GroupEvidence(
+                    name=group.name,
+                    sessions=tuple(measured[place].session.id for place in group.members),
+                    series=tuple(_series(measured[place]) for place in group.members),
+                    interval=measured[group.members[0]].record.interval,
+                    model=group.model,
+                )
+                for group in self.groups
+            ),
+        )
+
+
+def session_statistics(
+    campaign: Campaign, measured: Sequence[Measured], means: Sequence[SessionMean]
+) -> SessionStatistics:
+    """Fit the noise of every group, and state the covariance of all session means."""
+    groups = tuple(
+        _fitted(campaign, name, places, measured)
+        for name, places in _grouped(campaign, measured).items()
+    )
+    covariance = np.zeros((len(measured), len(measured)))
+    notes: list[str] = []
+    for group in groups:
+        where = np.ix_(group.members, group.members)
+        covariance[where] = _group_covariance(group, measured)
+        if not group.fitted:
+            notes.append(
+                f"{group.name}: records too short for a fit; the stated instability is used"
+            )
+    excess = _excess(campaign, covariance, means)
+    applied = excess is not None and excess.standard_deviation > 0.0
+    scatter_u = excess.standard_deviation if applied and excess is not None else 0.0
+    if applied and excess is not None:
+        covariance = covariance + np.eye(len(measured)) * scatter_u**2
+    freedoms = [group.degrees_of_freedom for group in groups]
+    if applied and excess is not None:
+        freedoms.append(float(excess.degrees_of_freedom))
+    return SessionStatistics(
+        covariance=covariance,
+        groups=groups,
+        scatter=_scatter_result(excess, applied=applied),
+        scatter_u=scatter_u,
+        degrees_of_freedom=min(freedoms),
+        findings=tuple(
+            tuple(finding.words for finding in diagnose(one.record, valid=one.screening.valid))
+            for one in measured
+        ),
+        notes=tuple(notes),
+    )
+
+
+def _grouped(campaign: Campaign, measured: Sequence[Measured]) -> dict[str, list[int]]:
+    groups: dict[str, list[int]] = {}
+    for place, one in enumerate(measured):
+        name = " - ".join(one.pair)
+        links = _links_that_matter(campaign, one)
+        if links:
+            name += f" over {', '.join(links)}"
+        interval = round(one.record.interval, 6)
+        key = f"{name}, every {interval:g} s"
+        groups.setdefault(key, []).append(place)
+    return groups
+
+
+def _links_that_matter(campaign: Campaign, one: Measured) -> list[str]:
+    tau = np.geomspace(10.0, 1e5, 9)
+    clocks = campaign.clock(one.pair[0]).instability.combined(
+        campaign.clock(one.pair[1]).instability
+    )
+    limit = _MATTERS**2 * clocks.allan_variance(tau)
+    return [
+        name
+        for name in one.session.links
+        if np.any(campaign.link(name).instability.allan_variance(tau) > limit) and np.any(limit > 0)
+    ]
+
+
+def _series(one: Measured) -> TickSeries:
+    """Valid samples with the sign of the pair, so that reversed sessions are one process."""
+    return TickSeries(one.series.tick, one.direction * one.series.y)
+
+
+def _fitted(
+    campaign: Campaign, name: str, places: Sequence[int], measured: Sequence[Measured]
+) -> Group:
+    series = [_series(measured[place]) for place in places]
+    interval = measured[places[0]].record.interval
+    try:
+        fit = fit_noise(series, interval=interval)
+    except DataError:
+        stated = _stated_model(campaign, measured[places[0]])
+        if not np.any(stated.allan_variance([1.0, 1e4]) > 0.0):
+            raise
+        return Group(name, tuple(places), stated, fitted=False, degrees_of_freedom=float("inf"))
+    return Group(
+        name, tuple(places), fit.model, fitted=True, degrees_of_freedom=fit.degrees_of_freedom
+    )
+
+
+def _stated_model(campaign: Campaign, one: Measured) -> NoiseModel:
+    clocks = [campaign.clock(place.clock).instability for place in one.session.places]
+    links = [campaign.link(link).instability for link in one.session.links]
+    return NoiseModel().combined(*clocks, *links)
+
+
+def _group_covariance(group: Group, measured: Sequence[Measured]) -> NDArray[np.float64]:
+    members = [measured[place] for place in group.members]
+    signs = np.array([one.direction for one in members])
+    block = mean_covariance(
+        group.model, [_series(one) for one in members], interval=members[0].record.interval
+    )
+    return np.asarray(np.outer(signs, signs) * block)
+
+
+def _excess(
+    campaign: Campaign, covariance: NDArray[np.float64], means: Sequence[SessionMean]
+) -> ExcessScatter | None:
+    """Excess scatter of the sessions about the solution, given all that is stated."""
+    if campaign.head.scatter == "none":
+        return None
+    builder = ModelBuilder()
+    add_session_rows(builder, means, covariance, tide_system=campaign.head.tide_system)
+    model = builder.build()
+    scale = potential_from_shift(1.0)
+    return excess_scatter(
+        model.values / scale, model.covariance() / scale**2, model.design.toarray()
+    )
+
+
+def _scatter_result(excess: ExcessScatter | None, *, applied: bool) -> ScatterResult | None:
+    if excess is None or excess.degrees_of_freedom == 0:
+        return None
+    return ScatterResult(
+        standard_deviation=excess.standard_deviation,
+        lower=excess.lower,
+        upper=excess.upper if np.isfinite(excess.upper) else None,
+        birge_ratio=excess.birge_ratio,
+        applied=applied,
+    )

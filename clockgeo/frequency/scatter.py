@@ -1,0 +1,123 @@
+"""Excess scatter: what sessions differ by beyond their own statistics."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+from scipy import linalg, optimize, stats
+
+from clockgeo.errors import DataError
+
+__all__ = ["ExcessScatter", "excess_scatter"]
+
+
+@dataclass(frozen=True)
+class ExcessScatter:
+    """Standard deviation of an independent offset of each value, and how well it is known.
+
+    Attributes
+    ----------
+    standard_deviation : float
+        REML estimate, never negative, in the unit of the values.
+    lower, upper : float
+        Ends of the 95 % profile interval; the lower end may be 0.
+    birge_ratio : float or None
+        Square root of chi squared over its degrees of freedom, a diagnostic only.
+    degrees_of_freedom : int
+        Number of values minus the rank of the design.
+    p_value : float or None
+        Probability of a larger chi squared without any excess.
+    """
+
+    standard_deviation: float
+    lower: float
+    upper: float
+    birge_ratio: float | None
+    degrees_of_freedom: int
+    p_value: float | None
+
+
+def excess_scatter(
+    values: ArrayLike, covariance: ArrayLike, design: ArrayLike | None = None
+) -> ExcessScatter:
+    """Estimate a random offset of each value beyond its stated covariance.
+
+    Parameters
+    ----------
+    values : array, shape (K,)
+        Such as the means of sessions.
+    covariance : array, shape (K, K)
+        Their covariance without excess, positive definite.
+    design : array, shape (K, p), optional
+        What the values have in common; a constant if absent.
+
+    Raises
+    ------
+    DataError
+        If the shapes do not fit or the covariance is not positive definite.
+
+    Notes
+    -----
+    Maximises the restricted likelihood of V + s² I over s² >= 0 (Patterson and Thompson 1971,
+    Biometrika 58:545). With no degree of freedom left nothing can be said: s = 0, upper = inf.
+    """
+    y = np.asarray(values, dtype=np.float64)
+    V = np.asarray(covariance, dtype=np.float64)
+    X = np.ones((y.size, 1)) if design is None else np.asarray(design, dtype=np.float64)
+    if V.shape != (y.size, y.size) or X.shape[0] != y.size:
+        raise DataError(
+            "values, covariance and design do not fit together",
+            value=f"{y.shape}, {V.shape}, {X.shape}",
+        )
+    contrasts = linalg.null_space(X.T)
+    freedom = contrasts.shape[1]
+    if freedom == 0:
+        return ExcessScatter(0.0, 0.0, float("inf"), None, 0, None)
+    # Contrasts see nothing of the common part; simultaneous diagonalisation makes s^2 a scalar.
+    scale = float(np.mean(np.diag(V)))
+    inner = contrasts.T @ (V / scale) @ contrasts
+    levels, turn = linalg.eigh(inner)
+    if levels[0] <= 0.0:
+        raise DataError("the covariance of the values is not positive definite", value=levels[0])
+    squares = (turn.T @ (contrasts.T @ y)) ** 2 / scale
+
+    def minus_two_log(excess: float) -> float:
+        total = levels + excess
+        return float(np.sum(np.log(total) + squares / total))
+
+    ceiling = 10.0 * (float(np.sum(squares)) + float(levels[-1]))
+    best = _minimum(minus_two_log, ceiling)
+    lower, upper = _profile(minus_two_log, best, ceiling)
+    chi = float(np.sum(squares / levels))
+    root = np.sqrt(scale)
+    return ExcessScatter(
+        standard_deviation=float(root * np.sqrt(best)),
+        lower=float(root * np.sqrt(lower)),
+        upper=float(root * np.sqrt(upper)),
+        birge_ratio=float(np.sqrt(chi / freedom)),
+        degrees_of_freedom=freedom,
+        p_value=float(stats.chi2.sf(chi, freedom)),
+    )
+
+
+def _minimum(loss, ceiling: float) -> float:  # type: ignore[no-untyped-def]
+    grid = np.concatenate(([0.0], np.geomspace(1e-4, ceiling, 80)))
+    place = int(np.argmin([loss(x) for x in grid]))
+    low, high = grid[max(place - 1, 0)], grid[min(place + 1, grid.size - 1)]
+    found = optimize.minimize_scalar(loss, bounds=(low, high), method="bounded")
+    return float(found.x) if found.fun < loss(0.0) else 0.0
+
+
+def _profile(loss, best: float, ceiling: float) -> tuple[float, float]:  # type: ignore[no-untyped-def]
+    limit = loss(best) + float(stats.chi2.ppf(0.95, 1))
+
+    def above(x: float) -> float:
+        return float(loss(x) - limit)
+
+    lower = 0.0 if best == 0.0 or above(0.0) <= 0.0 else float(optimize.brentq(above, 0.0, best))
+    top = ceiling
+    while above(top) < 0.0 and top < 1e12:
+        top *= 10.0
+    return lower, float(optimize.brentq(above, best, top)) if above(top) > 0.0 else float("inf")
