@@ -4,8 +4,13 @@ from __future__ import annotations
 
 from pathlib import Path
 
+import hypothesis
 import numpy as np
 import pytest
+
+# The first example may pay for an import; a time limit would fail on a busy machine only.
+hypothesis.settings.register_profile("project", deadline=None)
+hypothesis.settings.load_profile("project")
 
 
 @pytest.fixture

@@ -45,7 +45,7 @@ LOAD = LoadTable(
     st.integers(0, 300 * DAY_NS),
     st.integers(0, 3 * DAY_NS),
 )
-@settings(max_examples=30, deadline=None)
+@settings(max_examples=30)
 def test_interpolation_error_is_below_1e21(latitude, longitude, later, length):
     start, stop = START + later, START + later + length
     tide = TideInterpolator(start, stop, SiteTide(Place(latitude, longitude)), INLAND)
