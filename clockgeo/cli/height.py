@@ -33,6 +33,10 @@ FixedIn = Annotated[
     str,
     typer.Option("--fixed-in", help="crust (a mark) or space; differs for tide_free only."),
 ]
+DatumLatitude = Annotated[
+    float | None,
+    typer.Option("--datum-latitude", help="Of a datum point that keeps its number in all tides."),
+]
 FromLevel = Annotated[
     str | None, typer.Option("--from-zero-level", help="Zero level given: name or W0 in m² s⁻².")
 ]
@@ -54,6 +58,7 @@ def command(
     from_tide: FromTide = None,
     to_tide: ToTide = None,
     fixed_in: FixedIn = "crust",
+    datum_latitude: DatumLatitude = None,
     from_zero_level: FromLevel = None,
     to_zero_level: ToLevel = None,
     ellipsoid: Ellipsoid = "grs80",
@@ -96,6 +101,7 @@ def command(
             source=from_tide,
             target=to_tide,
             fixed_in=_fixed_in(fixed_in),
+            datum_latitude=datum_latitude,
         )
         number += float(shift)
     if from_zero_level is not None and to_zero_level is not None:

@@ -79,6 +79,7 @@ def command(
         tide_series,
         write_tide_series,
     )
+    from clockgeo.gravity.tide_curves import series_suffix
     from clockgeo.levelling.redshift import shift_from_potential
     from clockgeo.times import tai_from_iso
 
@@ -86,6 +87,8 @@ def command(
         raise typer.BadParameter("a second place needs both --to-latitude and --to-longitude")
     if to_load is not None and to_latitude is None:
         raise typer.BadParameter("--to-load needs a second place")
+    if out is not None:
+        series_suffix(out)
     first, last = tai_from_iso(start), tai_from_iso(stop)
     wobble = None if pole is None else read_pole_coordinates(pole)
 

@@ -18,7 +18,7 @@ from clockgeo.times import DAY_NS, SECOND_NS, iso_utc, utc_julian_date
 if TYPE_CHECKING:
     import xarray
 
-__all__ = ["TideSeries", "tide_series", "write_tide_series"]
+__all__ = ["TideSeries", "series_suffix", "tide_series", "write_tide_series"]
 
 _LARGEST = 5_000_000
 _JULIAN_1970 = 2_440_587.5
@@ -131,16 +131,27 @@ def write_tide_series(
     columns = {"potential": series.potential}
     if fractional_frequency is not None:
         columns["fractional_frequency"] = fractional_frequency
-    suffix = Path(path).suffix.lower()
-    if suffix == ".csv":
+    if series_suffix(path) == ".csv":
         write_text(path, _csv(series, columns), replace=replace)
-    elif suffix == ".nc":
+    else:
         with whole_file(path, replace=replace) as partial:
             _dataset(series, columns).to_netcdf(partial)
-    else:
+
+
+def series_suffix(path: str | Path) -> str:
+    """Suffix of a file for a series, ``.csv`` or ``.nc``.
+
+    Raises
+    ------
+    DataError
+        If it is neither; ask before the series is computed.
+    """
+    suffix = Path(path).suffix.lower()
+    if suffix not in (".csv", ".nc"):
         raise DataError(
             "unknown kind of file", value=str(path), allowed="A name that ends in .csv or .nc"
         )
+    return suffix
 
 
 _UNITS = {"potential": "m2 s-2", "fractional_frequency": "1"}

@@ -62,6 +62,17 @@ def test_a_height_changes_its_tide_system():
     assert moved["height"] == pytest.approx(100 - 0.122394, abs=1e-5)
 
 
+def test_a_datum_point_keeps_its_number():
+    """EPSG method 1107, with the latitude of its nominal origin in place of the constant."""
+    latitude = str(50 + 55 / 60 + 1.5 / 3600)
+    moved = result_of(
+        *("--height", "100.154", "--latitude", latitude, "--datum-latitude", "52.381389"),
+        *("--from-tide", "zero_tide", "--to-tide", "mean_tide"),
+    )
+    # the registry's constant is the origin's term to 0.2 mm
+    assert moved["height"] == pytest.approx(100.147, abs=0.0007)
+
+
 def test_the_table_for_people():
     done = run("--geopotential-number", "748", "--latitude", "52.3")
     assert "76.228357" in done.stdout
