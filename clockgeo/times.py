@@ -77,7 +77,11 @@ def tai_from_mjd_utc(day: ArrayLike, nanosecond: ArrayLike) -> NDArray[np.int64]
             advice="Check which column holds the time, and its unit",
         )
     first_days, offsets = _leap_table()
-    tai_minus_utc = offsets[np.searchsorted(first_days, days, side="right") - 1]
+    ends = np.searchsorted(first_days, [days.min(), days.max()], side="right") if days.size else [0]
+    if ends[0] == ends[-1]:  # no leap second in between: one offset for all
+        tai_minus_utc = offsets[ends[0] - 1]
+    else:
+        tai_minus_utc = offsets[np.searchsorted(first_days, days, side="right") - 1]
     since_origin = (days - _ORIGIN_MJD) * DAY_NS + np.asarray(nanosecond, dtype=np.int64)
     return np.asarray(since_origin + tai_minus_utc * SECOND_NS)
 

@@ -80,29 +80,40 @@ def estimate_interval(tai_ns: NDArray[np.int64]) -> float:
     DataError
         If there are fewer than two stamps, or coarse stamps with many rows missing.
     """
+    width = _rough_width(tai_ns)
+    steps = np.diff(tai_ns)
+    return _interval(steps, _whole_steps(tai_ns, steps, width)[0], width)
+
+
+def _rough_width(tai_ns: NDArray[np.int64]) -> float:
+    """Interval in ns from the first rows, good enough to count the intervals of every step."""
     if tai_ns.size < 2:
         raise DataError(
             "one row is not enough to tell the sampling interval", advice=_STATE_THE_INTERVAL
         )
-    width = _first_guess(tai_ns)
-    if tai_ns.size > 2 * _ENOUGH_ROWS:
-        width = _refined(tai_ns[:_ENOUGH_ROWS], width)
-    width = _refined(tai_ns, _refined(tai_ns[:_ENOUGH_ROWS], width))
-    return _plainest(width, 0.25 * width / tai_ns.size) / SECOND_NS
+    some = tai_ns[:_ENOUGH_ROWS]
+    width = _first_guess(tai_ns[: 4 * _ENOUGH_ROWS])
+    steps = np.diff(some)
+    for _ in range(2):
+        width = _mean_width(steps, _whole_steps(some, steps, width)[0], width)
+    return width
 
 
-def _refined(tai_ns: NDArray[np.int64], width: float) -> float:
+def _mean_width(steps: NDArray[np.int64], whole: NDArray[np.int64], width: float) -> float:
     """Time between rows over the number of intervals it holds, long gaps left out; ns."""
-    steps = np.diff(tai_ns)
-    whole, _ = _whole_steps(tai_ns, steps, width)
-    long = whole > _ANEW_AFTER
-    intervals = np.sum(whole) - np.sum(whole[long])
-    return float(np.sum(steps) - np.sum(steps[long])) / float(intervals) if intervals else width
+    long = np.flatnonzero(whole > _ANEW_AFTER)
+    intervals = int(np.sum(whole) - np.sum(whole[long]))
+    return float(np.sum(steps) - np.sum(steps[long])) / intervals if intervals else width
+
+
+def _interval(steps: NDArray[np.int64], whole: NDArray[np.int64], width: float) -> float:
+    """Interval in s, with the fewest digits that the length of the record allows."""
+    mean = _mean_width(steps, whole, width)
+    return _plainest(mean, 0.25 * mean / (steps.size + 1)) / SECOND_NS
 
 
 def _first_guess(tai_ns: NDArray[np.int64]) -> float:
     """Interval in ns, good to a part in a hundred or so."""
-    tai_ns = tai_ns[: 4 * _ENOUGH_ROWS]
     lag = min(_LAG, max(1, (tai_ns.size - 1) // 4))
     strides = tai_ns[lag:] - tai_ns[:-lag]
     steps = np.diff(tai_ns)
@@ -157,23 +168,18 @@ def sample_ticks(tai_ns: NDArray[np.int64], *, interval: float | None = None) ->
     interval), unwrapped, and the tick is the integer nearest to x − ψ. Stamps may be off by up to
     0.4 intervals; an interval wrong by 1 part in 1000 costs no tick.
     """
-    chosen = estimate_interval(tai_ns) if interval is None else float(interval)
-    width = chosen * SECOND_NS
+    width = _rough_width(tai_ns) if interval is None else float(interval) * SECOND_NS
     _refuse_dense(tai_ns, width)
     steps = np.diff(tai_ns)
-    whole, coarse = _whole_steps(tai_ns, steps, width)
-    np.maximum(whole, 1, out=whole)
-    position = tai_ns / width
-    tick = _counted_from_origin(position, whole)
-    position -= tick
-    off_grid = steps / width
-    off_grid -= whole
-    off_grid = np.abs(off_grid, out=off_grid)
+    whole, off_grid, coarse = _whole_steps(tai_ns, steps, width)
+    chosen = _interval(steps, whole, width) if interval is None else float(interval)
+    tick = _counted_from_origin(tai_ns, np.maximum(whole, 1, out=whole), chosen * SECOND_NS)
+    some = slice(None, None, tick.size // (4 * _ENOUGH_ROWS) + 1)
     return Sampling(
         interval=chosen,
         tick=tick,
-        jitter=_jitter(off_grid[: 4 * _ENOUGH_ROWS]) * chosen,
-        wander=float(np.ptp(position)) * chosen,
+        jitter=_jitter(off_grid[some]) * chosen,
+        wander=float(np.ptp(tai_ns[some] / SECOND_NS - tick[some] * chosen)),
         restarts=0 if coarse else int(np.count_nonzero(off_grid > _COARSE)),
     )
 
@@ -193,16 +199,17 @@ def _refuse_dense(tai_ns: NDArray[np.int64], width: float) -> None:
 
 def _whole_steps(
     tai_ns: NDArray[np.int64], steps: NDArray[np.int64], width: float
-) -> tuple[NDArray[np.int64], bool]:
-    """Whole intervals between neighbouring rows, and whether the stamps are coarse."""
+) -> tuple[NDArray[np.int64], NDArray[np.float64], bool]:
+    """Whole intervals between rows, how far steps are from whole, and whether stamps are coarse."""
     counts = steps / width
     whole = np.rint(counts)
     counts -= whole
-    coarse = counts.size > 0 and float(np.mean(np.abs(counts, out=counts) > _COARSE)) > 0.01
+    off_grid = np.abs(counts, out=counts)
+    coarse = np.count_nonzero(off_grid > _COARSE) > 0.01 * steps.size
     if coarse:
         position = tai_ns / width
         whole = np.diff(np.rint(position - _followed_phase(position)))
-    return whole.astype(np.int64), coarse
+    return whole.astype(np.int64), off_grid, coarse
 
 
 def _followed_phase(position: NDArray[np.float64]) -> NDArray[np.float64]:
@@ -216,14 +223,17 @@ def _followed_phase(position: NDArray[np.float64]) -> NDArray[np.float64]:
 
 
 def _counted_from_origin(
-    position: NDArray[np.float64], whole: NDArray[np.int64]
+    tai_ns: NDArray[np.int64], whole: NDArray[np.int64], width: float
 ) -> NDArray[np.int64]:
     """Sum the steps, anew from the rounded position at the first row and after each long gap."""
-    tick = np.zeros(position.size, dtype=np.int64)
+    tick = np.zeros(tai_ns.size, dtype=np.int64)
     np.cumsum(whole, out=tick[1:])
     anew = np.append(0, np.flatnonzero(whole > _ANEW_AFTER) + 1)
-    shift = np.rint(position[anew]).astype(np.int64) - tick[anew]
-    tick += np.repeat(shift, np.diff(np.append(anew, position.size)))
+    shift = np.rint(tai_ns[anew] / width).astype(np.int64) - tick[anew]
+    if anew.size == 1:
+        tick += shift
+    else:
+        tick += np.repeat(shift, np.diff(np.append(anew, tick.size)))
     return tick
 
 

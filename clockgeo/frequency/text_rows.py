@@ -31,7 +31,10 @@ if TYPE_CHECKING:
 
 __all__ = ["text_rows"]
 
-_MJD_PLACES = 15
+_MJD_PLACES = 14
+"""Decimals of an MJD: one step is 0.864 ns, so that every nanosecond comes back."""
+_REFERENCE_MJD = 58_849
+"""Steps are counted from here; 64 bits then hold the years 1768 to 2272."""
 _FIRST_MJD, _LAST_MJD = 41_317, 142_000
 _UNIX_EPOCH_MJD = 40_587
 _NOT_FINITE = {"nan", "inf", "infinity"}
@@ -114,19 +117,25 @@ def _times(column: pl.Series, layout: RecordLayout) -> tuple[NDArray[np.int64], 
 
 
 def _split_mjd(column: pl.Series) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
-    """Day number (-1 where null) and nanosecond of the day, rounded once."""
+    """Day number (-1 where null) and nanosecond of the day."""
     import polars as pl
 
-    steps = pl.col("time").to_physical()
-    one_day = pl.lit(10**_MJD_PLACES, dtype=pl.Int128)
-    parts = column.to_frame("time").select(
-        day=(steps // one_day).cast(pl.Int64, strict=False).fill_null(-1),
-        part=(steps % one_day).cast(pl.Int64).fill_null(0),
-    )
-    day = parts["day"].to_numpy()
-    # 86 400e9 ns a day over 1e15 steps a day is 864/10 000; the product stays below 2^63.
-    rest = (parts["part"].to_numpy() * 864 + 5_000) // 10_000
-    return day + (rest == DAY_NS), np.where(rest == DAY_NS, 0, rest)
+    reference = pl.lit(_REFERENCE_MJD * 10**_MJD_PLACES, dtype=pl.Int128)
+    steps = (pl.col("time").to_physical() - reference).cast(pl.Int64, strict=False)
+    counted = column.to_frame("time").select(steps)["time"]
+    elapsed = counted.fill_null(0).to_numpy()
+    day = elapsed // 10**_MJD_PLACES
+    rest = elapsed - day * 10**_MJD_PLACES
+    # A day has 864e11 ns and 1000e11 steps; the product stays below 2^63.
+    rest *= 864
+    rest += 500
+    rest //= 1_000
+    day += _REFERENCE_MJD
+    day += rest == DAY_NS
+    rest[rest == DAY_NS] = 0
+    if counted.null_count():
+        day[counted.is_null().to_numpy()] = -1
+    return day, rest
 
 
 def _split_iso(column: pl.Series) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
