@@ -185,7 +185,7 @@ class TideInterpolator:
         -----
         What the model leaves out is a few per cent of each wave, with a phase that is not known.
         u is `UNMODELLED_FRACTION` times the largest mean that the same epochs would have seen with
-        the tide shifted by up to half a day: near 0.04 of the amplitude for an hour, little for whole
+        the tide shifted by up to half a day: 0.04 of the amplitude for an hour, little for whole
         days. The u of the loading tables is added in full.
         """
         epochs = np.asarray(tai_ns, dtype=np.int64)
