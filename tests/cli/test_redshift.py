@@ -3,7 +3,9 @@
 from __future__ import annotations
 
 import json
+from types import SimpleNamespace
 
+import numpy as np
 import pytest
 from typer.testing import CliRunner
 
@@ -56,6 +58,32 @@ def test_a_tide_free_height_is_the_default_and_is_converted():
     assert default["geopotential_number"] - mean["geopotential_number"] == pytest.approx(
         0.6078 * -0.84099, abs=1e-4
     )
+
+
+def test_a_grid_gives_the_separation_with_its_u(monkeypatch, tmp_path):
+    """The grid's own conventions go in; what the user states is handed to the reader."""
+    asked = {}
+
+    def open_geoid(path, **stated):
+        asked.update(stated, path=path)
+        return SimpleNamespace(
+            quantity="height_anomaly",
+            tide_system="mean_tide",
+            zero_level="height_reference",
+            ellipsoid="grs80",
+            sample=lambda latitude, longitude: np.float64(43.5),
+            covariance=lambda latitude, longitude: np.array([[0.0004]]),
+        )
+
+    monkeypatch.setattr("clockgeo.gravity.open_geoid", open_geoid, raising=False)
+    grid = tmp_path / "invented.nc"
+    result = result_of(*PLACE, "--grid", str(grid), "--zero-level", "height_reference")
+    expected = result_of(*PLACE, *ANOMALY, *CONVENTIONS)
+    assert result["fractional_shift"] == expected["fractional_shift"]
+    assert result["u"] == pytest.approx(expected["u"], rel=1e-12)
+    assert result["inputs"]["separation_source"] == "invented.nc"
+    assert asked["path"] == grid
+    assert asked["zero_level"] == "height_reference"
 
 
 def test_the_table_for_people():
