@@ -13,7 +13,7 @@ if TYPE_CHECKING:
     from clockgeo.campaign.document import Document, campaign_schema, read_document
     from clockgeo.campaign.evidence import Evidence
     from clockgeo.campaign.leveller import Levelled, level, level_measured
-    from clockgeo.campaign.measuring import Measured, measure
+    from clockgeo.campaign.measuring import Measured, measure, measure_record
     from clockgeo.campaign.output import prepare_folder, read_result, result_dataset, write_result
     from clockgeo.campaign.results import LevelResult
     from clockgeo.campaign.schema import Campaign
@@ -31,6 +31,7 @@ _HOMES = {
     "level": "leveller",
     "level_measured": "leveller",
     "measure": "measuring",
+    "measure_record": "measuring",
     "prepare_folder": "output",
     "read_document": "document",
     "read_result": "output",
@@ -52,6 +53,7 @@ __all__ = [
     "level",
     "level_measured",
     "measure",
+    "measure_record",
     "prepare_folder",
     "read_document",
     "read_result",

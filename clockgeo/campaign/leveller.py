@@ -35,7 +35,7 @@ from clockgeo.errors import DataError
 from clockgeo.files import sha256_of
 from clockgeo.gravity import CAUTION, zero_level
 from clockgeo.levelling.linear_model import LinearModel, ModelBuilder
-from clockgeo.levelling.redshift import potential_from_shift, shift_from_potential
+from clockgeo.levelling.redshift import shift_from_potential
 from clockgeo.levelling.session_rows import (
     RatioError,
     RatioPrior,
@@ -150,7 +150,6 @@ def level_measured(
         inputs.append(Input(path=campaign.geoid.grid, sha256=sha256_of(grid)))
     if path is not None:
         inputs.append(Input(path=path.name, sha256=sha256_of(path)))
-    scatter = potential_from_shift(statistics.scatter_u) ** 2
     result = LevelResult(
         name=campaign.head.name,
         conventions=Conventions(
@@ -165,9 +164,9 @@ def level_measured(
         ),
         sessions=tuple(_session_results(measured, statistics, systematic, solution)),
         sites=tuple(site_results(campaign, solution, solved)),
-        differences=tuple(differences(campaign, solution, pairs, statistics.degrees_of_freedom)),
+        differences=tuple(differences(campaign, solution, pairs, statistics)),
         covariance=covariance_of(solution, solved),
-        effects=tuple(budget(campaign, solution, pairs, scatter)),
+        effects=tuple(budget(campaign, solution, pairs, statistics.scatter_u)),
         fit=FitResult(
             chi_squared=solution.fit.chi_squared,
             degrees_of_freedom=solution.fit.degrees_of_freedom,

@@ -25,7 +25,14 @@ from clockgeo.levelling.session_rows import SessionMean
 from clockgeo.levelling.stations import Clock, Site
 from clockgeo.levelling.tide_correction import TideCorrection, tide_correction
 
-__all__ = ["Measured", "measure", "nominal_frequency_of", "nominal_ratio_of", "tide_of"]
+__all__ = [
+    "Measured",
+    "measure",
+    "measure_record",
+    "nominal_frequency_of",
+    "nominal_ratio_of",
+    "tide_of",
+]
 
 
 @dataclass(frozen=True, eq=False)
@@ -168,15 +175,20 @@ def measure(
             where=f"session {session.id}",
             advice="Add its record, or leave the session out with --without",
         )
-    n = campaign.clock(session.numerator.clock)
     record = read_record(
         session.record,
         base=folder,
         name=session.id,
         nominal_ratio=nominal_ratio_of(campaign, session),
-        carrier=nominal_frequency_of(n),
+        carrier=nominal_frequency_of(campaign.clock(session.numerator.clock)),
         skip_bad_rows=skip_bad_rows,
     )
+    return measure_record(campaign, session, record)
+
+
+def measure_record(campaign: Campaign, session: Session, record: Record) -> Measured:
+    """Screen and correct a record that is already in memory; otherwise as `measure`."""
+    n = campaign.clock(session.numerator.clock)
     rules = session.screening or campaign.head.screening
     screening = screen(record, rules, carrier_hz=float(nominal_frequency_of(n)))
     if not screening.valid.any():

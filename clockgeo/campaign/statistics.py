@@ -65,15 +65,16 @@ class SessionStatistics:
         Statistical covariance of the means, excess scatter included, fractional squared.
     scatter_u : float
         Excess scatter that is included, fractional.
-    degrees_of_freedom : float
-        Of the statistical part of the uncertainty.
+    noise_freedom, scatter_freedom : float
+        Degrees of freedom of the fitted noise and of the excess scatter.
     """
 
     covariance: NDArray[np.float64]
     groups: tuple[Group, ...]
     scatter: ScatterResult | None
     scatter_u: float
-    degrees_of_freedom: float
+    noise_freedom: float
+    scatter_freedom: float
     findings: tuple[tuple[str, ...], ...]
     notes: tuple[str, ...]
 
@@ -88,7 +89,6 @@ class SessionStatistics:
             )
             for group in self.groups
         )
-
 
     def evidence(self, measured: Sequence[Measured]) -> Evidence:
         """What pictures are drawn from."""
@@ -138,15 +138,13 @@ def session_statistics(
     scatter_u = excess.standard_deviation if applied and excess is not None else 0.0
     if applied and excess is not None:
         covariance = covariance + np.eye(len(measured)) * scatter_u**2
-    freedoms = [group.degrees_of_freedom for group in groups]
-    if applied and excess is not None:
-        freedoms.append(float(excess.degrees_of_freedom))
     return SessionStatistics(
         covariance=covariance,
         groups=groups,
         scatter=_scatter_result(excess, applied=applied),
         scatter_u=scatter_u,
-        degrees_of_freedom=min(freedoms),
+        noise_freedom=min(group.degrees_of_freedom for group in groups),
+        scatter_freedom=float(excess.degrees_of_freedom) if excess else float("inf"),
         findings=tuple(
             tuple(finding.words for finding in diagnose(one.record, valid=one.screening.valid))
             for one in measured
@@ -169,7 +167,7 @@ def _grouped(campaign: Campaign, measured: Sequence[Measured]) -> dict[str, list
 
 
 def _links_that_matter(campaign: Campaign, one: Measured) -> list[str]:
-    tau = np.geomspace(10.0, 1e5, 9)
+    tau = np.geomspace(100.0, 1e5, 9)
     clocks = campaign.clock(one.pair[0]).instability.combined(
         campaign.clock(one.pair[1]).instability
     )
@@ -198,8 +196,17 @@ def _fitted(
         if not np.any(stated.allan_variance([1.0, 1e4]) > 0.0):
             raise
         return Group(name, tuple(places), stated, fitted=False, degrees_of_freedom=float("inf"))
-    return Group(
-        name, tuple(places), fit.model, fitted=True, degrees_of_freedom=fit.degrees_of_freedom
+    model = _no_less_than_stated(fit.model, _stated_model(campaign, measured[places[0]]))
+    return Group(name, tuple(places), model, fitted=True, degrees_of_freedom=fit.degrees_of_freedom)
+
+
+def _no_less_than_stated(fitted: NoiseModel, stated: NoiseModel) -> NoiseModel:
+    """Keep the stated slow noise where the data are too short to see it."""
+    return fitted.model_copy(
+        update={
+            name: max(getattr(fitted, name), getattr(stated, name))
+            for name in ("flicker_fm", "random_walk_fm")
+        }
     )
 
 

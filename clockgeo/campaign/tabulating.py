@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Hashable, Iterable, Iterator, Mapping, Sequence
 from itertools import combinations
 
 import numpy as np
@@ -17,28 +17,41 @@ from clockgeo.campaign.results import (
     SiteResult,
 )
 from clockgeo.campaign.schema import Campaign
+from clockgeo.campaign.statistics import SessionStatistics
 from clockgeo.gravity import heights_of
 from clockgeo.gravity.zero_levels import zero_level
-from clockgeo.levelling.redshift import shift_from_potential
+from clockgeo.levelling.redshift import potential_from_shift, shift_from_potential
 from clockgeo.levelling.session_rows import NumberOf
 from clockgeo.levelling.solution import Solution
 
-__all__ = ["budget", "covariance_of", "differences", "effective_freedom", "site_results", "site_pairs"]
+__all__ = [
+    "budget",
+    "covariance_of",
+    "differences",
+    "effective_freedom",
+    "site_results",
+    "site_pairs",
+]
 
 
-def effective_freedom(statistical: float, u_statistical: float, u: float) -> float:
+def effective_freedom(u: float, parts: Iterable[tuple[float, float]]) -> float:
     """Effective degrees of freedom of `u` after Welch and Satterthwaite (JCGM 100, G.4).
 
     Parameters
     ----------
-    statistical : float
-        Degrees of freedom of the statistical part; the rest of u counts as known.
-    u_statistical, u : float
-        The statistical part and the whole, in one unit.
+    u : float
+        The whole standard uncertainty.
+    parts : iterable of (float, float)
+        Parts that were estimated from data, each with its degrees of freedom; what is left of u
+        counts as known.
+
+    Returns
+    -------
+    float
+        u⁴ / Σ (u_i⁴/ν_i); infinite where no part is uncertain.
     """
-    if not np.isfinite(statistical) or u_statistical <= 0.0:
-        return float("inf")
-    return statistical * (u / u_statistical) ** 4
+    doubt = sum(part**4 / freedom for part, freedom in parts if part > 0.0)
+    return u**4 / doubt if doubt > 0.0 else float("inf")
 
 
 def site_pairs(campaign: Campaign, solved: Sequence[str]) -> list[tuple[str, str]]:
@@ -95,7 +108,10 @@ def _slopes(campaign: Campaign, numbers: Mapping[str, float]) -> dict[str, tuple
 
 
 def differences(
-    campaign: Campaign, solution: Solution, pairs: Sequence[tuple[str, str]], freedom: float
+    campaign: Campaign,
+    solution: Solution,
+    pairs: Sequence[tuple[str, str]],
+    statistics: SessionStatistics,
 ) -> list[DifferenceResult]:
     """Potential and normal-height difference of every pair, second minus first."""
     names = {name for pair in pairs for name in pair}
@@ -107,7 +123,11 @@ def differences(
         u = solution.u(combination)
         (low, low_slope), (high, high_slope) = slopes[first], slopes[second]
         in_height = {NumberOf(second): high_slope, NumberOf(first): -low_slope}
-        effective = effective_freedom(freedom, solution.noise_u(combination, "clock"), u)
+        scatter, noise = statistical_parts(solution, combination, statistics.scatter_u)
+        effective = effective_freedom(
+            u,
+            [(noise, statistics.noise_freedom), (scatter, statistics.scatter_freedom)],
+        )
         finite = effective if np.isfinite(effective) else 1e9
         results.append(
             DifferenceResult(
@@ -133,11 +153,31 @@ def covariance_of(solution: Solution, solved: Sequence[str]) -> CovarianceTable:
     )
 
 
+def statistical_parts(
+    solution: Solution, combination: Mapping[Hashable, float], scatter_u: float
+) -> tuple[float, float]:
+    """Parts of u from excess scatter and from noise, in m² s⁻².
+
+    Parameters
+    ----------
+    solution : Solution
+    combination : mapping
+        Unknown -> coefficient.
+    scatter_u : float
+        Excess scatter of each session that is part of the rows' noise, fractional.
+    """
+    weights = solution.weights(combination) @ solution.gain
+    clock_rows = np.array(solution.model.kinds) == "clock"
+    scatter = potential_from_shift(scatter_u) * float(np.linalg.norm(weights[clock_rows]))
+    noise = solution.noise_u(combination, "clock") ** 2 - scatter**2
+    return scatter, max(noise, 0.0) ** 0.5
+
+
 def budget(
     campaign: Campaign,
     solution: Solution,
     pairs: Sequence[tuple[str, str]],
-    scatter_variance: float,
+    scatter_u: float,
 ) -> Iterator[EffectLine]:
     """Split the u of every pair by cause; the squares of the lines add up to u squared.
 
@@ -147,19 +187,16 @@ def budget(
         What was solved.
     pairs : sequence of (str, str)
         Which differences.
-    scatter_variance : float
-        Variance of the excess scatter per session that is part of the noise, m⁴ s⁻⁴.
+    scatter_u : float
+        Excess scatter of each session that is part of the rows' noise, fractional.
     """
     for first, second in pairs:
         combination = {NumberOf(second): 1.0, NumberOf(first): -1.0}
         gravity = campaign.site(second).gravity or 9.81
-        weights = solution.weights(combination) @ solution.gain
-        clock_rows = np.array(solution.model.kinds) == "clock"
-        scatter = float(np.sum(weights[clock_rows] ** 2) * scatter_variance)
-        noise = solution.noise_u(combination, "clock") ** 2
+        scatter, noise = statistical_parts(solution, combination, scatter_u)
         lines = [
-            ("noise of clocks and links", "statistics", max(noise - scatter, 0.0) ** 0.5),
-            ("excess scatter between sessions", "scatter", scatter**0.5),
+            ("noise of clocks and links", "statistics", noise),
+            ("excess scatter between sessions", "scatter", scatter),
             (
                 "known number of the reference site",
                 "geodetic",

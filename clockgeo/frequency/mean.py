@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from clockgeo.frequency.noise import NoiseModel
 
-__all__ = ["TickSeries", "mean_covariance"]
+__all__ = ["TickSeries", "block_kernel", "mean_covariance"]
 
 _BLOCKS = 1500
 
@@ -58,7 +58,7 @@ def mean_covariance(
         covariance += np.diag(2.0 * runs * variance / (counts * interval) ** 2)
     if model.h_minus1 or model.h_minus2:
         weights, starts, width = _blocks(series, first, last)
-        kernel = _kernel(model, starts * interval, width * interval, span)
+        kernel = block_kernel(model, starts * interval, width * interval, span)
         covariance += weights @ kernel @ weights.T
     return covariance
 
@@ -78,7 +78,7 @@ def _blocks(
     return weights, occupied * float(width), float(width)
 
 
-def _kernel(
+def block_kernel(
     model: NoiseModel, starts: NDArray[np.float64], width: float, span: float
 ) -> NDArray[np.float64]:
     """Covariance of block means from the second antiderivative of the generalised covariance."""

@@ -17,7 +17,7 @@ from numpy.typing import NDArray
 from clockgeo.campaign.measuring import nominal_ratio_of, tide_of
 from clockgeo.campaign.schema import Campaign, Session, Truth
 from clockgeo.errors import DataError
-from clockgeo.frequency import NoiseModel, draw_noise, write_record
+from clockgeo.frequency import NoiseModel, Record, draw_noise, write_record
 from clockgeo.levelling.redshift import shift_from_potential
 from clockgeo.levelling.session_rows import (
     SessionMean,
@@ -44,11 +44,26 @@ class SimulatedSession:
         Starts of the averaging intervals; rows that are missing are left out.
     y : float array, shape (N,)
         Fractional frequency before any correction; NaN marks a row without valid data.
+    interval : float
+        Sampling interval in s.
     """
 
     session: Session
     tai_ns: NDArray[np.int64]
     y: NDArray[np.float64]
+    interval: float
+
+    def record(self) -> Record:
+        """Return the draw as it would be read back, without a file in between."""
+        usable = np.isfinite(self.y)
+        return Record(
+            name=self.session.id,
+            tai_ns=self.tai_ns,
+            y=self.y,
+            usable=usable,
+            interval=self.interval,
+            tick=np.rint(self.tai_ns / (self.interval * SECOND_NS)).astype(np.int64),
+        )
 
 
 def simulate_records(
@@ -254,7 +269,7 @@ def _with_gaps(
     y[hits] += truth.outlier_size * spread * stream.choice([-1.0, 1.0], size=hits.size)
     y[state == 1] = np.nan
     present = state != 2
-    return SimulatedSession(session, stamps[present], y[present])
+    return SimulatedSession(session, stamps[present], y[present], truth.interval)
 
 
 def _runs(
