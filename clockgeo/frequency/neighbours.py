@@ -45,7 +45,7 @@ class Neighbours:
     @property
     def noise(self) -> float:
         """Standard deviation of a correlation that is zero."""
-        return 1.0 / np.sqrt(self.rows)
+        return float(1.0 / np.sqrt(self.rows))
 
     @property
     def factor(self) -> float:

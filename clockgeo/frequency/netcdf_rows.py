@@ -14,8 +14,12 @@ from numpy.typing import NDArray
 
 from clockgeo.errors import DataError
 from clockgeo.frequency.layout import Column, RecordLayout
-from clockgeo.frequency.ratio import fractional_frequency
-from clockgeo.frequency.rows import BadRows, Rows
+from clockgeo.frequency.ratio import (
+    decimal_places,
+    fractional_frequency,
+    fractional_from_decimals,
+)
+from clockgeo.frequency.rows import FIRST_MJD, IMPOSSIBLE_DAY, LAST_MJD, BadRows, Rows
 from clockgeo.times import DAY_NS, tai_from_mjd_utc
 
 __all__ = ["TIME_VARIABLE", "VALUE_VARIABLE", "netcdf_rows"]
@@ -90,7 +94,7 @@ def netcdf_rows(
         dataset.set_auto_mask(False)
         variables = _Variables(dataset.variables, layout, where)
         time = variables.of("time_column", TIME_VARIABLE)
-        tai, known = _times(time, where)
+        tai, finite, possible = _times(time, where)
         y = _values(variables.of("value_column", VALUE_VARIABLE), layout, nominal, where)
         usable = ~np.isnan(y)
         if layout.flag_column is not None:
@@ -102,9 +106,11 @@ def netcdf_rows(
     lengths = {column.shape for column in (tai, y, usable, *([] if u is None else [u]))}
     if len(lengths) != 1 or tai.ndim != 1 or tai.size == 0:
         raise DataError("the variables need one common length", value=lengths, where=where)
-    for row in np.flatnonzero(~known).tolist():
-        bad.add(f"{where}, row {row + 1}", "the time is not finite")
-    return Rows(where, tai, y, usable, u, np.arange(1, tai.size + 1)).kept(known)
+    for row in np.flatnonzero(~possible).tolist():
+        bad.add(
+            f"{where}, row {row + 1}", IMPOSSIBLE_DAY if finite[row] else "the time is not finite"
+        )
+    return Rows(where, tai, y, usable, u, np.arange(1, tai.size + 1), unit="row").kept(possible)
 
 
 class _Variables:
@@ -130,8 +136,10 @@ class _Variables:
         )
 
 
-def _times(variable: Any, where: str) -> tuple[NDArray[np.int64], NDArray[np.bool_]]:
-    """TAI of every element, and where it is finite."""
+def _times(
+    variable: Any, where: str
+) -> tuple[NDArray[np.int64], NDArray[np.bool_], NDArray[np.bool_]]:
+    """TAI of every element, where it is finite, and where it lies in the years of UTC."""
     units, calendar = getattr(variable, "units", ""), getattr(variable, "calendar", "standard")
     match = _SINCE.fullmatch(units)
     unit = _UNIT_NS.get(_singular(match[1])) if match else None
@@ -157,12 +165,17 @@ def _times(variable: Any, where: str) -> tuple[NDArray[np.int64], NDArray[np.boo
         )
     since = datetime.fromisoformat(f"{_two_digits(match[2])}T{_two_digits(match[3] or '00:00')}")
     passed = (since - _TAI_ORIGIN) // _ONE_MICROSECOND * 1_000
-    counted, known = _nanoseconds(np.asarray(variable[:]), unit)
-    elapsed = counted + passed
+    values = np.asarray(variable[:])
+    finite = np.isfinite(values)
+    possible = finite & (np.abs(np.where(finite, values, 0.0)) * (unit / DAY_NS) < LAST_MJD)
+    elapsed = _nanoseconds(np.where(possible, values, 0), unit) + passed
+    offset = FIRST_MJD - _ORIGIN_MJD
     if calendar == "tai":
-        return elapsed, known
+        possible &= (elapsed > offset * DAY_NS) & (elapsed < (LAST_MJD - _ORIGIN_MJD) * DAY_NS)
+        return elapsed, finite, possible
     day, rest = np.divmod(elapsed, DAY_NS)
-    return tai_from_mjd_utc(day + _ORIGIN_MJD, rest), known
+    possible &= (day >= offset) & (day <= LAST_MJD - _ORIGIN_MJD)
+    return tai_from_mjd_utc(np.where(possible, day, offset) + _ORIGIN_MJD, rest), finite, possible
 
 
 def _two_digits(text: str) -> str:
@@ -175,15 +188,13 @@ def _singular(unit: str) -> str:
     return unit if unit in _UNIT_NS else unit.removesuffix("s")
 
 
-def _nanoseconds(values: NDArray[Any], unit: int) -> tuple[NDArray[np.int64], NDArray[np.bool_]]:
-    """Whole ns of counts in `unit` ns; floats are split so that their product stays exact."""
+def _nanoseconds(values: NDArray[Any], unit: int) -> NDArray[np.int64]:
+    """Whole ns of finite counts in `unit` ns; floats are split so that products stay exact."""
     if np.issubdtype(values.dtype, np.integer):
-        return values.astype(np.int64) * unit, np.ones(values.shape, dtype=bool)
-    known = np.isfinite(values)
-    finite = np.where(known, values, 0.0).astype(np.float64)
-    whole = np.floor(finite)
-    rest = np.rint((finite - whole) * unit)
-    return whole.astype(np.int64) * unit + rest.astype(np.int64), known
+        return np.asarray(values.astype(np.int64) * unit)
+    whole = np.floor(values.astype(np.float64))
+    rest = np.rint((values - whole) * unit)
+    return np.asarray(whole.astype(np.int64) * unit + rest.astype(np.int64))
 
 
 def _values(
@@ -198,13 +209,24 @@ def _values(
                 where=place,
                 advice="Write the ratios as a string variable, or as fractional deviations",
             )
-        texts = [str(text).strip() for text in variable[:]]
-        given = [position for position, text in enumerate(texts) if text.lower() not in {"", "nan"}]
-        y = np.full(len(texts), np.nan)
-        y[given] = fractional_frequency([texts[position] for position in given], nominal)
-        return y
+        return _ratios([str(text).strip() for text in variable[:]], nominal)
     values = _floats(variable, where)
     return values if nominal is None else values / float(nominal)
+
+
+def _ratios(texts: list[str], nominal: Fraction) -> NDArray[np.float64]:
+    """Ratios column by column; texts that do not parse as decimals one by one; blanks missing."""
+    import polars as pl
+
+    column = pl.Series(texts, dtype=pl.String)
+    decimals = column.cast(pl.Decimal(38, decimal_places(nominal)), strict=False)
+    y = fractional_from_decimals(decimals, nominal)
+    missing = column.str.to_lowercase().is_in(["", "nan"])
+    odd = np.flatnonzero((decimals.is_null() & ~missing).to_numpy())
+    if odd.size:
+        y = y.copy()
+        y[odd] = fractional_frequency([texts[row] for row in odd.tolist()], nominal)
+    return y
 
 
 def _floats(variable: Any, where: str) -> NDArray[np.float64]:

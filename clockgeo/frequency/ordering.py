@@ -71,6 +71,7 @@ def _joined(tables: Sequence[Rows]) -> Rows:
         usable=np.concatenate([table.usable for table in tables]),
         u=u,
         line=np.concatenate([table.line for table in tables]),
+        unit=tables[0].unit,
     )
 
 
@@ -91,7 +92,9 @@ def _merged(
     contradictions = BadRows()
     for which in np.flatnonzero(contradicted).tolist():
         members = np.flatnonzero(stamp == which)
-        lines = " and ".join(f"{names[files[row]]}, line {rows.line[row]}" for row in members)
+        lines = " and ".join(
+            f"{names[files[row]]}, {rows.unit} {rows.line[row]}" for row in members
+        )
         values = " and ".join(f"{rows.y[row]:.6g}" for row in members)
         contradictions.add(lines, f"values {values} at the same time")
     first = np.append(True, ~same_time)

@@ -20,6 +20,7 @@ if TYPE_CHECKING:
     import polars as pl
 
 __all__ = [
+    "NUMBER",
     "decimal_places",
     "exact_number",
     "fractional_frequency",
@@ -27,7 +28,8 @@ __all__ = [
     "ratio_text",
 ]
 
-_NUMBER = re.compile(r"[+-]?(\d+(\.\d*)?|\.\d+)([eE][+-]?\d{1,3})?")
+NUMBER = re.compile(r"[+-]?(\d+(\.\d*)?|\.\d+)([eE][+-]?\d{1,3})?")
+"""Decimal text of a finite number, without blanks; no longer exponent is believed."""
 _GROUPING = re.compile(r"(?<=\d)[ _\u2009\u202f](?=\d)")
 _DECIMAL_DIGITS = 37
 """Digits that fit a 128-bit decimal column with one to spare for the sign of a difference."""
@@ -58,7 +60,7 @@ def exact_number(text: str) -> Fraction:
     True
     """
     parts = [_GROUPING.sub("", part.strip()) for part in text.split("/")]
-    if len(parts) > 2 or not all(_NUMBER.fullmatch(part) for part in parts):
+    if len(parts) > 2 or not all(NUMBER.fullmatch(part) for part in parts):
         raise DataError(
             "not an exact decimal number",
             value=repr(text),

@@ -9,7 +9,11 @@ from numpy.typing import NDArray
 
 from clockgeo.errors import DataError
 
-__all__ = ["BadRows", "Rows"]
+__all__ = ["FIRST_MJD", "IMPOSSIBLE_DAY", "LAST_MJD", "BadRows", "Rows"]
+
+FIRST_MJD, LAST_MJD = 41_317, 142_000
+"""Days for which UTC is known: 1972 to 2247."""
+IMPOSSIBLE_DAY = "the time lies outside the years 1972 to 2247"
 
 _SHOWN = 5
 
@@ -74,6 +78,8 @@ class Rows:
         Standard uncertainty of each row.
     line : int64 array, shape (N,)
         Line in the file, or position in the variable, from 1.
+    unit : str
+        What that counts, for messages: ``"line"`` or ``"row"``.
     """
 
     file: str
@@ -82,12 +88,17 @@ class Rows:
     usable: NDArray[np.bool_]
     u: NDArray[np.float64] | None
     line: NDArray[np.int64]
+    unit: str = "line"
+
+    def place(self, row: int) -> str:
+        """Where a row is, for messages."""
+        return f"{self.file}, {self.unit} {self.line[row]}"
 
     def kept(self, keep: NDArray[np.bool_] | NDArray[np.int64]) -> Rows:
         """The rows of a mask or in the order of an index."""
         u = None if self.u is None else self.u[keep]
         columns = (self.tai_ns[keep], self.y[keep], self.usable[keep], u, self.line[keep])
-        return Rows(self.file, *columns)
+        return Rows(self.file, *columns, unit=self.unit)
 
     def without_bad_values(self, bad: BadRows) -> Rows:
         """Leave out, and tell, rows with an infinite value or a u that is none."""
@@ -99,5 +110,5 @@ class Rows:
             return self
         for row in np.flatnonzero(wrong).tolist():
             problem = "the value is not finite" if infinite[row] else "u is not a number >= 0"
-            bad.add(f"{self.file}, line {self.line[row]}", problem)
+            bad.add(self.place(row), problem)
         return self.kept(~wrong)

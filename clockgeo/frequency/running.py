@@ -64,7 +64,7 @@ def running_median_and_spread(
     edges, stretch_edges = _blocks(tick, width)
     counts = np.diff(edges)
     medians = _block_medians(y, edges)
-    centres = 0.5 * (tick[edges[:-1]] + tick[edges[1:] - 1])
+    centres = np.asarray(0.5 * (tick[edges[:-1]] + tick[edges[1:] - 1]), dtype=np.float64)
     level = _interpolated(tick, centres, medians, edges, stretch_edges)
     deviations = _block_medians(np.abs(y - level), edges) * _MAD_TO_SIGMA
     return Running(level, np.repeat(_pooled(deviations, counts), counts))
@@ -111,7 +111,7 @@ def _interpolated(
     levels = np.concatenate([medians[first], medians, medians[last]])
     order = np.argsort(nodes, kind="stable")
     origin = tick[0]
-    return np.interp(tick - origin, nodes[order] - origin, levels[order])
+    return np.asarray(np.interp(tick - origin, nodes[order] - origin, levels[order]))
 
 
 def _pooled(spreads: NDArray[np.float64], counts: NDArray[np.int64]) -> NDArray[np.float64]:

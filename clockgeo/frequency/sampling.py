@@ -21,11 +21,16 @@ __all__ = ["Sampling", "estimate_interval", "sample_ticks"]
 _LAG = 50
 _COARSE = 0.25
 """Stamps whose quantum is larger than this part of the interval are tracked over many rows."""
-_TRACKED_ROWS = 33
+_TRACKED_ROWS = 257
 _ANEW_AFTER = 60
 """Missing ticks after which the count starts anew from the common origin."""
 _ENOUGH_ROWS = 20_000
 """Rows that settle a median or a first guess."""
+_LARGEST_DRIFT = 0.1
+"""Largest drift, in intervals over the record, for which an interval is given fewer digits; the
+jitter of one stamp comes on top."""
+_LARGEST_WANDER = 0.01
+"""Largest part of its length that a record may wander against the estimated interval."""
 _DECIMAL_DAYS_NS = (86_400_000, 864_000_000)
 """Roundings of an MJD (1e-6 d, 1e-5 d) that are coarse against a second."""
 _STATE_THE_INTERVAL = "State the interval in the record's layout"
@@ -63,7 +68,7 @@ def estimate_interval(tai_ns: NDArray[np.int64]) -> float:
     rows are missing everywhere; then the time between rows is divided by the number of intervals
     it holds, so that the rounding of stamps cannot bias it (a median step can be off by the
     rounding: 1.037 s for 1.0568 s). The result is given with the fewest digits that keep every
-    stamp within a quarter of an interval.
+    stamp within a tenth of an interval and its jitter.
 
     Parameters
     ----------
@@ -95,21 +100,25 @@ def _rough_width(tai_ns: NDArray[np.int64]) -> float:
     width = _first_guess(tai_ns[: 4 * _ENOUGH_ROWS])
     steps = np.diff(some)
     for _ in range(2):
-        width = _mean_width(steps, _whole_steps(some, steps, width)[0], width)
+        width, _ = _mean_width(steps, _whole_steps(some, steps, width)[0], width)
     return width
 
 
-def _mean_width(steps: NDArray[np.int64], whole: NDArray[np.int64], width: float) -> float:
-    """Time between rows over the number of intervals it holds, long gaps left out; ns."""
+def _mean_width(
+    steps: NDArray[np.int64], whole: NDArray[np.int64], width: float
+) -> tuple[float, int]:
+    """Time between rows over the intervals it holds, ns, long gaps left out; that number too."""
     long = np.flatnonzero(whole > _ANEW_AFTER)
     intervals = int(np.sum(whole) - np.sum(whole[long]))
-    return float(np.sum(steps) - np.sum(steps[long])) / intervals if intervals else width
+    passed = int(np.sum(steps) - np.sum(steps[long]))
+    return (passed / intervals if intervals else width), max(intervals, 1)
 
 
 def _interval(steps: NDArray[np.int64], whole: NDArray[np.int64], width: float) -> float:
-    """Interval in s, with the fewest digits that the length of the record allows."""
-    mean = _mean_width(steps, whole, width)
-    return _plainest(mean, 0.25 * mean / (steps.size + 1)) / SECOND_NS
+    """Interval in s, with the fewest digits that length and jitter of the record allow."""
+    mean, intervals = _mean_width(steps, whole, width)
+    jitter = float(np.std(steps[:_ENOUGH_ROWS] - whole[:_ENOUGH_ROWS] * mean)) / np.sqrt(2.0)
+    return _plainest(mean, (_LARGEST_DRIFT * mean + jitter) / intervals) / SECOND_NS
 
 
 def _first_guess(tai_ns: NDArray[np.int64]) -> float:
@@ -159,12 +168,13 @@ def sample_ticks(tai_ns: NDArray[np.int64], *, interval: float | None = None) ->
     Raises
     ------
     DataError
-        If the rows come much faster than the interval, or one row comes without an interval.
+        If the rows come much faster than the interval or have none in common, or one row comes
+        without an interval.
 
     Notes
     -----
     With x = t/interval, the phase ψ of the stamps on the line is followed row by row (fine stamps)
-    or as the mean direction of exp(2πix) over 33 rows (stamps coarser than a quarter of the
+    or as the mean direction of exp(2πix) over 257 rows (stamps coarser than a quarter of the
     interval), unwrapped, and the tick is the integer nearest to x − ψ. Stamps may be off by up to
     0.4 intervals; an interval wrong by 1 part in 1000 costs no tick.
     """
@@ -175,11 +185,14 @@ def sample_ticks(tai_ns: NDArray[np.int64], *, interval: float | None = None) ->
     chosen = _interval(steps, whole, width) if interval is None else float(interval)
     tick = _counted_from_origin(tai_ns, np.maximum(whole, 1, out=whole), chosen * SECOND_NS)
     some = slice(None, None, tick.size // (4 * _ENOUGH_ROWS) + 1)
+    wander = float(np.ptp(tai_ns[some] / SECOND_NS - tick[some] * chosen))
+    if interval is None:
+        _refuse_gridless(wander, tai_ns, chosen)
     return Sampling(
         interval=chosen,
         tick=tick,
         jitter=_jitter(off_grid[some]) * chosen,
-        wander=float(np.ptp(tai_ns[some] / SECOND_NS - tick[some] * chosen)),
+        wander=wander,
         restarts=0 if coarse else int(np.count_nonzero(off_grid > _COARSE)),
     )
 
@@ -197,6 +210,17 @@ def _refuse_dense(tai_ns: NDArray[np.int64], width: float) -> None:
         )
 
 
+def _refuse_gridless(wander: float, tai_ns: NDArray[np.int64], interval: float) -> None:
+    """Refuse an estimated interval that does not describe the stamps."""
+    span = float(tai_ns[-1] - tai_ns[0]) / SECOND_NS
+    if wander > max(_LARGEST_WANDER * span, 3.0 * interval):
+        raise DataError(
+            "the stamps have no common sampling interval",
+            value=f"they wander by {wander:.3g} s in {span:.3g} s against steps of {interval:g} s",
+            advice=_STATE_THE_INTERVAL,
+        )
+
+
 def _whole_steps(
     tai_ns: NDArray[np.int64], steps: NDArray[np.int64], width: float
 ) -> tuple[NDArray[np.int64], NDArray[np.float64], bool]:
@@ -205,7 +229,7 @@ def _whole_steps(
     whole = np.rint(counts)
     counts -= whole
     off_grid = np.abs(counts, out=counts)
-    coarse = np.count_nonzero(off_grid > _COARSE) > 0.01 * steps.size
+    coarse = int(np.count_nonzero(off_grid > _COARSE)) > 0.01 * steps.size
     if coarse:
         position = tai_ns / width
         whole = np.diff(np.rint(position - _followed_phase(position)))
@@ -225,11 +249,17 @@ def _followed_phase(position: NDArray[np.float64]) -> NDArray[np.float64]:
 def _counted_from_origin(
     tai_ns: NDArray[np.int64], whole: NDArray[np.int64], width: float
 ) -> NDArray[np.int64]:
-    """Sum the steps, anew from the rounded position at the first row and after each long gap."""
+    """Sum the steps from the rounded position of the first row, anew after each long gap.
+
+    The first row's distance from the line is kept, so that a position halfway between two ticks
+    is not rounded now down, now up.
+    """
     tick = np.zeros(tai_ns.size, dtype=np.int64)
     np.cumsum(whole, out=tick[1:])
     anew = np.append(0, np.flatnonzero(whole > _ANEW_AFTER) + 1)
-    shift = np.rint(tai_ns[anew] / width).astype(np.int64) - tick[anew]
+    position = tai_ns[anew] / width
+    distance = position[0] - np.rint(position[0])
+    shift = np.rint(position - distance).astype(np.int64) - tick[anew]
     if anew.size == 1:
         tick += shift
     else:

@@ -112,7 +112,7 @@ class Screening:
     @property
     def valid(self) -> NDArray[np.bool_]:
         """Rows that count, shape (N,)."""
-        return self.reasons == 0
+        return np.asarray(self.reasons == 0)
 
     @property
     def counts(self) -> dict[str, int]:
@@ -220,7 +220,7 @@ def _outliers(
 def _isolated(tick: NDArray[np.int64], rows: NDArray[np.int64]) -> NDArray[np.bool_]:
     """Whether no other of these rows is on a neighbouring tick."""
     apart = np.diff(tick[rows]) > 1
-    return np.append(True, apart) & np.append(apart, True)
+    return np.asarray(np.append(True, apart) & np.append(apart, True))
 
 
 def _notes(record: Record, reasons: NDArray[np.uint8], running: Running | None) -> Iterator[str]:

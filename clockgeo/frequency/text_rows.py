@@ -17,13 +17,9 @@ from numpy.typing import NDArray
 
 from clockgeo.errors import DataError
 from clockgeo.frequency.layout import RecordLayout
-from clockgeo.frequency.ratio import (
-    decimal_places,
-    exact_number,
-    fractional_from_decimals,
-)
-from clockgeo.frequency.rows import BadRows, Rows
-from clockgeo.frequency.text_table import open_table, unpacked
+from clockgeo.frequency.ratio import NUMBER, decimal_places, fractional_from_decimals
+from clockgeo.frequency.rows import FIRST_MJD, IMPOSSIBLE_DAY, LAST_MJD, BadRows, Rows
+from clockgeo.frequency.text_table import Columns, open_table, unpacked
 from clockgeo.times import DAY_NS, tai_from_iso, tai_from_mjd_utc
 
 if TYPE_CHECKING:
@@ -35,7 +31,6 @@ _MJD_PLACES = 14
 """Decimals of an MJD: one step is 0.864 ns, so that every nanosecond comes back."""
 _REFERENCE_MJD = 58_849
 """Steps are counted from here; 64 bits then hold the years 1768 to 2272."""
-_FIRST_MJD, _LAST_MJD = 41_317, 142_000
 _UNIX_EPOCH_MJD = 40_587
 _NOT_FINITE = {"nan", "inf", "infinity"}
 
@@ -74,17 +69,21 @@ def text_rows(
         columns["flag"] = (table.position(layout.flag_column), pl.String())
     if layout.u_column is not None:
         columns["u"] = (table.position(layout.u_column), pl.Float64())
-    frame, texts, lines = table.fields(columns)
+    read = table.columns(columns)
+    frame, lines = read.frame, read.lines
     tai, timed = _times(frame["time"], layout)
     y = _values(frame["value"], layout, nominal)
     u = None if layout.u_column is None else _fractional(frame["u"].to_numpy(), layout, nominal)
-    keep = timed.copy()
-    _tell_impossible_days(frame["time"], timed, lines, where=where, bad=bad)
-    if texts.height:
-        tai, y = tai.copy(), y.copy()
+    keep = timed
+    unread = ~timed
+    for name in frame.columns:
+        if frame[name].null_count():
+            unread |= frame[name].is_null().to_numpy()
+    if np.any(unread):
+        tai, y, keep = tai.copy(), y.copy(), timed.copy()
         u = None if u is None else u.copy()
         look = _SecondLook(layout, nominal, tai, y, u, keep)
-        for cells in _unread(frame, texts):
+        for cells in _cells(read, unread, timed):
             look.row(cells, f"{where}, line {lines[cells['row']]}", bad)
     usable = ~np.isnan(y)
     if layout.flag_column is not None:
@@ -110,9 +109,9 @@ def _value_type(layout: RecordLayout, nominal: Fraction | None) -> pl.DataType:
 def _times(column: pl.Series, layout: RecordLayout) -> tuple[NDArray[np.int64], NDArray[np.bool_]]:
     """TAI of every row, and where it is known."""
     day, rest = _split_mjd(column) if layout.time == "mjd" else _split_iso(column)
-    known = (day >= _FIRST_MJD) & (day <= _LAST_MJD)
+    known = (day >= FIRST_MJD) & (day <= LAST_MJD)
     if not np.all(known):
-        day = np.where(known, day, _FIRST_MJD)
+        day = np.where(known, day, FIRST_MJD)
     return tai_from_mjd_utc(day, rest), known
 
 
@@ -186,36 +185,21 @@ def _allowed(column: pl.Series, layout: RecordLayout) -> NDArray[np.bool_]:
 
 
 def _number_or_none(text: str) -> Fraction | None:
-    try:
-        return exact_number(text)
-    except DataError:
-        return None
+    return Fraction(text) if NUMBER.fullmatch(text) else None
 
 
-def _tell_impossible_days(
-    column: pl.Series,
-    timed: NDArray[np.bool_],
-    lines: NDArray[np.int64],
-    *,
-    where: str,
-    bad: BadRows,
-) -> None:
-    """Report times that were read but lie outside the years of UTC."""
-    for row in np.flatnonzero(~timed & column.is_not_null().to_numpy()).tolist():
-        if column.dtype.is_decimal():
-            problem = f"MJD {column[row].normalize()} lies outside the years 1972 to 2247"
-            bad.add(f"{where}, line {lines[row]}", problem)
-
-
-def _unread(frame: pl.DataFrame, texts: pl.DataFrame) -> Iterator[dict[str, Any]]:
-    """Cells of the rows that need a second look: all those with a null but for a plain `nan`."""
+def _cells(
+    read: Columns, unread: NDArray[np.bool_], timed: NDArray[np.bool_]
+) -> Iterator[dict[str, Any]]:
+    """Texts of the rows that did not parse, but for those that only lack a value: plain `nan`."""
     import polars as pl
 
-    others = [name for name in frame.columns if name != "value"]
-    complete = frame.select(pl.all_horizontal(pl.col(others).is_not_null()))[:, 0]
+    others = [name for name in read.frame.columns if name != "value"]
+    complete = read.frame.select(pl.all_horizontal(pl.col(others).is_not_null()))[:, 0]
+    texts = read.texts(unread)
     word = pl.col("value").str.strip_chars("+-").str.to_lowercase().fill_null("")
-    plain_nan = (word == "nan") & complete.gather(texts["row"])
-    yield from texts.filter(~plain_nan).iter_rows(named=True)
+    whole = complete.gather(texts["row"]) & pl.Series(timed[unread])
+    yield from texts.filter(~((word == "nan") & whole)).iter_rows(named=True)
 
 
 @dataclass(frozen=True)
@@ -254,8 +238,9 @@ class _SecondLook:
         if self.layout.time == "iso8601":
             return tai_from_iso(text)
         day, part = divmod(_number(text, "time"), 1)
-        rest = round(part * DAY_NS)
-        carried, rest = divmod(rest, DAY_NS)
+        if not FIRST_MJD <= day <= LAST_MJD:
+            raise DataError(IMPOSSIBLE_DAY, value=text)
+        carried, rest = divmod(round(part * DAY_NS), DAY_NS)
         return int(tai_from_mjd_utc(day + carried, rest))
 
     def _value(self, text: str | None, column: str) -> float:
@@ -275,7 +260,6 @@ def _number(text: str, column: str) -> Fraction:
         raise DataError(f"the {column} is missing")
     if text.lower().strip("+-") in _NOT_FINITE:
         raise DataError(f"the {column} is not finite", value=text)
-    try:
-        return exact_number(text.replace("/", "|"))
-    except DataError:
-        raise DataError(f"the {column} is not a number", value=repr(text)) from None
+    if not NUMBER.fullmatch(text):
+        raise DataError(f"the {column} is not a number", value=repr(text))
+    return Fraction(text)

@@ -18,7 +18,7 @@ from clockgeo.errors import DataError
 if TYPE_CHECKING:
     import polars as pl
 
-__all__ = ["TextTable", "open_table", "unpacked"]
+__all__ = ["Columns", "TextTable", "open_table", "unpacked"]
 
 _GZIP_MAGIC = b"\x1f\x8b"
 _CONTROL = re.compile(rb"[\x00-\x08\x0e-\x1f]")
@@ -67,7 +67,9 @@ class TextTable:
     separator : bytes
         One byte; a blank stands for any run of blanks.
     width : int
-        Fields of the first row.
+        Most fields of the first rows.
+    first_width : int
+        Fields of the very first row.
     names : tuple of str
         Column names of the header line; empty without one.
     where : str
@@ -78,6 +80,7 @@ class TextTable:
     first_line: int
     separator: bytes
     width: int
+    first_width: int
     names: tuple[str, ...]
     where: str
 
@@ -96,7 +99,7 @@ class TextTable:
                 "there is no such column",
                 value=column,
                 where=self.where,
-                allowed=f"Columns 1 to {self.width}, counted from the first row",
+                allowed=f"Columns 1 to {self.width}, counted from the left",
             )
         if column in self.names:
             return self.names.index(column)
@@ -109,33 +112,29 @@ class TextTable:
             advice=f"Did you mean {near[0]!r}?" if near else "Give the column by its number",
         )
 
-    def fields(
-        self, wanted: Mapping[str, tuple[int, pl.DataType]]
-    ) -> tuple[pl.DataFrame, pl.DataFrame, NDArray[np.int64]]:
-        """Read columns by position and type.
+    def columns(self, wanted: Mapping[str, tuple[int, pl.DataType]]) -> Columns:
+        """Read columns by position (from 0) and polars type.
 
-        Parameters
-        ----------
-        wanted : mapping of name to (position from 0, polars type)
-            The columns to read.
-
-        Returns
-        -------
-        frame : polars DataFrame
-            A column a name; null where the text is not of the column's type.
-        texts : polars DataFrame
-            Column ``row`` and, as text, the columns of every row that holds a null.
-        lines : int64 array
-            Line number of each row of `frame`.
+        Raises
+        ------
+        DataError
+            If one column is wanted twice.
         """
-        body, lines, width, places = self._regular(
-            {name: place for name, (place, _) in wanted.items()}
-        )
-        types = {name: kind for name, (_, kind) in wanted.items()}
-        frame = _parsed(body, width, places, types, self.separator)
+        places = {name: place for name, (place, _) in wanted.items()}
+        for name, place in places.items():
+            twin = next((other for other, at in places.items() if at == place), name)
+            if twin != name:
+                raise DataError(
+                    f"{twin} and {name} are said to be in the same column",
+                    value=place + 1,
+                    where=self.where,
+                )
+        body, lines, width, places = self._regular(places)
+        layout = _Layout(body, width, places, self.separator)
+        frame = layout.parsed({name: kind for name, (_, kind) in wanted.items()})
         if lines is None:
             lines = np.arange(frame.height) + self.first_line
-        return frame, _texts_of_nulls(frame, body, width, places, self.separator), lines
+        return Columns(frame, lines, layout)
 
     def _regular(
         self, places: dict[str, int]
@@ -146,11 +145,12 @@ class TextTable:
             body = body.replace(b"\r\n", b"\n").replace(b"\r", b"\n")
         if self.separator == b" ":
             rows = body.count(b"\n") + (not body.endswith(b"\n"))
-            tidy = body.count(b" ") == rows * (self.width - 1)
+            tidy = body.count(b" ") == rows * (self.first_width - 1)
         else:
             tidy = b" " not in body
-        if tidy and max(places.values()) < self.width and not (b"#" in body or b'"' in body):
-            return body, None, self.width, places
+        whole = max(places.values()) < self.first_width
+        if tidy and whole and not (b"#" in body or b'"' in body):
+            return body, None, self.first_width, places
         return self._tidied(body, places)
 
     def _tidied(
@@ -161,8 +161,8 @@ class TextTable:
         lines: list[int] = []
         order = sorted(set(places.values()))
         for number, line in enumerate(body.split(b"\n"), start=self.first_line):
-            text = line.partition(b"#")[0].strip()
-            if not text:
+            text = line.partition(b"#")[0]
+            if not text.strip():
                 continue
             parts = _split(text, self.separator)
             fields = [parts[at].strip(b' \t"') if at < len(parts) else b"" for at in order]
@@ -172,53 +172,66 @@ class TextTable:
         return b"\n".join(rows), np.array(lines, dtype=np.int64), len(order), moved
 
 
-def _parsed(
-    body: bytes,
-    width: int,
-    places: Mapping[str, int],
-    types: Mapping[str, pl.DataType],
-    separator: bytes,
-) -> pl.DataFrame:
-    import polars as pl
+@dataclass(frozen=True)
+class _Layout:
+    """Tidy rows, and where the wanted fields are in them."""
 
-    if not body:
-        return pl.DataFrame(schema=dict(types))
-    names = [f"column {position}" for position in range(width)]
-    at = {position: name for name, position in places.items()}
-    schema = {
-        name: types[at[position]] if position in at else pl.String()
-        for position, name in enumerate(names)
-    }
-    frame = pl.read_csv(
-        body,
-        has_header=False,
-        separator=separator.decode(),
-        quote_char=None,
-        schema=schema,
-        columns=sorted(at),
-        truncate_ragged_lines=True,
-        ignore_errors=True,
-        encoding="utf8-lossy",
-    )
-    return frame.select(pl.col(names[position]).alias(name) for name, position in places.items())
+    body: bytes
+    width: int
+    places: Mapping[str, int]
+    separator: bytes
+
+    def parsed(self, types: Mapping[str, pl.DataType]) -> pl.DataFrame:
+        """Columns of these types; null where the text is not of its type."""
+        import polars as pl
+
+        if not self.body:
+            return pl.DataFrame(schema=dict(types))
+        names = [f"column {position}" for position in range(self.width)]
+        at = {position: name for name, position in self.places.items()}
+        schema = {
+            name: types[at[position]] if position in at else pl.String()
+            for position, name in enumerate(names)
+        }
+        frame = pl.read_csv(
+            self.body,
+            has_header=False,
+            separator=self.separator.decode(),
+            quote_char=None,
+            schema=schema,
+            columns=sorted(at),
+            truncate_ragged_lines=True,
+            ignore_errors=True,
+            encoding="utf8-lossy",
+        )
+        return frame.select(
+            pl.col(names[position]).alias(name) for name, position in self.places.items()
+        )
 
 
-def _texts_of_nulls(
-    frame: pl.DataFrame,
-    body: bytes,
-    width: int,
-    places: Mapping[str, int],
-    separator: bytes,
-) -> pl.DataFrame:
-    """The rows that hold a null, as text."""
-    import polars as pl
+@dataclass(frozen=True)
+class Columns:
+    """Columns that were read.
 
-    if not any(frame[name].null_count() for name in frame.columns):
-        return pl.DataFrame(schema={"row": pl.Int64(), **dict.fromkeys(places, pl.String())})
-    unread = frame.select(pl.any_horizontal(pl.all().is_null()))[:, 0]
-    texts = _parsed(body, width, places, dict.fromkeys(places, pl.String()), separator)
-    rows = pl.Series("row", np.arange(frame.height))
-    return texts.with_columns(rows).filter(unread)
+    Attributes
+    ----------
+    frame : polars DataFrame
+        A column a name; null where the text is not of the column's type.
+    lines : int64 array
+        Line number of each row of `frame`.
+    """
+
+    frame: pl.DataFrame
+    lines: NDArray[np.int64]
+    _layout: _Layout
+
+    def texts(self, rows: NDArray[np.bool_]) -> pl.DataFrame:
+        """The fields of some rows as text, with their position in column ``row``."""
+        import polars as pl
+
+        texts = self._layout.parsed(dict.fromkeys(self.frame.columns, pl.String()))
+        positions = pl.Series("row", np.arange(self.frame.height))
+        return texts.with_columns(positions).filter(pl.Series(rows))
 
 
 def open_table(content: bytes, *, where: str) -> TextTable:
@@ -248,11 +261,11 @@ def open_table(content: bytes, *, where: str) -> TextTable:
         if not header and _is_words(line):
             header = line
             continue
-        sample = [line, *_rows_after(starts)]
+        sample = [line.partition(b"#")[0].strip(b" \r"), *_rows_after(starts)]
         separator = _separator_of(sample)
-        width = len(_split(line, separator))
+        widths = [len(_split(row, separator)) for row in sample]
         names = tuple(_words(header or comment, separator)) if header or comment else ()
-        return TextTable(content[offset:], number, separator, width, names, where)
+        return TextTable(content[offset:], number, separator, max(widths), widths[0], names, where)
     raise DataError("the file holds no row", where=where)
 
 
@@ -263,8 +276,8 @@ def _content_lines(content: bytes) -> Iterator[tuple[int, int, bytes]]:
         number += 1
         end = content.find(b"\n", offset)
         end = len(content) if end < 0 else end
-        line = content[offset:end].strip()
-        if line:
+        line = content[offset:end].strip(b" \r")
+        if line.strip():
             yield number, offset, line
         offset = end + 1
 
@@ -273,7 +286,7 @@ def _rows_after(lines: Iterator[tuple[int, int, bytes]]) -> list[bytes]:
     sample: list[bytes] = []
     for _, _, line in lines:
         if not line.startswith(b"#"):
-            sample.append(line.partition(b"#")[0].strip())
+            sample.append(line.partition(b"#")[0].strip(b" \r"))
         if len(sample) == _SAMPLED_LINES:
             break
     return sample
