@@ -15,7 +15,7 @@ __all__ = [
     "interpolation_correlation",
 ]
 
-_LAGS = 60
+_FEWEST_LAGS, _LAGS = 10, 60
 _MOST_TICKS = 1 << 21
 _LINE_TICKS = 1 << 17
 _FEWEST_ROWS = 500
@@ -51,7 +51,8 @@ class Neighbours:
     def factor(self) -> float:
         """True u of a mean over the naive s/√N, by the correlations of short lags.
 
-        The square is 1 + 2 Σ ρ_k over the lags estimated (60 ticks); slower noise is not in it.
+        The square is 1 + 2 Σ ρ_k over the L lags estimated (up to 60 ticks), good to a relative
+        sqrt((4 L + 2)/rows); slower noise is not in it.
         """
         total = 1.0 + 2.0 * float(np.nansum(self.correlation[1:]))
         return float(np.sqrt(max(total, 0.0)))
@@ -91,14 +92,14 @@ def correlation_of_neighbours(
     -------
     Neighbours or None
         Mean products over all pairs of rows at each lag, divided by the mean square; None for
-        fewer than 500 rows. Of long records, 2^21 ticks are used.
+        fewer than 500 rows. One lag for 50 rows, 10 to 60; of long records, 2^21 ticks are used.
     """
     if values.size < _FEWEST_ROWS:
         return None
     grid, valid = _densest(tick, values, _MOST_TICKS)
     rows = int(np.count_nonzero(valid))
     weight = valid.astype(np.float64)
-    lags = min(_LAGS, grid.size - 1)
+    lags = min(max(_FEWEST_LAGS, rows // 50), _LAGS, grid.size - 1)
     products = np.full(lags + 1, np.nan)
     for lag in range(lags + 1):
         pairs = float(weight[lag:] @ weight[: grid.size - lag])

@@ -176,7 +176,7 @@ def screen(
     flags = np.zeros(y.size, dtype=np.uint8)
     running = None
     if rules.gross_bound is not None and y.size:
-        flags[np.abs(y - np.median(y)) > rules.gross_bound] |= Reason.OUT_OF_BOUNDS
+        flags[np.abs(y - np.median(y)) > rules.gross_bound] |= np.uint8(Reason.OUT_OF_BOUNDS)
     if rules.outlier_threshold is not None and y.size > 2:
         width = max(10, round(rules.window / record.interval))
         running = running_median_and_spread(tick, y, width=width)
@@ -184,7 +184,7 @@ def screen(
     reasons[record.usable] = flags
     for mask in rules.masks:
         start, stop = (tai_from_iso(instant.isoformat()) for instant in (mask.start, mask.stop))
-        reasons[(record.tai_ns >= start) & (record.tai_ns < stop)] |= Reason.MASKED
+        reasons[(record.tai_ns >= start) & (record.tai_ns < stop)] |= np.uint8(Reason.MASKED)
     return Screening(record, rules, reasons, running, tuple(_notes(record, reasons, running)))
 
 
