@@ -71,8 +71,8 @@ def test_a_grid_gives_the_separation_with_its_u(monkeypatch, tmp_path):
             tide_system="mean_tide",
             zero_level="height_reference",
             ellipsoid="grs80",
-            sample=lambda latitude, longitude: np.float64(43.5),
-            covariance=lambda latitude, longitude: np.array([[0.0004]]),
+            sample=lambda *_: np.float64(43.5),
+            covariance=lambda *_: np.array([[0.0004]]),
         )
 
     monkeypatch.setattr("clockgeo.gravity.open_geoid", open_geoid, raising=False)
