@@ -231,8 +231,6 @@ def _from_grid(
     zero_level: str | None,
 ) -> tuple[Separation, str]:
     """Sample a grid; what it does not say about itself must have been stated."""
-    import numpy as np
-
     from clockgeo.files import shipped_grid
     from clockgeo.gravity import Separation, open_geoid
 
@@ -244,8 +242,8 @@ def _from_grid(
         u=u,
     )
     value = float(model.sample(place.latitude, place.longitude))
-    variance = float(np.ravel(model.covariance([place.latitude], [place.longitude]))[0])
+    spread = float(model.u(place.latitude, place.longitude))
     separation = Separation(
-        value, variance**0.5, model.quantity, model.tide_system, model.zero_level, model.ellipsoid
+        value, spread, model.quantity, model.tide_system, model.zero_level, model.ellipsoid
     )
     return separation, path.name

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Literal
+from typing import TYPE_CHECKING
 
 import numpy as np
 
@@ -13,6 +13,9 @@ from clockgeo.gravity.geopotential import GeopotentialNumber, number_of
 from clockgeo.gravity.places import checked_height
 from clockgeo.gravity.tide_systems import TideSystem, convert_tide_system
 from clockgeo.gravity.zero_levels import ZeroLevel, zero_level
+
+if TYPE_CHECKING:
+    from clockgeo.gravity.geoid_model import Quantity
 
 __all__ = [
     "BOUGUER_ANOMALY",
@@ -57,7 +60,7 @@ class Separation:
 
     value: float
     u: float
-    quantity: Literal["geoid_height", "height_anomaly"]
+    quantity: Quantity
     tide_system: TideSystem | str
     zero_level: ZeroLevel | str | float
     ellipsoid: str = "grs80"

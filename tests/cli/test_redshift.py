@@ -3,13 +3,15 @@
 from __future__ import annotations
 
 import json
-from types import SimpleNamespace
 
 import numpy as np
 import pytest
 from typer.testing import CliRunner
 
 from clockgeo.cli import app
+from clockgeo.gravity import TideSystem, zero_level
+from clockgeo.gravity.geoid_covariance import ErrorModel
+from clockgeo.gravity.geoid_model import GeoidModel, GridTile
 
 PLACE = ["--latitude", "52.3", "--longitude", "10.5", "--ellipsoidal-height", "130"]
 ANOMALY = ["--height-anomaly", "43.5", "--u-separation", "0.02"]
@@ -66,13 +68,14 @@ def test_a_grid_gives_the_separation_with_its_u(monkeypatch, tmp_path):
 
     def open_geoid(path, **stated):
         asked.update(stated, path=path)
-        return SimpleNamespace(
+        return GeoidModel(
+            name=path.name,
+            tiles=(GridTile(50.0, 8.0, 1.0, 1.0, np.full((6, 6), 43.5)),),
             quantity="height_anomaly",
-            tide_system="mean_tide",
-            zero_level="height_reference",
+            tide_system=TideSystem.MEAN_TIDE,
+            zero_level=zero_level("height_reference"),
             ellipsoid="grs80",
-            sample=lambda *_: np.float64(43.5),
-            covariance=lambda *_: np.array([[0.0004]]),
+            errors=ErrorModel(0.02),
         )
 
     monkeypatch.setattr("clockgeo.gravity.open_geoid", open_geoid, raising=False)
