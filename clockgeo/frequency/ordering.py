@@ -40,18 +40,16 @@ def in_order(tables: Sequence[Rows], *, skip_bad_rows: bool) -> tuple[Rows, list
         raise DataError("the files hold no usable row", value=", ".join(t.file for t in tables))
     rows = filled[0] if len(filled) == 1 else _joined(filled)
     notes: list[str | None] = []
+    if np.all(rows.tai_ns[1:] > rows.tai_ns[:-1]):
+        return rows, notes
     steps = np.diff(rows.tai_ns)
-    if steps.size and steps.min() < 0:
+    files = _files(filled)
+    if steps.min() < 0:
         early = int(np.count_nonzero(steps < 0))
         notes.append(f"rows were out of order in {early} places and were sorted by time")
         order = np.argsort(rows.tai_ns, kind="stable")
         rows = rows.kept(order)
-        steps = np.diff(rows.tai_ns)
-        files = _files(filled)[order]
-    elif steps.size and steps.min() == 0:
-        files = _files(filled)
-    if not steps.size or steps.min() > 0:
-        return rows, notes
+        files = files[order]
     rows, repeated, contradictions = _merged(rows, files, [table.file for table in filled])
     if repeated:
         notes.append(f"{repeated} rows repeat the row of the same time and were left out")
@@ -91,7 +89,7 @@ def _merged(
     contradicted[stamp[1:][differs]] = True
     contradictions = BadRows()
     for which in np.flatnonzero(contradicted).tolist():
-        members = np.flatnonzero(stamp == which)
+        members = range(*np.searchsorted(stamp, [which, which + 1]).tolist())
         lines = " and ".join(
             f"{names[files[row]]}, {rows.unit} {rows.line[row]}" for row in members
         )

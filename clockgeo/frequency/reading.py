@@ -22,6 +22,8 @@ __all__ = ["read_record"]
 
 _LARGEST_TYPICAL_Y = 1e-6
 _ENOUGH_ROWS = 20_000
+_LARGEST_MISFIT = 1e-3
+"""Relative difference of a stated interval from the rows' that is worth a note."""
 
 
 def read_record(
@@ -212,7 +214,13 @@ def _about(sampling: Sampling) -> list[str]:
             f"{sampling.restarts} times the stamps go on off the grid of {sampling.interval:g} s; "
             "rows are placed on the nearest tick"
         )
-    if sampling.wander > sampling.interval:
+    wandering = sampling.wander > sampling.interval
+    if wandering and abs(sampling.step / sampling.interval - 1.0) > _LARGEST_MISFIT:
+        notes.append(
+            f"the rows come every {sampling.step:.6g} s on average, not every "
+            f"{sampling.interval:g} s as stated; ticks follow the rows, times of averaging do not"
+        )
+    elif wandering:
         notes.append(
             f"the stamps wander by {sampling.wander:.3g} s against a rigid grid of "
             f"{sampling.interval:g} s; ticks follow the rows"

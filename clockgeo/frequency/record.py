@@ -72,9 +72,9 @@ class Record:
         if not (np.isfinite(self.interval) and self.interval > 0.0):
             raise DataError("the interval must be positive", value=self.interval, where=self.name)
         for label, column in (("epochs", self.tai_ns), ("ticks", self.tick)):
-            if np.any(np.diff(column) <= 0):
+            if not np.all(column[1:] > column[:-1]):
                 raise DataError(f"the {label} do not increase", where=self.name)
-        if not np.all(np.isfinite(self.y[self.usable])):
+        if np.any(self.usable & ~np.isfinite(self.y)):
             raise DataError("a usable row holds no finite value", where=self.name)
         for label in ("tai_ns", "y", "usable", "tick", "u"):
             self._lock(label)

@@ -14,6 +14,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from clockgeo.errors import DataError
+from clockgeo.frequency.parts import in_parts
 from clockgeo.times import SECOND_NS
 
 __all__ = ["Sampling", "estimate_interval", "sample_ticks"]
@@ -52,6 +53,8 @@ class Sampling:
         Largest distance, s, that stamps move against one rigid grid without a gap to explain it.
     restarts : int
         Steps that are off the grid by more than a quarter of an interval.
+    step : float
+        Mean time from tick to tick by the stamps, s; long gaps left out.
     """
 
     interval: float
@@ -59,6 +62,7 @@ class Sampling:
     jitter: float
     wander: float
     restarts: int
+    step: float
 
 
 def estimate_interval(tai_ns: NDArray[np.int64]) -> float:
@@ -86,8 +90,7 @@ def estimate_interval(tai_ns: NDArray[np.int64]) -> float:
         If there are fewer than two stamps, or coarse stamps with many rows missing.
     """
     width = _rough_width(tai_ns)
-    steps = np.diff(tai_ns)
-    return _interval(steps, _whole_steps(tai_ns, steps, width)[0], width)
+    return _interval(tai_ns, _whole_steps(tai_ns, width)[0], width)
 
 
 def _rough_width(tai_ns: NDArray[np.int64]) -> float:
@@ -98,26 +101,25 @@ def _rough_width(tai_ns: NDArray[np.int64]) -> float:
         )
     some = tai_ns[:_ENOUGH_ROWS]
     width = _first_guess(tai_ns[: 4 * _ENOUGH_ROWS])
-    steps = np.diff(some)
     for _ in range(2):
-        width, _ = _mean_width(steps, _whole_steps(some, steps, width)[0], width)
+        width, _ = _mean_width(some, _whole_steps(some, width)[0], width)
     return width
 
 
 def _mean_width(
-    steps: NDArray[np.int64], whole: NDArray[np.int64], width: float
+    tai_ns: NDArray[np.int64], whole: NDArray[np.int64], width: float
 ) -> tuple[float, int]:
     """Time between rows over the intervals it holds, ns, long gaps left out; that number too."""
     long = np.flatnonzero(whole > _ANEW_AFTER)
     intervals = int(np.sum(whole) - np.sum(whole[long]))
-    passed = int(np.sum(steps) - np.sum(steps[long]))
+    passed = int(tai_ns[-1] - tai_ns[0] - np.sum(tai_ns[long + 1] - tai_ns[long]))
     return (passed / intervals if intervals else width), max(intervals, 1)
 
 
-def _interval(steps: NDArray[np.int64], whole: NDArray[np.int64], width: float) -> float:
+def _interval(tai_ns: NDArray[np.int64], whole: NDArray[np.int64], width: float) -> float:
     """Interval in s, with the fewest digits that length and jitter of the record allow."""
-    mean, intervals = _mean_width(steps, whole, width)
-    jitter = float(np.std(steps[:_ENOUGH_ROWS] - whole[:_ENOUGH_ROWS] * mean)) / np.sqrt(2.0)
+    mean, intervals = _mean_width(tai_ns, whole, width)
+    jitter = _jitter(tai_ns, whole, mean)
     return _plainest(mean, (_LARGEST_DRIFT * mean + jitter) / intervals) / SECOND_NS
 
 
@@ -180,20 +182,20 @@ def sample_ticks(tai_ns: NDArray[np.int64], *, interval: float | None = None) ->
     """
     width = _rough_width(tai_ns) if interval is None else float(interval) * SECOND_NS
     _refuse_dense(tai_ns, width)
-    steps = np.diff(tai_ns)
-    whole, off_grid, coarse = _whole_steps(tai_ns, steps, width)
-    chosen = _interval(steps, whole, width) if interval is None else float(interval)
+    whole, off_grid = _whole_steps(tai_ns, width)
+    chosen = _interval(tai_ns, whole, width) if interval is None else float(interval)
     tick = _counted_from_origin(tai_ns, np.maximum(whole, 1, out=whole), chosen * SECOND_NS)
-    some = slice(None, None, tick.size // (4 * _ENOUGH_ROWS) + 1)
+    some = slice(None, None, tick.size // _ENOUGH_ROWS + 1)
     wander = float(np.ptp(tai_ns[some] / SECOND_NS - tick[some] * chosen))
     if interval is None:
         _refuse_gridless(wander, tai_ns, chosen)
     return Sampling(
         interval=chosen,
         tick=tick,
-        jitter=_jitter(off_grid[some]) * chosen,
+        jitter=_jitter(tai_ns, whole, chosen * SECOND_NS) / SECOND_NS,
         wander=wander,
-        restarts=0 if coarse else int(np.count_nonzero(off_grid > _COARSE)),
+        restarts=max(off_grid, 0),
+        step=_mean_width(tai_ns, whole, chosen * SECOND_NS)[0] / SECOND_NS,
     )
 
 
@@ -221,19 +223,20 @@ def _refuse_gridless(wander: float, tai_ns: NDArray[np.int64], interval: float) 
         )
 
 
-def _whole_steps(
-    tai_ns: NDArray[np.int64], steps: NDArray[np.int64], width: float
-) -> tuple[NDArray[np.int64], NDArray[np.float64], bool]:
-    """Whole intervals between rows, how far steps are from whole, and whether stamps are coarse."""
-    counts = steps / width
-    whole = np.rint(counts)
-    counts -= whole
-    off_grid = np.abs(counts, out=counts)
-    coarse = int(np.count_nonzero(off_grid > _COARSE)) > 0.01 * steps.size
-    if coarse:
-        position = tai_ns / width
-        whole = np.diff(np.rint(position - _followed_phase(position)))
-    return whole.astype(np.int64), off_grid, coarse
+def _whole_steps(tai_ns: NDArray[np.int64], width: float) -> tuple[NDArray[np.int64], int]:
+    """Whole intervals between rows, and how many steps are off the grid (-1: coarse stamps)."""
+    count = tai_ns.size - 1
+    whole = np.empty(count, dtype=np.int64)
+    off_grid = 0
+    for part in in_parts(count):
+        steps = np.diff(tai_ns[part.start : part.stop + 1]) / width
+        nearest = np.rint(steps)
+        off_grid += int(np.count_nonzero(np.abs(steps - nearest) > _COARSE))
+        whole[part] = nearest
+    if off_grid <= 0.01 * count:
+        return whole, off_grid
+    position = tai_ns / width
+    return np.diff(np.rint(position - _followed_phase(position))).astype(np.int64), -1
 
 
 def _followed_phase(position: NDArray[np.float64]) -> NDArray[np.float64]:
@@ -267,6 +270,10 @@ def _counted_from_origin(
     return tick
 
 
-def _jitter(off_grid: NDArray[np.float64]) -> float:
-    """Robust standard deviation of one stamp: a step holds the jitter of two."""
-    return float(1.4826 * np.median(off_grid) / np.sqrt(2.0)) if off_grid.size else 0.0
+def _jitter(tai_ns: NDArray[np.int64], whole: NDArray[np.int64], width: float) -> float:
+    """Robust standard deviation of one stamp, ns: a step holds the jitter of two."""
+    if not whole.size:
+        return 0.0
+    some = np.arange(0, whole.size, whole.size // _ENOUGH_ROWS + 1)
+    off = np.abs(tai_ns[some + 1] - tai_ns[some] - whole[some] * width)
+    return float(1.4826 * np.median(off) / np.sqrt(2.0))

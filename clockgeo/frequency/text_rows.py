@@ -17,6 +17,7 @@ from numpy.typing import NDArray
 
 from clockgeo.errors import DataError
 from clockgeo.frequency.layout import RecordLayout
+from clockgeo.frequency.parts import in_parts
 from clockgeo.frequency.ratio import NUMBER, decimal_places, fractional_from_decimals
 from clockgeo.frequency.rows import FIRST_MJD, IMPOSSIBLE_DAY, LAST_MJD, BadRows, Rows
 from clockgeo.frequency.text_table import Columns, open_table, unpacked
@@ -32,6 +33,8 @@ _MJD_PLACES = 14
 _REFERENCE_MJD = 58_849
 """Steps are counted from here; 64 bits then hold the years 1768 to 2272."""
 _UNIX_EPOCH_MJD = 40_587
+_NOWHERE = -(9 * 10**18)
+"""Stands for a missing time: some day before 1900 in either count."""
 _NOT_FINITE = {"nan", "inf", "infinity"}
 
 
@@ -108,37 +111,44 @@ def _value_type(layout: RecordLayout, nominal: Fraction | None) -> pl.DataType:
 
 def _times(column: pl.Series, layout: RecordLayout) -> tuple[NDArray[np.int64], NDArray[np.bool_]]:
     """TAI of every row, and where it is known."""
-    day, rest = _split_mjd(column) if layout.time == "mjd" else _split_iso(column)
-    known = (day >= FIRST_MJD) & (day <= LAST_MJD)
-    if not np.all(known):
-        day = np.where(known, day, FIRST_MJD)
-    return tai_from_mjd_utc(day, rest), known
+    counted, split = (
+        (_mjd_steps(column), _split_steps)
+        if layout.time == "mjd"
+        else (_unix_times(column), _split_unix)
+    )
+    elapsed = counted.fill_null(_NOWHERE).to_numpy()
+    tai = np.empty(elapsed.size, dtype=np.int64)
+    known = np.empty(elapsed.size, dtype=bool)
+    for part in in_parts(elapsed.size):
+        day, rest = split(elapsed[part])
+        known[part] = (day >= FIRST_MJD) & (day <= LAST_MJD)
+        if not np.all(known[part]):
+            day[~known[part]] = FIRST_MJD
+        tai[part] = tai_from_mjd_utc(day, rest)
+    return tai, known
 
 
-def _split_mjd(column: pl.Series) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
-    """Day number (-1 where null) and nanosecond of the day."""
+def _mjd_steps(column: pl.Series) -> pl.Series:
+    """Units of the last decimal since the reference day, 64 bits; null where there is none."""
     import polars as pl
 
     reference = pl.lit(_REFERENCE_MJD * 10**_MJD_PLACES, dtype=pl.Int128)
     steps = (pl.col("time").to_physical() - reference).cast(pl.Int64, strict=False)
-    counted = column.to_frame("time").select(steps)["time"]
-    elapsed = counted.fill_null(0).to_numpy()
+    return column.to_frame("time").select(steps)["time"]
+
+
+def _split_steps(elapsed: NDArray[np.int64]) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+    """MJD and nanosecond of the day of `_mjd_steps`."""
     day = elapsed // 10**_MJD_PLACES
-    rest = elapsed - day * 10**_MJD_PLACES
     # A day has 864e11 ns and 1000e11 steps; the product stays below 2^63.
-    rest *= 864
-    rest += 500
-    rest //= 1_000
-    day += _REFERENCE_MJD
-    day += rest == DAY_NS
-    rest[rest == DAY_NS] = 0
-    if counted.null_count():
-        day[counted.is_null().to_numpy()] = -1
-    return day, rest
+    rest = ((elapsed - day * 10**_MJD_PLACES) * 864 + 500) // 1_000
+    full = rest == DAY_NS
+    rest[full] = 0
+    return day + (_REFERENCE_MJD + full), rest
 
 
-def _split_iso(column: pl.Series) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
-    """Day number (-1 where the text is not plain UTC) and nanosecond of the day."""
+def _unix_times(column: pl.Series) -> pl.Series:
+    """UTC ns since 1970 of plain ISO 8601 texts; null for zones, leap seconds and short forms."""
     import polars as pl
 
     text = pl.col("time").str.strip_suffix("Z").str.replace(" ", "T", literal=True)
@@ -147,10 +157,13 @@ def _split_iso(column: pl.Series) -> tuple[NDArray[np.int64], NDArray[np.int64]]
         .then(text)
         .str.strptime(pl.Datetime("ns"), "%Y-%m-%dT%H:%M:%S%.f", strict=False)
     )
-    unix = column.to_frame("time").select(plain.cast(pl.Int64).alias("ns"))["ns"]
-    nanosecond = unix.fill_null(0).to_numpy()
-    day, rest = np.divmod(nanosecond, DAY_NS)
-    return np.where(unix.is_null().to_numpy(), -1, day + _UNIX_EPOCH_MJD), rest
+    return column.to_frame("time").select(plain.cast(pl.Int64))["time"]
+
+
+def _split_unix(elapsed: NDArray[np.int64]) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+    """MJD and nanosecond of the day of `_unix_times`."""
+    day = elapsed // DAY_NS
+    return day + _UNIX_EPOCH_MJD, elapsed - day * DAY_NS
 
 
 def _values(
@@ -216,11 +229,12 @@ class _SecondLook:
     def row(self, cells: dict[str, Any], where: str, bad: BadRows) -> None:
         """Read one row; blank rows are passed over."""
         row = cells.pop("row")
-        self.keep[row] = False
+        timed, self.keep[row] = bool(self.keep[row]), False
         if not any((text or "").strip() for text in cells.values()):
             return
         try:
-            self.tai[row] = self._time(cells["time"])
+            if not timed:
+                self.tai[row] = self._time(cells["time"])
             self.y[row] = self._value(cells["value"], "value")
             if self.u is not None:
                 self.u[row] = self._value(cells["u"], "u")

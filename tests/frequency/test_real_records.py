@@ -72,6 +72,13 @@ def test_days_join_in_any_order(real_records):
     np.testing.assert_array_equal(joined.y, same.y)
 
 
+def test_an_interval_by_the_median_step_is_questioned(real_records):
+    layout = RecordLayout(file="pair1-day1.txt.gz", interval=1.0368)
+    record = read_record(layout, base=real_records, name="pair1")
+    assert any("every 1.0568" in note and "as stated" in note for note in record.notes)
+    assert np.all(np.diff(record.tick)[np.diff(record.tai_ns) < 1.15e9] == 1)
+
+
 def test_two_pairs_of_one_day_share_the_time_line(real_records):
     first, second = read(real_records, "pair1-day3"), read(real_records, "pair2-day3")
     np.testing.assert_array_equal(first.tick, second.tick)
