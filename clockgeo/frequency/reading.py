@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import glob
 import hashlib
+import mmap
 from concurrent.futures import ThreadPoolExecutor
 from fractions import Fraction
 from pathlib import Path
@@ -147,16 +148,20 @@ def _paths(layout: RecordLayout, base: Path, name: str) -> list[tuple[Path, str]
     return list(found.items())
 
 
-def _content(path: Path, shown: str) -> bytes:
+def _content(path: Path, shown: str) -> bytes | mmap.mmap:
+    """The bytes of a file, mapped rather than copied; an empty file cannot be mapped."""
     try:
-        return path.read_bytes()
+        with path.open("rb") as stream:
+            if not path.stat().st_size:
+                return b""
+            return mmap.mmap(stream.fileno(), 0, access=mmap.ACCESS_READ)
     except OSError as error:
         raise DataError(f"cannot read the file ({error.strerror})", value=shown) from error
 
 
 def _rows(
     path: Path,
-    content: bytes,
+    content: bytes | mmap.mmap,
     layout: RecordLayout,
     nominal: Fraction | None,
     shown: str,
@@ -169,7 +174,7 @@ def _rows(
         return netcdf_rows(path, layout, nominal=nominal, where=shown, bad=bad)
     from clockgeo.frequency.text_rows import text_rows
 
-    return text_rows(content, layout, nominal=nominal, where=shown, bad=bad)
+    return text_rows(path, content, layout, nominal=nominal, where=shown, bad=bad)
 
 
 def _check_rows(rows: Rows, layout: RecordLayout, name: str, latest_ns: int | None) -> None:

@@ -10,6 +10,7 @@ import math
 from collections.abc import Iterator
 from dataclasses import dataclass
 from fractions import Fraction
+from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -20,7 +21,7 @@ from clockgeo.frequency.layout import RecordLayout
 from clockgeo.frequency.parts import in_parts
 from clockgeo.frequency.ratio import NUMBER, decimal_places, fractional_from_decimals
 from clockgeo.frequency.rows import FIRST_MJD, IMPOSSIBLE_DAY, LAST_MJD, BadRows, Rows
-from clockgeo.frequency.text_table import Columns, open_table, unpacked
+from clockgeo.frequency.text_table import Columns, Content, open_table, unpacked
 from clockgeo.times import DAY_NS, tai_from_iso, tai_from_mjd_utc
 
 if TYPE_CHECKING:
@@ -39,14 +40,22 @@ _NOT_FINITE = {"nan", "inf", "infinity"}
 
 
 def text_rows(
-    content: bytes, layout: RecordLayout, *, nominal: Fraction | None, where: str, bad: BadRows
+    path: Path,
+    content: Content,
+    layout: RecordLayout,
+    *,
+    nominal: Fraction | None,
+    where: str,
+    bad: BadRows,
 ) -> Rows:
     """Read the rows of one text file.
 
     Parameters
     ----------
-    content : bytes
-        The file as stored, gzip'd or not.
+    path : Path
+        The file.
+    content : bytes or mapped file
+        Its bytes as stored, gzip'd or not.
     layout : RecordLayout
         What its columns mean.
     nominal : Fraction or None
@@ -63,7 +72,8 @@ def text_rows(
     """
     import polars as pl
 
-    table = open_table(unpacked(content, where=where), where=where)
+    text = unpacked(content, where=where)
+    table = open_table(text, where=where, path=path if text is content else None)
     columns: dict[str, tuple[int, pl.DataType]] = {
         "time": (table.position(layout.time_column), _time_type(layout)),
         "value": (table.position(layout.value_column), _value_type(layout, nominal)),

@@ -4,10 +4,12 @@ from __future__ import annotations
 
 import difflib
 import gzip
+import mmap
 import re
 import zlib
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
+from pathlib import Path
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -21,12 +23,17 @@ if TYPE_CHECKING:
 __all__ = ["Columns", "TextTable", "open_table", "unpacked"]
 
 _GZIP_MAGIC = b"\x1f\x8b"
+_INK = re.compile(rb"\S")
 _CONTROL = re.compile(rb"[\x00-\x08\x0e-\x1f]")
 _NUMERIC = re.compile(r"[+-]?(\d|\.\d).*|[+-]?(nan|inf(inity)?)", re.IGNORECASE)
 _SAMPLED_LINES = 50
 
 
-def unpacked(content: bytes, *, where: str) -> bytes:
+Content = bytes | mmap.mmap
+"""A text in memory, or mapped from its file."""
+
+
+def unpacked(content: Content, *, where: str) -> Content:
     """Undo gzip, recognised by its first bytes, and check that this is text.
 
     Raises
@@ -34,7 +41,7 @@ def unpacked(content: bytes, *, where: str) -> bytes:
     DataError
         If the file is empty, binary, or a damaged or truncated gzip.
     """
-    if content.startswith(_GZIP_MAGIC):
+    if content[:2] == _GZIP_MAGIC:
         try:
             content = gzip.decompress(content)
         except (EOFError, zlib.error, gzip.BadGzipFile) as error:
@@ -43,7 +50,7 @@ def unpacked(content: bytes, *, where: str) -> bytes:
                 where=where,
                 advice="Copy the file again from its source",
             ) from None
-    if not content.strip():
+    if not _INK.search(content):
         raise DataError("the file is empty", where=where)
     if _CONTROL.search(content[:65_536]):
         raise DataError(
@@ -51,7 +58,7 @@ def unpacked(content: bytes, *, where: str) -> bytes:
             where=where,
             allowed="Text, gzip'd text, or netCDF with the ending .nc",
         )
-    return content.removeprefix(b"\xef\xbb\xbf")
+    return content[3:] if content[:3] == b"\xef\xbb\xbf" else content
 
 
 @dataclass(frozen=True)
@@ -60,8 +67,12 @@ class TextTable:
 
     Attributes
     ----------
-    body : bytes
-        Everything from the first row on.
+    content : bytes or mapped file
+        The whole text.
+    offset : int
+        Where its first row begins.
+    path : Path or None
+        The file that holds nothing but this text, to be read without a copy.
     first_line : int
         Number of the first row's line in the file, counted from 1.
     separator : bytes
@@ -76,7 +87,9 @@ class TextTable:
         The file, for messages.
     """
 
-    body: bytes
+    content: Content
+    offset: int
+    path: Path | None
     first_line: int
     separator: bytes
     width: int
@@ -138,20 +151,21 @@ class TextTable:
 
     def _regular(
         self, places: dict[str, int]
-    ) -> tuple[bytes, NDArray[np.int64] | None, int, dict[str, int]]:
+    ) -> tuple[bytes | Path, NDArray[np.int64] | None, int, dict[str, int]]:
         """Tidy rows without comments; their lines unless consecutive; width and places."""
-        body = self.body
-        if b"\r" in body:
-            body = body.replace(b"\r\n", b"\n").replace(b"\r", b"\n")
-        if self.separator == b" ":
+        spaced = self.separator == b" "
+        untidy = (b"#", b'"', b"\r") if spaced else (b"#", b'"', b"\r", b" ")
+        tidy = max(places.values()) < self.first_width
+        tidy &= all(self.content.find(mark, self.offset) < 0 for mark in untidy)
+        if tidy and not spaced and self.offset == 0 and self.path is not None:
+            return self.path, None, self.first_width, places
+        body = self.content[self.offset :]
+        if spaced:
             rows = body.count(b"\n") + (not body.endswith(b"\n"))
-            tidy = body.count(b" ") == rows * (self.first_width - 1)
-        else:
-            tidy = b" " not in body
-        whole = max(places.values()) < self.first_width
-        if tidy and whole and not (b"#" in body or b'"' in body):
+            tidy &= body.count(b" ") == rows * (self.first_width - 1)
+        if tidy:
             return body, None, self.first_width, places
-        return self._tidied(body, places)
+        return self._tidied(body.replace(b"\r\n", b"\n").replace(b"\r", b"\n"), places)
 
     def _tidied(
         self, body: bytes, places: dict[str, int]
@@ -176,7 +190,7 @@ class TextTable:
 class _Layout:
     """Tidy rows, and where the wanted fields are in them."""
 
-    body: bytes
+    body: bytes | Path
     width: int
     places: Mapping[str, int]
     separator: bytes
@@ -234,7 +248,7 @@ class Columns:
         return texts.with_columns(positions).filter(pl.Series(rows))
 
 
-def open_table(content: bytes, *, where: str) -> TextTable:
+def open_table(content: Content, *, where: str, path: Path | None = None) -> TextTable:
     """Find the header, the separator and the first row of a text.
 
     The header is the first line whose fields are all words, or the last comment before the first
@@ -242,10 +256,12 @@ def open_table(content: bytes, *, where: str) -> TextTable:
 
     Parameters
     ----------
-    content : bytes
+    content : bytes or mapped file
         Text as `unpacked` gives it.
     where : str
         The file, for messages.
+    path : Path, optional
+        The file, if it holds exactly this text.
 
     Raises
     ------
@@ -265,11 +281,13 @@ def open_table(content: bytes, *, where: str) -> TextTable:
         separator = _separator_of(sample)
         widths = [len(_split(row, separator)) for row in sample]
         names = tuple(_words(header or comment, separator)) if header or comment else ()
-        return TextTable(content[offset:], number, separator, max(widths), widths[0], names, where)
+        return TextTable(
+            content, offset, path, number, separator, max(widths), widths[0], names, where
+        )
     raise DataError("the file holds no row", where=where)
 
 
-def _content_lines(content: bytes) -> Iterator[tuple[int, int, bytes]]:
+def _content_lines(content: Content) -> Iterator[tuple[int, int, bytes]]:
     """Line number, offset and stripped text of every line that is not blank."""
     number, offset = 0, 0
     while offset < len(content):

@@ -87,6 +87,13 @@ def test_lines_are_counted_through_comments_and_blank_lines(tmp_path):
         read(tmp_path, lines)
 
 
+@pytest.mark.parametrize("header", [[], ["mjd\ty"]])
+def test_lines_are_counted_through_blank_lines_alone(tmp_path, header):
+    lines = [*header, *GOOD[1:5], "", "", *GOOD[5:20], "60400.01\t?", *GOOD[20:], "", ""]
+    with pytest.raises(DataError, match=f"line {22 + len(header)}: the value is not a number"):
+        read(tmp_path, lines)
+
+
 @pytest.mark.parametrize(
     ("value", "nominal"), [("ratio", Fraction(12, 10)), ("offset", Fraction(10**15))]
 )
