@@ -37,6 +37,13 @@ Level = Annotated[
     str | None,
     typer.Option("--zero-level", help="Of the geoid height or anomaly: name or W0 in m² s⁻²."),
 ]
+Quantity = Annotated[
+    str | None,
+    typer.Option("--quantity", help="geoid_height or height_anomaly, if the grid does not say."),
+]
+Ellipsoid = Annotated[
+    str | None, typer.Option("--ellipsoid", help="grs80 or wgs84, if the grid does not say.")
+]
 Gravity = Annotated[
     float | None, typer.Option("--gravity", help="Gravity measured at the marker, m s⁻².")
 ]
@@ -60,6 +67,8 @@ def command(
     u_separation: USeparation = None,
     tide_system: Tide = None,
     zero_level: Level = None,
+    quantity: Quantity = None,
+    ellipsoid: Ellipsoid = None,
     gravity: Gravity = None,
     u_gravity: UGravity = 0.0,
     rise: Rise = 0.0,
@@ -85,7 +94,13 @@ def command(
         separation = _stated(geoid_height, height_anomaly, u_separation, tide_system, zero_level)
         source = "stated by the user"
     else:
-        separation, source = _from_grid(grid, place, u_separation, tide_system, zero_level)
+        conventions = {
+            "quantity": quantity,
+            "tide_system": tide_system,
+            "zero_level": zero_level,
+            "ellipsoid": ellipsoid,
+        }
+        separation, source = _from_grid(grid, place, u_separation, conventions)
     marker = number_from_ellipsoidal_height(
         ellipsoidal_height,
         separation,
@@ -224,23 +239,14 @@ def _tell(result: dict[str, Any]) -> None:
 
 
 def _from_grid(
-    grid: Path | None,
-    place: Any,
-    u: float | None,
-    tide_system: str | None,
-    zero_level: str | None,
+    grid: Path | None, place: Any, u: float | None, conventions: dict[str, Any]
 ) -> tuple[Separation, str]:
-    """Sample a grid; what it does not say about itself must have been stated."""
+    """Sample a grid; what it does not say about itself must be in `conventions`."""
     from clockgeo.files import shipped_grid
     from clockgeo.gravity import Separation, open_geoid
 
     path = shipped_grid(GLOBAL_GRID) if grid is None else grid
-    model = open_geoid(
-        path,
-        tide_system=tide_system,
-        zero_level=zero_level,
-        u=u,
-    )
+    model = open_geoid(path, u=u, **conventions)
     value = float(model.sample(place.latitude, place.longitude))
     spread = float(model.u(place.latitude, place.longitude))
     separation = Separation(
