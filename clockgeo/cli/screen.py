@@ -57,7 +57,7 @@ def command(
     says whose cycles are counted. Interpolated rows, servo oscillations and steps across gaps are
     pointed out.
 
-    Example: clockgeo screen examples/saddle/records/before.txt --out flagged.csv
+    Example: clockgeo screen examples/saddle/records/local-1.txt.gz
     """
     from clockgeo.cli.terminal import print_json, progress_shown
     from clockgeo.frequency import ScreeningRules, diagnose, screen

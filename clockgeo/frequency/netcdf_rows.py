@@ -233,11 +233,9 @@ def _floats(variable: Any, where: str) -> NDArray[np.float64]:
     """Numbers with their missing ones as NaN, scale and offset applied."""
     if variable.dtype is str or not np.issubdtype(variable.dtype, np.number):
         raise DataError("not a numeric variable", value=variable.name, where=where)
-    values = np.asarray(variable[:], dtype=np.float64)
-    for key in ("_FillValue", "missing_value"):
-        if key in variable.ncattrs():
-            values = np.where(np.isin(values, variable.getncattr(key)), np.nan, values)
-    return values
+    variable.set_auto_mask(True)
+    values = np.ma.asarray(variable[:], dtype=np.float64)
+    return np.asarray(np.ma.filled(values, np.nan))
 
 
 def _allowed(variable: Any, layout: RecordLayout) -> NDArray[np.bool_]:

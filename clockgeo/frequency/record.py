@@ -44,7 +44,7 @@ class Record:
     u : float64 array, shape (N,), or None
         Standard uncertainty of each row as stated in the file.
     sources : tuple of Source
-        The files, in time order.
+        The files it was read from.
     notes : tuple of str
         What reading found worth telling.
     weighting : "pi", "lambda" or None

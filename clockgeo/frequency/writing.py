@@ -73,7 +73,7 @@ def write_record(
     Raises
     ------
     DataError
-        If columns do not fit together, or what they refer to is not given.
+        If columns do not fit together, a value is infinite, or what values refer to is not given.
     OutputError
         If the file exists or cannot be written.
 
@@ -88,6 +88,8 @@ def write_record(
     if stamps.shape != values.shape or stamps.ndim != 1 or not stamps.size:
         shapes = f"{stamps.shape} and {values.shape}"
         raise DataError("times and values need one common length, at least 1", value=shapes)
+    if np.any(np.isinf(values)):
+        raise DataError("a fractional frequency is infinite", allowed="Finite values, or NaN")
     flags = np.isfinite(values) if usable is None else np.asarray(usable, dtype=bool)
     columns: dict[str, Any] = {
         "time": _stamped(stamps, layout),
@@ -112,7 +114,7 @@ def write_record(
         else:
             content = _text(columns, layout, stamp_decimals)
             if target.suffix.lower() == ".gz":
-                content = gzip.compress(content, mtime=0)
+                content = gzip.compress(content, compresslevel=6, mtime=0)
             partial.write_bytes(content)
 
 

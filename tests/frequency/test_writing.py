@@ -169,6 +169,7 @@ def test_an_existing_file_is_not_replaced_unless_asked(tmp_path):
     ("stated", "given_", "problem"),
     [
         ({}, {"y": [0.0, 1.0]}, "one common length"),
+        ({}, {"y": [np.inf]}, "is infinite"),
         ({}, {"tai_ns": [], "y": []}, "at least 1"),
         ({"value": "ratio"}, {}, "need the nominal ratio"),
         ({"value": "offset"}, {}, "need the optical frequency"),
@@ -248,6 +249,21 @@ def test_fill_values_are_missing(tmp_path):
     foreign(tmp_path / "f.nc", values=(1e-17, -999.0))
     record = read_record(RecordLayout(**FOREIGN), base=tmp_path, name="lab")
     assert record.usable.tolist() == [True, False]
+
+
+def test_packed_values_are_unpacked(tmp_path):
+    with netCDF4.Dataset(tmp_path / "f.nc", "w") as dataset:
+        dataset.createDimension("n", 3)
+        time = dataset.createVariable("when", "f8", ("n",))
+        time.units = "days since 1858-11-17"
+        time[:] = [60_400.0, 60_400.5, 60_401.0]
+        value = dataset.createVariable("y", "i4", ("n",), fill_value=-1)
+        value.scale_factor = 1e-19
+        value.set_auto_maskandscale(False)
+        value[:] = [100, -1, 300]
+    record = read_record(RecordLayout(**FOREIGN), base=tmp_path, name="lab")
+    np.testing.assert_allclose(record.y, [1e-17, np.nan, 3e-17], rtol=1e-15)
+    assert record.usable.tolist() == [True, False, True]
 
 
 @pytest.mark.parametrize(
