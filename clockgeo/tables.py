@@ -2,11 +2,21 @@
 
 from __future__ import annotations
 
+from datetime import UTC, datetime
 from typing import Annotated
 
-from pydantic import BaseModel, ConfigDict, Field
+from pydantic import AfterValidator, BaseModel, ConfigDict, Field
 
-__all__ = ["Identifier", "Latitude", "Longitude", "NonNegative", "Positive", "Table", "Uncertainty"]
+__all__ = [
+    "Identifier",
+    "Instant",
+    "Latitude",
+    "Longitude",
+    "NonNegative",
+    "Positive",
+    "Table",
+    "Uncertainty",
+]
 
 
 class Table(BaseModel):
@@ -28,6 +38,14 @@ class Table(BaseModel):
 
 Identifier = Annotated[str, Field(pattern=r"^\S(.*\S)?$", max_length=80)]
 """A name that other tables refer to: no blank at either end, at most 80 characters."""
+
+
+def _in_utc(instant: datetime) -> datetime:
+    return instant.replace(tzinfo=UTC) if instant.tzinfo is None else instant.astimezone(UTC)
+
+
+Instant = Annotated[datetime, AfterValidator(_in_utc)]
+"""A date and time of ISO 8601; UTC where no zone is given."""
 
 Latitude = Annotated[float, Field(ge=-90.0, le=90.0)]
 """Geodetic latitude in degrees, north positive."""

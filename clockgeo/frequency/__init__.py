@@ -9,17 +9,17 @@ import importlib
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
-    from clockgeo.frequency.scatter import ExcessScatter, excess_scatter
+    from clockgeo.frequency.diagnosis import Finding, diagnose
     from clockgeo.frequency.generator import draw_noise
+    from clockgeo.frequency.layout import RecordLayout
     from clockgeo.frequency.mean import TickSeries, mean_covariance
     from clockgeo.frequency.noise import NoiseModel
     from clockgeo.frequency.noise_fit import NoiseFit, fit_noise
-    from clockgeo.frequency.diagnosis import Finding, diagnose
-    from clockgeo.frequency.layout import RecordLayout
     from clockgeo.frequency.ratio import exact_number, fractional_frequency, ratio_text
     from clockgeo.frequency.reading import read_record
     from clockgeo.frequency.record import Record, Source
     from clockgeo.frequency.sampling import Sampling, estimate_interval, sample_ticks
+    from clockgeo.frequency.scatter import ExcessScatter, excess_scatter
     from clockgeo.frequency.screening import Mask, Reason, Screening, ScreeningRules, screen
     from clockgeo.frequency.transitions import RECOMMENDED_FREQUENCIES, Transition, find_transition
     from clockgeo.frequency.writing import write_record

@@ -6,11 +6,12 @@ from pathlib import Path
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from clockgeo.frequency.layout import RecordLayout
 from clockgeo.frequency.netcdf_rows import TIME_VARIABLE, VALUE_VARIABLE
 
-__all__ = ["write_netcdf"]
+__all__ = ["write_netcdf", "write_time"]
 
 _UNITS = {"fractional": "1", "ratio": "1", "offset": "Hz"}
 _NAMES = {
@@ -43,18 +44,7 @@ def write_netcdf(path: Path, columns: dict[str, Any], layout: RecordLayout) -> N
                 dataset.setncattr(key, getattr(layout, key))
         dataset.stamp = layout.stamp
         dimension = _name(layout, "time", TIME_VARIABLE)
-        dataset.createDimension(dimension, columns["time"].size)
-        time = dataset.createVariable(dimension, "i8", (dimension,))
-        time.setncatts(
-            {
-                "standard_name": "time",
-                "long_name": f"{layout.stamp} of the averaging interval",
-                "units": "nanoseconds since 1958-01-01T00:00:00",
-                "calendar": "tai",
-                "axis": "T",
-            }
-        )
-        time[:] = columns["time"]
+        write_time(dataset, dimension, columns["time"], stamp=layout.stamp)
         value = _name(layout, "value", VALUE_VARIABLE)
         kind = str if columns["value"].dtype == object else "f8"
         variable = dataset.createVariable(value, kind, (dimension,))
@@ -71,6 +61,34 @@ def write_netcdf(path: Path, columns: dict[str, Any], layout: RecordLayout) -> N
             _write_flags(dataset, ancillary[-1], dimension, columns["flag"], layout)
         if ancillary:
             variable.ancillary_variables = " ".join(ancillary)
+
+
+def write_time(dataset: Any, name: str, tai_ns: NDArray[np.int64], *, stamp: str) -> None:
+    """Write a CF time coordinate, and its dimension, that counts every nanosecond of TAI.
+
+    Parameters
+    ----------
+    dataset : netCDF4.Dataset
+        Open for writing.
+    name : str
+        Of the dimension and the coordinate.
+    tai_ns : int64 array, shape (N,)
+        TAI ns since 1958.
+    stamp : str
+        Which instant of the averaging interval this is.
+    """
+    dataset.createDimension(name, tai_ns.size)
+    time = dataset.createVariable(name, "i8", (name,))
+    time.setncatts(
+        {
+            "standard_name": "time",
+            "long_name": f"{stamp} of the averaging interval",
+            "units": "nanoseconds since 1958-01-01T00:00:00",
+            "calendar": "tai",
+            "axis": "T",
+        }
+    )
+    time[:] = tai_ns
 
 
 def _name(layout: RecordLayout, role: str, default: str) -> str:

@@ -4,33 +4,28 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import dataclass
-from datetime import UTC, datetime
 from enum import IntFlag
 from typing import Annotated
 
 import numpy as np
 from numpy.typing import NDArray
-from pydantic import AfterValidator, Field, model_validator
+from pydantic import Field, model_validator
 
 from clockgeo.errors import DataError
 from clockgeo.frequency.record import Record
 from clockgeo.frequency.running import Running, running_median_and_spread
-from clockgeo.tables import Positive, Table
+from clockgeo.tables import Instant, Positive, Table
 from clockgeo.times import tai_from_iso
 
 __all__ = ["Mask", "Reason", "Screening", "ScreeningRules", "screen"]
 
 
-def _with_zone(instant: datetime) -> datetime:
-    return instant.replace(tzinfo=UTC) if instant.tzinfo is None else instant.astimezone(UTC)
-
-
 class Mask(Table):
     """A time that somebody decided to leave out."""
 
-    start: Annotated[datetime, AfterValidator(_with_zone)]
+    start: Instant
     """First instant left out; UTC where no zone is given."""
-    stop: Annotated[datetime, AfterValidator(_with_zone)]
+    stop: Instant
     """First instant that counts again."""
     author: str = Field(min_length=1)
     """Who decided."""

@@ -15,6 +15,8 @@ from pydantic import ValidationError
 from clockgeo.errors import DataError
 from clockgeo.files import json_text, whole_file, write_text
 from clockgeo.frequency.diagnosis import Finding
+from clockgeo.frequency.netcdf_rows import TIME_VARIABLE, VALUE_VARIABLE
+from clockgeo.frequency.netcdf_writing import write_time
 from clockgeo.frequency.screening import Reason, Screening, ScreeningRules
 from clockgeo.times import iso_utc
 
@@ -172,19 +174,8 @@ def _write_netcdf(path: Path, screening: Screening) -> None:
         dataset.interval = record.interval
         dataset.mean_with_screening = screening.mean_with
         dataset.mean_without_screening = screening.mean_without
-        dataset.createDimension("time", len(record))
-        time = dataset.createVariable("time", "i8", ("time",))
-        time.setncatts(
-            {
-                "standard_name": "time",
-                "long_name": "start of the averaging interval",
-                "units": "nanoseconds since 1958-01-01T00:00:00",
-                "calendar": "tai",
-                "axis": "T",
-            }
-        )
-        time[:] = record.tai_ns
-        y = dataset.createVariable("fractional_frequency", "f8", ("time",))
+        write_time(dataset, TIME_VARIABLE, record.tai_ns, stamp="start")
+        y = dataset.createVariable(VALUE_VARIABLE, "f8", (TIME_VARIABLE,))
         y.setncatts(
             {
                 "long_name": "fractional frequency deviation from the nominal value",
@@ -193,7 +184,7 @@ def _write_netcdf(path: Path, screening: Screening) -> None:
             }
         )
         y[:] = record.y
-        reasons = dataset.createVariable("reasons", "u1", ("time",))
+        reasons = dataset.createVariable("reasons", "u1", (TIME_VARIABLE,))
         reasons.setncatts(
             {
                 "standard_name": "status_flag",
