@@ -11,6 +11,10 @@ from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
     from clockgeo.gravity.caution import CAUTION
+    from clockgeo.gravity.geoid_covariance import ErrorModel, covariance_of_differences
+    from clockgeo.gravity.geoid_model import GeoidModel
+    from clockgeo.gravity.geoid_reading import missing_conventions, open_geoid, read_grid
+    from clockgeo.gravity.geoid_writing import geoid_dataset, write_geoid
     from clockgeo.gravity.geopotential import (
         GeopotentialNumber,
         Height,
@@ -19,6 +23,8 @@ if TYPE_CHECKING:
         heights_of,
         number_of,
     )
+    from clockgeo.gravity.grid_content import GridContent
+    from clockgeo.gravity.grid_tile import GridTile
     from clockgeo.gravity.heights import (
         dynamic_height,
         normal_height,
@@ -106,7 +112,11 @@ if TYPE_CHECKING:
 __all__ = [
     "CAUTION",
     "Constituent",
+    "ErrorModel",
+    "GeoidModel",
     "GeopotentialNumber",
+    "GridContent",
+    "GridTile",
     "Height",
     "HeightKind",
     "LOVE_NUMBERS",
@@ -128,12 +138,15 @@ __all__ = [
     "ZeroLevel",
     "convert_tide_system",
     "convert_zero_level",
+    "covariance_of_differences",
     "doodson_argument",
     "dynamic_height",
+    "geoid_dataset",
     "height_of",
     "heights_of",
     "marker_to_atoms",
     "mean_tide_height_evrf2019",
+    "missing_conventions",
     "named_zero_levels",
     "normal_field_transfer",
     "normal_geopotential_number",
@@ -146,10 +159,12 @@ __all__ = [
     "number_of_normal_height",
     "number_of_orthometric_height",
     "number_of_rigorous_height",
+    "open_geoid",
     "orthometric_height",
     "permanent_tide_on_crust",
     "permanent_tide_potential",
     "pole_tide",
+    "read_grid",
     "read_load_table",
     "read_pole_coordinates",
     "reference_ellipsoid",
@@ -165,6 +180,7 @@ __all__ = [
     "tide_system",
     "tide_system_shift",
     "uplift_difference",
+    "write_geoid",
     "write_load_table",
     "write_tide_series",
     "zero_level",
@@ -174,12 +190,22 @@ __all__ = [
 
 _HOME = {
     "CAUTION": "caution",
+    "ErrorModel": "geoid_covariance",
+    "covariance_of_differences": "geoid_covariance",
+    "GeoidModel": "geoid_model",
+    "missing_conventions": "geoid_reading",
+    "open_geoid": "geoid_reading",
+    "read_grid": "geoid_reading",
+    "geoid_dataset": "geoid_writing",
+    "write_geoid": "geoid_writing",
     "GeopotentialNumber": "geopotential",
     "Height": "geopotential",
     "HeightKind": "geopotential",
     "height_of": "geopotential",
     "heights_of": "geopotential",
     "number_of": "geopotential",
+    "GridContent": "grid_content",
+    "GridTile": "grid_tile",
     "dynamic_height": "heights",
     "normal_height": "heights",
     "number_of_dynamic_height": "heights",

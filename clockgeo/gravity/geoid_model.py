@@ -2,93 +2,26 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import Literal
+from typing import Literal, get_args
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from clockgeo.errors import ConventionError, DataError
-from clockgeo.gravity.geoid_covariance import ErrorModel
-from clockgeo.gravity.interpolation import Interpolation, interpolate, smallest_side
+from clockgeo.gravity.geoid_covariance import ErrorModel, covariance_of_differences
+from clockgeo.gravity.grid_tile import GridTile
+from clockgeo.gravity.interpolation import Interpolation, checked_interpolation
 from clockgeo.gravity.places import checked_latitude, checked_longitude, plain
 from clockgeo.gravity.tide_systems import TideSystem
 from clockgeo.gravity.zero_levels import ZeroLevel
 
-__all__ = ["GeoidModel", "GridTile", "Quantity"]
+__all__ = ["GeoidModel", "GridTile", "Outside", "Quantity"]
 
 Quantity = Literal["geoid_height", "height_anomaly"]
-_EDGE = 1e-9  # degrees: rounding of coordinates that lie on the edge
-
-
-@dataclass(frozen=True, eq=False)
-class GridTile:
-    """A regular grid of node values.
-
-    Attributes
-    ----------
-    south, west : float
-        Latitude and longitude of the first node in degrees.
-    latitude_step, longitude_step : float
-        Distances of the nodes in degrees, > 0.
-    values : float array, shape (rows, columns)
-        m, from south to north and west to east; NaN for no data.
-    u : float array of the same shape, or None
-        Standard uncertainty of each node in m.
-    """
-
-    south: float
-    west: float
-    latitude_step: float
-    longitude_step: float
-    values: NDArray[np.floating]
-    u: NDArray[np.floating] | None = None
-
-    @property
-    def north(self) -> float:
-        """Latitude of the last row in degrees."""
-        return self.south + (self.values.shape[0] - 1) * self.latitude_step
-
-    @property
-    def width(self) -> float:
-        """Longitude of the last column minus that of the first, degrees."""
-        return (self.values.shape[1] - 1) * self.longitude_step
-
-    @property
-    def closes(self) -> bool:
-        """Whether the columns go round the Earth."""
-        return self.width + self.longitude_step > 360.0 - 0.01 * self.longitude_step
-
-    def places(
-        self, latitude: NDArray[np.float64], longitude: NDArray[np.float64]
-    ) -> tuple[NDArray[np.float64], NDArray[np.float64], NDArray[np.bool_]]:
-        """Fractional row and column of points, and which of them lie in the tile."""
-        row = (latitude - self.south) / self.latitude_step
-        east = np.mod(longitude - self.west, 360.0)
-        east = np.where(east > 360.0 - _EDGE, 0.0, east)
-        column = east / self.longitude_step
-        rows, columns = self.values.shape
-        slack = _EDGE / self.latitude_step
-        inside = (row >= -slack) & (row <= rows - 1 + slack)
-        if not self.closes:
-            inside &= column <= columns - 1 + _EDGE / self.longitude_step
-        return np.clip(row, 0.0, rows - 1), column, inside
-
-    def sample(
-        self,
-        field: NDArray[np.floating],
-        row: NDArray[np.float64],
-        column: NDArray[np.float64],
-        method: Interpolation,
-    ) -> NDArray[np.float64]:
-        """Interpolate a field of this tile's shape at fractional rows and columns."""
-        if self.closes:
-            side = smallest_side(method)
-            # Columns repeated at both ends let the stencil run across the seam.
-            columns = np.arange(-side, round(360.0 / self.longitude_step) + side)
-            field = field[:, columns % round(360.0 / self.longitude_step)]
-            column = column + side
-        return interpolate(field, row, column, method)
+Outside = Literal["error", "nan"]
+_BLOCK = 16_384  # points at a time, so that what is computed for them stays in the cache
 
 
 @dataclass(frozen=True, eq=False)
@@ -100,21 +33,24 @@ class GeoidModel:
     name : str
         File it was read from.
     tiles : tuple of GridTile
-        Finest first; the finest that holds a point wins.
-    quantity : "geoid_height" or "height_anomaly"
+        The first that holds a point wins: the deepest of a nest, the finest.
+    quantity : {"geoid_height", "height_anomaly"}
         Goes with orthometric or with normal heights.
     tide_system : TideSystem
     zero_level : ZeroLevel
         Of the surface.
     ellipsoid : str
         The one that heights are counted from, such as `grs80`.
-    interpolation : "bilinear", "biquadratic" or "bicubic"
+    interpolation : {"bilinear", "biquadratic", "bicubic"}
         What the model is meant to be sampled with.
     errors : ErrorModel or None
         Size and correlation of the model's errors; None where nothing is stated.
-    epoch : str or None
+    epoch : float or None
+        Decimal year that the values hold for.
+    hybrid : bool
+        Whether the model was fitted to levelling.
     fitted_to : str or None
-        Levelling datum that a hybrid model was fitted to; such a model is no independent check of it.
+        Levelling datum that a hybrid model was fitted to, which it then cannot check.
     source : str
         Title or reference, as the file states it.
     """
@@ -127,7 +63,8 @@ class GeoidModel:
     ellipsoid: str
     interpolation: Interpolation = "bilinear"
     errors: ErrorModel | None = None
-    epoch: str | None = None
+    epoch: float | None = None
+    hybrid: bool = False
     fitted_to: str | None = None
     source: str = ""
 
@@ -136,8 +73,9 @@ class GeoidModel:
         latitude: ArrayLike,
         longitude: ArrayLike,
         *,
-        outside: Literal["error", "nan"] = "error",
-        interpolation: Interpolation | None = None,
+        outside: Outside = "error",
+        interpolation: Interpolation | str | None = None,
+        epoch: float | None = None,
     ) -> float | NDArray[np.float64]:
         """Value of the model at points.
 
@@ -145,10 +83,13 @@ class GeoidModel:
         ----------
         latitude, longitude : float or array, broadcast together
             Geodetic, in degrees; longitudes may run -180..180 or 0..360.
-        outside : "error" or "nan"
+        outside : {"error", "nan"}
             What happens at points outside the grid or beside nodes without data.
         interpolation : optional
             Another method than the model's own.
+        epoch : float, optional
+            Decimal year; the model's rate brings its values there. Without it they are those of the
+            model's own epoch.
 
         Returns
         -------
@@ -159,60 +100,103 @@ class GeoidModel:
         ------
         DataError
             If a coordinate is out of range, or a point has no value and `outside` is "error".
+        ConventionError
+            If the method is unknown, or an epoch is asked of a model without rate or epoch.
         """
-        method = interpolation or self.interpolation
-        return self._sampled("values", latitude, longitude, outside, method)
+        method = checked_interpolation(interpolation or self.interpolation)
+        values = self._field("values", latitude, longitude, outside, method)
+        if epoch is not None:
+            years = epoch - self._epoch_with_rate()
+            values = values + years * self._field("rate", latitude, longitude, outside, method)
+        return plain(values)
 
-    def _sampled(
+    def u(
+        self, latitude: ArrayLike, longitude: ArrayLike, *, outside: Outside = "error"
+    ) -> float | NDArray[np.float64]:
+        """Standard uncertainty of the model at points, m; a field of u is sampled bilinearly.
+
+        Raises
+        ------
+        ConventionError
+            If neither the file nor the user states one.
+        DataError
+            If a coordinate is out of range, or a point has no value and `outside` is "error".
+        """
+        if any(tile.u is not None for tile in self.tiles):
+            return plain(self._field("u", latitude, longitude, outside, "bilinear"))
+        phi, lam = np.broadcast_arrays(checked_latitude(latitude), checked_longitude(longitude))
+        return plain(np.full(np.broadcast_shapes(phi.shape, lam.shape), self._stated_errors().u))
+
+    def covariance(self, latitude: ArrayLike, longitude: ArrayLike) -> NDArray[np.float64]:
+        """Covariance of the model's errors between points, shape (N, N), m².
+
+        Raises
+        ------
+        ConventionError
+            If no uncertainty is stated, or no correlation length and the points differ.
+        """
+        phi, lam = (np.atleast_1d(np.asarray(x, dtype=np.float64)) for x in (latitude, longitude))
+        sizes = np.atleast_1d(np.asarray(self.u(phi, lam)))
+        try:
+            alike = (self.errors or ErrorModel(u=0.0)).correlation(phi, lam)
+        except ConventionError as error:
+            raise ConventionError(
+                error.what, where=self.name, allowed=error.allowed, advice=error.advice
+            ) from None
+        return np.outer(sizes, sizes) * alike
+
+    def difference_covariance(
+        self, latitude: ArrayLike, longitude: ArrayLike, pairs: Sequence[tuple[int, int]]
+    ) -> NDArray[np.float64]:
+        """Covariance of differences between points, second minus first, shape (M, M), m².
+
+        See `covariance` and `covariance_of_differences`.
+        """
+        return covariance_of_differences(self.covariance(latitude, longitude), pairs)
+
+    def interpolation_error(
         self,
-        name: str,
         latitude: ArrayLike,
         longitude: ArrayLike,
-        outside: str,
-        method: Interpolation,
+        *,
+        interpolation: Interpolation | str | None = None,
+        outside: Outside = "error",
     ) -> float | NDArray[np.float64]:
-        phi, lam = np.broadcast_arrays(checked_latitude(latitude), checked_longitude(longitude))
-        shape = phi.shape
-        phi, lam = phi.ravel(), lam.ravel()
-        found = np.full(phi.shape, np.nan)
-        open_points = np.arange(phi.size)
-        for tile in self.tiles:
-            field = tile.values if name == "values" else tile.u
-            if field is None or not open_points.size:
-                continue
-            whole = open_points.size == phi.size
-            at = (phi, lam) if whole else (phi[open_points], lam[open_points])
-            row, column, inside = tile.places(*at)
-            if inside.all():
-                found[open_points] = tile.sample(field, row, column, method)
-                open_points = open_points[:0]
-                break
-            here = open_points[inside]
-            found[here] = tile.sample(field, row[inside], column[inside], method)
-            open_points = open_points[~inside]
-        if outside == "error":
-            self._refuse_missing(found, open_points, phi, lam)
-        return plain(found.reshape(shape))
+        """Estimate of the interpolation error at points, m.
 
-    def _refuse_missing(
-        self,
-        found: NDArray[np.float64],
-        outside: NDArray[np.int64],
-        phi: NDArray[np.float64],
-        lam: NDArray[np.float64],
-    ) -> None:
-        missing = np.flatnonzero(np.isnan(found))
-        if not missing.size:
-            return
-        first = int(missing[0])
-        what = "lies outside the grid" if outside.size else "has no data in the grid"
-        raise DataError(
-            f"a point {what} ({missing.size} of {found.size} points)",
-            value=f"latitude {phi[first]:.6f}, longitude {lam[first]:.6f}",
-            where=self.name,
-            allowed=self.extent,
-            advice="Use another model, or ask for nan there (outside='nan', --outside nan)",
-        )
+        Notes
+        -----
+        The absolute difference from another method: of the bilinear value from the bicubic one, of
+        either smooth method from the other. It tells what the grid resolves; what is rougher than
+        the grid shows nowhere in it.
+        """
+        method = checked_interpolation(interpolation or self.interpolation)
+        other = "biquadratic" if method == "bicubic" else "bicubic"
+        values = [
+            np.asarray(self.sample(latitude, longitude, outside=outside, interpolation=one))
+            for one in (method, other)
+        ]
+        return plain(np.abs(values[0] - values[1]))
+
+    @property
+    def conventions(self) -> dict[str, str | float]:
+        """What the model states, by the names that its files use (see `CONVENTIONS`)."""
+        level, errors = self.zero_level, self.errors
+        named = not level.name.startswith("W0 = ")
+        stated: dict[str, str | float | None] = {
+            "quantity": self.quantity,
+            "tide_system": str(self.tide_system),
+            "zero_level": level.name if named else None,
+            "zero_level_potential": level.w0,
+            "ellipsoid": self.ellipsoid,
+            "interpolation": self.interpolation,
+            "u": errors.u if errors else None,
+            "correlation_length": errors.correlation_length if errors else None,
+            "epoch": self.epoch,
+            "model_type": "hybrid" if self.hybrid else None,
+            "fitted_to": self.fitted_to,
+        }
+        return {key: value for key, value in stated.items() if value is not None}
 
     @property
     def extent(self) -> str:
@@ -224,42 +208,89 @@ class GeoidModel:
         east = max(tile.west + tile.width for tile in self.tiles)
         return f"Latitudes {south:g}..{north:g}, longitudes {west:g}..{east:g}"
 
-    def u(self, latitude: ArrayLike, longitude: ArrayLike) -> float | NDArray[np.float64]:
-        """Standard uncertainty of the model at points, m.
-
-        Raises
-        ------
-        ConventionError
-            If neither the file nor the user states one.
-        """
-        if any(tile.u is not None for tile in self.tiles):
-            return self._sampled("u", latitude, longitude, "error", "bilinear")
+    def _field(
+        self,
+        which: str,
+        latitude: ArrayLike,
+        longitude: ArrayLike,
+        outside: str,
+        method: Interpolation,
+    ) -> NDArray[np.float64]:
+        if outside not in get_args(Outside):
+            raise ConventionError(
+                "unknown rule for points outside the grid",
+                value=repr(outside),
+                allowed=f"One of {', '.join(get_args(Outside))}",
+            )
         phi, lam = np.broadcast_arrays(checked_latitude(latitude), checked_longitude(longitude))
-        return plain(np.full(phi.shape, self._stated_errors().u) + 0.0 * lam)
+        shape = phi.shape
+        phi, lam = phi.ravel(), lam.ravel()
+        found, inside = np.full(phi.size, np.nan), np.zeros(phi.size, dtype=bool)
+        for start in range(0, phi.size, _BLOCK):
+            block = slice(start, start + _BLOCK)
+            found[block], inside[block] = self._block(which, phi[block], lam[block], method)
+        if outside == "error":
+            self._refuse_missing(found, inside, phi, lam)
+        return found.reshape(shape)
 
-    def covariance(self, latitude: ArrayLike, longitude: ArrayLike) -> NDArray[np.float64]:
-        """Covariance of the model's errors between points, shape (N, N), m².
+    def _block(
+        self,
+        which: str,
+        phi: NDArray[np.float64],
+        lam: NDArray[np.float64],
+        method: Interpolation,
+    ) -> tuple[NDArray[np.float64], NDArray[np.bool_]]:
+        """Sample the tiles in their order until every point has been inside one."""
+        values, inside = np.full(phi.size, np.nan), np.zeros(phi.size, dtype=bool)
+        for tile in self.tiles:
+            if getattr(tile, which) is None:
+                continue
+            open_points = np.flatnonzero(~inside)
+            if open_points.size == phi.size:
+                values, inside = tile.sample(which, phi, lam, method)
+            else:
+                found, within = tile.sample(which, phi[open_points], lam[open_points], method)
+                values[open_points] = found
+                inside[open_points] = within
+            if inside.all():
+                break
+        return values, inside
 
-        Raises
-        ------
-        ConventionError
-            If no uncertainty is stated.
-        """
-        phi, lam = (np.atleast_1d(np.asarray(x, dtype=np.float64)) for x in (latitude, longitude))
-        sizes = np.atleast_1d(np.asarray(self.u(phi, lam)))
-        errors = self.errors if self.errors is not None else ErrorModel(u=float(sizes.max()))
-        return np.outer(sizes, sizes) * errors.correlation(phi, lam)
+    def _refuse_missing(
+        self,
+        found: NDArray[np.float64],
+        inside: NDArray[np.bool_],
+        phi: NDArray[np.float64],
+        lam: NDArray[np.float64],
+    ) -> None:
+        missing = np.flatnonzero(np.isnan(found))
+        if not missing.size:
+            return
+        first = int(missing[0])
+        what = "has no data in the grid" if inside[first] else "lies outside the grid"
+        raise DataError(
+            f"a point {what} ({missing.size} of {found.size} points have no value)",
+            value=f"latitude {phi[first]:.6f}, longitude {lam[first]:.6f}",
+            where=self.name,
+            allowed=self.extent,
+            advice="Use another model, or ask for nan there (outside='nan', --outside nan)",
+        )
 
     def _stated_errors(self) -> ErrorModel:
         if self.errors is None:
             raise ConventionError(
-                "the model states no uncertainty",
+                "the model states no uncertainty (field u)",
                 where=self.name,
-                advice="State u in m (and the correlation length of its errors if it is known)",
+                advice="State u in m, and the correlation length of its errors if it is known",
             )
         return self.errors
 
-    def interpolation_error(self, latitude: ArrayLike, longitude: ArrayLike) -> NDArray[np.float64]:
-        """Estimate of the interpolation error at points, m: bilinear against bicubic."""
-        smooth = self.sample(latitude, longitude, interpolation="bicubic")
-        return np.abs(np.asarray(self.sample(latitude, longitude)) - np.asarray(smooth))
+    def _epoch_with_rate(self) -> float:
+        if self.epoch is None or all(tile.rate is None for tile in self.tiles):
+            raise ConventionError(
+                "the model holds for no other epoch (fields epoch and rate)",
+                where=self.name,
+                allowed="A model that states its epoch and a rate",
+                advice="Leave the epoch out",
+            )
+        return self.epoch

@@ -1,113 +1,167 @@
-"""Interpolation in a regular grid: bilinear, biquadratic and bicubic, one stencil routine for all.
+"""Interpolation in a regular lattice: bilinear, biquadratic and bicubic, one routine for all.
 
-Every method is a weighted sum over a square stencil; the methods differ only in the weights along
+Every method is a weighted sum over a square of nodes; the methods differ only in the weights along
 one axis. Nodes without data matter only where their weight is not zero.
 """
 
 from __future__ import annotations
 
 from collections.abc import Callable
-from typing import Literal
+from typing import Literal, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
 
-__all__ = ["METHODS", "Interpolation", "interpolate"]
+from clockgeo.errors import ConventionError
+
+__all__ = ["HALO", "METHODS", "Interpolation", "checked_interpolation", "interpolate"]
 
 Interpolation = Literal["bilinear", "biquadratic", "bicubic"]
-Weights = list[NDArray[np.float64]]
+Floats = NDArray[np.float64]
+
+HALO = 2
+"""Nodes that a lattice is padded with on every side, enough for the widest method."""
+
+_ON_NODE = 1e-9  # of a cell: a node with less weight than this does not count
 
 
-def _linear(place: NDArray[np.float64], count: int) -> tuple[NDArray[np.int64], Weights]:
-    first = np.clip(np.floor(place).astype(np.int64), 0, count - 2)
-    t = place - first
-    return first, [1.0 - t, t]
+class _Nodes(NamedTuple):
+    """Nodes along one axis: offset of the first from the cell's lower node, and their weights."""
+
+    first: int | NDArray[np.intp]
+    weights: tuple[Floats, ...]
 
 
-def _quadratic(place: NDArray[np.float64], count: int) -> tuple[NDArray[np.int64], Weights]:
-    """Lagrange through the three nearest nodes."""
-    first = np.clip(np.rint(place).astype(np.int64) - 1, 0, count - 3)
-    t = place - first - 1.0
-    return first, [t * (t - 1.0) / 2.0, 1.0 - t**2, t * (t + 1.0) / 2.0]
+def _linear(t: Floats) -> _Nodes:
+    return _Nodes(0, (1.0 - t, t))
 
 
-def _cubic(place: NDArray[np.float64], count: int) -> tuple[NDArray[np.int64], Weights]:
-    """Cubic convolution with a = -1/2 (Keys 1981, IEEE Trans. ASSP 29:1153, eq. 15).
-
-    In the outermost cells the missing node is extrapolated, f(-1) = 3 f(0) - 3 f(1) + f(2) (Keys
-    1981, eq. 19), which moves its weight onto the three nodes that exist.
-    """
-    cell = np.clip(np.floor(place).astype(np.int64), 0, count - 2)
-    t = place - cell
-    w = [
-        ((-0.5 * t + 1.0) * t - 0.5) * t,
-        (1.5 * t - 2.5) * t**2 + 1.0,
-        ((-1.5 * t + 2.0) * t + 0.5) * t,
-        (0.5 * t - 0.5) * t**2,
-    ]
-    low, high = cell == 0, cell == count - 2
-    first = np.clip(cell - 1, 0, count - 4)
-    from_low = [w[1] + 3 * w[0], w[2] - 3 * w[0], w[3] + w[0], np.zeros_like(t)]
-    from_high = [np.zeros_like(t), w[0] + w[3], w[1] - 3 * w[3], w[2] + 3 * w[3]]
-    weights = [
-        np.where(low, a, np.where(high, b, c))
-        for a, b, c in zip(from_low, from_high, w, strict=True)
-    ]
-    return first, weights
+def _quadratic(t: Floats) -> _Nodes:
+    """Parabola through the nearest node and its two neighbours."""
+    upper = (t >= 0.5).astype(np.intp)
+    s = t - upper
+    return _Nodes(upper - 1, (0.5 * s * (s - 1.0), 1.0 - s * s, 0.5 * s * (s + 1.0)))
 
 
-METHODS: dict[str, Callable[[NDArray[np.float64], int], tuple[NDArray[np.int64], Weights]]] = {
+def _cubic(t: Floats) -> _Nodes:
+    """Cubic with central-difference slopes at the nodes (Keys 1981, a = -1/2)."""
+    t2 = t * t
+    t3 = t2 * t
+    weights = (
+        0.5 * (-t3 + 2.0 * t2 - t),
+        0.5 * (3.0 * t3 - 5.0 * t2 + 2.0),
+        0.5 * (-3.0 * t3 + 4.0 * t2 + t),
+        0.5 * (t3 - t2),
+    )
+    return _Nodes(-1, weights)
+
+
+METHODS: dict[Interpolation, Callable[[Floats], _Nodes]] = {
     "bilinear": _linear,
     "biquadratic": _quadratic,
     "bicubic": _cubic,
 }
-_SIZES = {"bilinear": 2, "biquadratic": 3, "bicubic": 4}
+"""Method -> nodes and weights along one axis as a function of the fraction of a cell."""
+
+
+def checked_interpolation(stated: str) -> Interpolation:
+    """Return the method, or refuse an unknown one.
+
+    Raises
+    ------
+    ConventionError
+        If the method is none of `METHODS`.
+    """
+    for method in METHODS:
+        if stated == method:
+            return method
+    raise ConventionError(
+        "unknown interpolation", value=repr(stated), allowed=f"One of {', '.join(METHODS)}"
+    )
 
 
 def interpolate(
-    values: NDArray[np.floating],
-    row: NDArray[np.float64],
-    column: NDArray[np.float64],
+    padded: NDArray[np.floating],
+    row: NDArray[np.intp],
+    column: NDArray[np.intp],
+    row_fraction: Floats,
+    column_fraction: Floats,
+    *,
     method: Interpolation = "bilinear",
-) -> NDArray[np.float64]:
-    """Interpolate a grid at fractional row and column numbers.
+) -> Floats:
+    """Interpolate between the nodes of a padded lattice.
 
     Parameters
     ----------
-    values : float array, shape (R, C)
-        Node values; NaN for no data. R and C must be at least 2, 3 or 4 for the three methods.
-    row, column : float arrays, shape (N,)
-        Places within 0..R-1 and 0..C-1.
-    method : "bilinear", "biquadratic" or "bicubic"
+    padded : array, shape (rows + 2 HALO, columns + 2 HALO), C order
+        Values at the nodes, NaN where there is none.
+    row, column : int array, shape (N,)
+        Lower node of each point's cell, counted without the padding.
+    row_fraction, column_fraction : float array, shape (N,)
+        Place within the cell, 0 to 1.
+    method : {"bilinear", "biquadratic", "bicubic"}
 
     Returns
     -------
     float array, shape (N,)
-        NaN where a node with weight has no data. Linear fields are reproduced exactly by all
-        methods, quadratic ones by the last two.
+        NaN where a node that counts has no value.
+
+    Notes
+    -----
+    v = Σ_i Σ_j w_i w_j v_ij. Bilinear: the four nodes of the cell. Biquadratic: parabolas through
+    the 3 x 3 nodes about the nearest one. Bicubic: 4 x 4 nodes, cubic convolution with a = -1/2
+    (Keys 1981, IEEE Trans. Acoust. Speech Signal Process. 29:1153). All reproduce linear fields
+    exactly, the latter two quadratic ones.
     """
-    rows, columns = values.shape
-    first_row, row_weights = METHODS[method](row, rows)
-    first_column, column_weights = METHODS[method](column, columns)
-    flat = np.ascontiguousarray(values).ravel()
-    start = first_row * columns + first_column
-    total = np.zeros(row.shape)
-    for i, wi in enumerate(row_weights):
-        line = np.zeros(row.shape)
-        for j, wj in enumerate(column_weights):
-            line += _weighted(flat[start + (i * columns + j)], wj)
-        total += _weighted(line, wi)
+    weights = METHODS[method]
+    rows, columns = weights(row_fraction), weights(column_fraction)
+    stride = padded.shape[1]
+    first = (row + (HALO + rows.first)) * stride + (column + (HALO + columns.first))
+    flat = padded.reshape(-1)
+    result = _weighted(flat, first, stride, rows.weights, columns.weights)
+    gaps = np.flatnonzero(np.isnan(result))
+    if gaps.size:
+        result[gaps] = _without_idle_nodes(
+            flat,
+            first[gaps],
+            stride,
+            tuple(weight[gaps] for weight in rows.weights),
+            tuple(weight[gaps] for weight in columns.weights),
+        )
+    return result
+
+
+def _weighted(
+    flat: NDArray[np.floating],
+    first: NDArray[np.intp],
+    stride: int,
+    rows: tuple[Floats, ...],
+    columns: tuple[Floats, ...],
+) -> Floats:
+    total = np.zeros(first.shape)
+    for i, row_weight in enumerate(rows):
+        node = first + i * stride
+        line = columns[0] * flat.take(node)
+        for column_weight in columns[1:]:
+            node += 1
+            line += column_weight * flat.take(node)
+        line *= row_weight
+        total += line
     return total
 
 
-def _weighted(value: NDArray[np.floating], weight: NDArray[np.float64]) -> NDArray[np.float64]:
-    product = value * weight
-    missing = np.isnan(product)
-    if missing.any():
-        product[missing & (weight == 0.0)] = 0.0
-    return np.asarray(product)
-
-
-def smallest_side(method: Interpolation) -> int:
-    """Fewest nodes along an axis that the method needs."""
-    return _SIZES[method]
+def _without_idle_nodes(
+    flat: NDArray[np.floating],
+    first: NDArray[np.intp],
+    stride: int,
+    rows: tuple[Floats, ...],
+    columns: tuple[Floats, ...],
+) -> Floats:
+    """Sum again without the nodes of zero weight, so that a point on a node needs no neighbour."""
+    total = np.zeros(first.shape)
+    for i, row_weight in enumerate(rows):
+        for j, column_weight in enumerate(columns):
+            weight = row_weight * column_weight
+            value = flat.take(first + (i * stride + j))
+            total += np.where(np.abs(weight) < _ON_NODE, 0.0, weight * value)
+    return total
