@@ -51,7 +51,7 @@ UGravity = Annotated[float, typer.Option("--u-gravity", help="u of the gravity, 
 Rise = Annotated[float, typer.Option("--rise", help="Height of the atoms above the marker, m.")]
 URise = Annotated[float, typer.Option("--u-rise", help="u of that height, m.")]
 
-GLOBAL_GRID = "egm96-15min.nc"
+GLOBAL_GRID = "egm96_15.nc"
 _UNMEASURED_GRAVITY = 1e-3  # m s-2: real gravity about the normal one (100 mGal)
 
 

@@ -46,6 +46,7 @@ def open_geoid(
     u: float | None = None,
     correlation_length: float | None = None,
     fitted_to: str | None = None,
+    source: str | None = None,
     variable: str | None = None,
 ) -> GeoidModel:
     """Open a gridded geoid or quasigeoid model.
@@ -63,6 +64,8 @@ def open_geoid(
         Size in m and correlation length in m of the model's errors, instead of the file's.
     fitted_to : str, optional
         Levelling datum that a hybrid model was fitted to.
+    source : str, optional
+        Title or reference of the model, instead of the file's.
     variable : str, optional
         Which variable of a netCDF file, where there are several.
 
@@ -110,7 +113,7 @@ def open_geoid(
         epoch=_number(said, "epoch", name),
         hybrid=settled["fitted_to"] is not None or said.get("model_type") == "hybrid",
         fitted_to=settled["fitted_to"],
-        source=said.get("source", ""),
+        source=said.get("source", "") if source is None else source,
     )
 
 

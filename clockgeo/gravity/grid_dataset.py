@@ -71,7 +71,7 @@ def dataset_of_tile(
         "latitude": ("latitude", tile.latitudes, north),
         "longitude": ("longitude", tile.longitudes, east),
     }
-    head = {"Conventions": "CF-1.11"}
+    head = {"Conventions": "CF-1.12"}
     return xr.Dataset(variables, axes, {**head, "title": title} if title else head)
 
 
