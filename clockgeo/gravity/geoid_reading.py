@@ -147,11 +147,12 @@ def _reader(path: Path, variable: str | None) -> Callable[[Path], GridContent]:
     """Choose by the first bytes, and by the ending where they do not tell."""
     with path.open("rb") as stream:
         start = stream.read(512)
-    if start.startswith((b"\x89HDF\r\n\x1a\n", b"CDF\x01", b"CDF\x02", b"CDF\x05")):
+    if start.startswith((b"\x89HDF\r\n\x1a\n", b"CDF")):
         from clockgeo.gravity.grid_ggxf import is_ggxf, read_ggxf
         from clockgeo.gravity.grid_netcdf import read_netcdf
 
-        return read_ggxf if is_ggxf(path) else lambda p: read_netcdf(p, variable=variable)
+        ggxf = not start.startswith(b"CDF") and is_ggxf(path)
+        return read_ggxf if ggxf else lambda p: read_netcdf(p, variable=variable)
     if start.startswith((b"II*\x00", b"MM\x00*", b"II+\x00", b"MM\x00+")):
         from clockgeo.gravity.grid_geotiff import read_geotiff
 

@@ -1,8 +1,8 @@
 """Engines that let xarray open GTX, ISG and GGXF grids itself.
 
-They are registered as entry points: `xarray.open_dataset("model.gtx")` finds them by the ending,
-`engine="gtx"`, `"isg"` or `"ggxf"` by name. What a file states stands in the attributes of the main
-variable; nothing is added.
+They are registered as entry points: `xarray.open_dataset("model.gtx")` finds GTX and ISG by their
+endings; GGXF must be named, `engine="ggxf"`, because xarray takes it for plain netCDF. What a file
+states stands in the attributes of the main variable; nothing is added.
 """
 
 from __future__ import annotations

@@ -7,6 +7,7 @@ does.
 
 from __future__ import annotations
 
+import warnings
 from pathlib import Path
 from typing import Any
 
@@ -35,15 +36,18 @@ def read_geotiff(path: Path) -> GridContent:
         If the values have no metric unit.
     """
     rasterio = _rasterio(path.name)
+    tiles: list[GridTile] = []
+    tags: dict[str, str] = {}
     try:
-        with rasterio.open(path) as image:
-            names = list(image.subdatasets) or [path]
-        tiles: list[GridTile] = []
-        tags: dict[str, str] = {}
-        for number, name in enumerate(names):
-            with rasterio.open(name) as image:
-                tiles.append(_tile(image, f"{path.name}, image {number + 1}"))
-                tags = {**_stated(image, path.name), **tags}
+        with warnings.catch_warnings():
+            # An image without a geographic frame is an error here (see _tile), not a warning.
+            warnings.simplefilter("ignore", rasterio.errors.NotGeoreferencedWarning)
+            with rasterio.open(path) as image:
+                names = list(image.subdatasets) or [path]
+            for number, name in enumerate(names):
+                with rasterio.open(name) as image:
+                    tiles.append(_tile(image, f"{path.name}, image {number + 1}"))
+                    tags = {**_stated(image, path.name), **tags}
     except rasterio.errors.RasterioError as error:
         raise DataError(
             "the GeoTIFF cannot be read",

@@ -149,9 +149,10 @@ def _a_year(rate: _Parameter | None) -> _Parameter | None:
 def _grids(group: Any, variable: str, depth: int = 0) -> Iterator[tuple[Any, int]]:
     """Groups that hold the variable, each with its depth in the nest."""
     for child in group.groups.values():
-        if variable in child.variables:
+        is_grid = variable in child.variables
+        if is_grid:
             yield child, depth
-        yield from _grids(child, variable, depth + 1)
+        yield from _grids(child, variable, depth + is_grid)
 
 
 def _tile(

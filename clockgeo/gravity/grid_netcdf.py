@@ -57,17 +57,30 @@ def read_netcdf(path: Path, *, variable: str | None = None) -> GridContent:
         with warnings.catch_warnings():
             # A variable may name two markers of missing data; both are meant, and both are masked.
             warnings.filterwarnings("ignore", "variable .* has multiple fill values")
-            with xr.open_dataset(path, engine="netcdf4", decode_times=False) as dataset:
+            with xr.open_dataset(path, engine=_engine(path), decode_times=False) as dataset:
                 return content_of_dataset(dataset.load(), where=path.name, variable=variable)
     except ClockgeoError:
         raise
-    except (OSError, RuntimeError, ValueError) as error:
+    except (OSError, RuntimeError, ValueError, IndexError, TypeError, KeyError) as error:
         raise DataError(
             "the netCDF file cannot be read",
             value=error,
             where=path.name,
             advice="It may be cut short: fetch it again and compare its checksum",
         ) from error
+
+
+def _engine(path: Path) -> str:
+    """Engine for the variant of netCDF; the netCDF library itself fills cut classic files up."""
+    with path.open("rb") as stream:
+        start = stream.read(4)
+    if start == b"CDF\x05":
+        raise DataError(
+            "netCDF of the variant CDF-5 is not read, because a file cut short is not recognised",
+            where=path.name,
+            advice="Convert it to netCDF-4: nccopy -k nc4",
+        )
+    return "scipy" if start.startswith(b"CDF") else "netcdf4"
 
 
 def content_of_dataset(
