@@ -3,13 +3,38 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Protocol
 
 import numpy as np
-from numpy.typing import NDArray
+from numpy.typing import ArrayLike, NDArray
 
 from clockgeo.frequency import NoiseModel, TickSeries
 
-__all__ = ["Evidence", "GroupEvidence", "RecordEvidence"]
+__all__ = ["Curve", "Evidence", "GroupEvidence", "RecordEvidence"]
+
+
+class Curve(Protocol):
+    """A deviation against averaging time; arrays of one length."""
+
+    @property
+    def statistic(self) -> str:
+        """Name of the statistic, such as ``overlapping-allan``."""
+
+    @property
+    def tau(self) -> ArrayLike:
+        """Averaging times in s."""
+
+    @property
+    def deviation(self) -> ArrayLike:
+        """Deviations, dimensionless (time deviations in s)."""
+
+    @property
+    def lower(self) -> ArrayLike:
+        """Lower ends of the intervals."""
+
+    @property
+    def upper(self) -> ArrayLike:
+        """Upper ends of the intervals; infinite where there is none."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -50,6 +75,8 @@ class GroupEvidence:
         Sampling interval in s.
     model : NoiseModel
         The model that the uncertainty follows.
+    curves : tuple of Curve
+        Deviations of the series, to be held against the model.
     """
 
     name: str
@@ -57,6 +84,7 @@ class GroupEvidence:
     series: tuple[TickSeries, ...]
     interval: float
     model: NoiseModel
+    curves: tuple[Curve, ...] = ()
 
 
 @dataclass(frozen=True, eq=False)

@@ -1,1 +1,76 @@
-"""Results as pictures, tables and one page; computes nothing."""
+"""Results as pictures, tables and one page; computes nothing.
+
+Names are imported when first used, so that a command pays only for what it needs.
+"""
+
+from __future__ import annotations
+
+import importlib
+from typing import TYPE_CHECKING, Any
+
+if TYPE_CHECKING:
+    from clockgeo.report.embedding import save_picture
+    from clockgeo.report.level_page import level_page, write_level_page
+    from clockgeo.report.page import write_page
+    from clockgeo.report.pictures.budget import budget_picture
+    from clockgeo.report.pictures.comparison import (
+        comparison_picture,
+        correlation_picture,
+        residual_picture,
+    )
+    from clockgeo.report.pictures.places import Background, MapSite, site_map
+    from clockgeo.report.pictures.record import record_picture
+    from clockgeo.report.pictures.stability import stability_picture
+    from clockgeo.report.pictures.timeline import TimelineSession, timeline_picture
+
+PAGE = "report.html"
+"""File name of the page in a folder of results."""
+
+_HOMES = {
+    "Background": "pictures.places",
+    "MapSite": "pictures.places",
+    "TimelineSession": "pictures.timeline",
+    "budget_picture": "pictures.budget",
+    "comparison_picture": "pictures.comparison",
+    "correlation_picture": "pictures.comparison",
+    "level_page": "level_page",
+    "record_picture": "pictures.record",
+    "residual_picture": "pictures.comparison",
+    "save_picture": "embedding",
+    "site_map": "pictures.places",
+    "stability_picture": "pictures.stability",
+    "timeline_picture": "pictures.timeline",
+    "write_level_page": "level_page",
+    "write_page": "page",
+}
+"""Public name -> module of this package that holds it."""
+
+__all__ = [
+    "Background",
+    "MapSite",
+    "PAGE",
+    "TimelineSession",
+    "budget_picture",
+    "comparison_picture",
+    "correlation_picture",
+    "level_page",
+    "record_picture",
+    "residual_picture",
+    "save_picture",
+    "site_map",
+    "stability_picture",
+    "timeline_picture",
+    "write_level_page",
+    "write_page",
+]
+
+
+def __getattr__(name: str) -> Any:
+    if name not in _HOMES:
+        message = f"module {__name__!r} has no attribute {name!r}"
+        raise AttributeError(message)
+    return getattr(importlib.import_module(f"{__name__}.{_HOMES[name]}"), name)
+
+
+def __dir__() -> list[str]:
+    return sorted([*globals(), *_HOMES])

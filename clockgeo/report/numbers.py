@@ -12,6 +12,7 @@ zeros at its end.
 from __future__ import annotations
 
 from decimal import ROUND_HALF_EVEN, Context, Decimal
+from itertools import pairwise
 
 from clockgeo.errors import DataError
 
@@ -21,6 +22,7 @@ __all__ = [
     "duration",
     "in_units_of",
     "percentage",
+    "raised",
     "rounded",
     "typeset",
     "with_uncertainty",
@@ -118,12 +120,21 @@ def duration(seconds: float | None) -> str:
     if seconds is None:
         return ABSENT
     units = (("d", 86_400), ("h", 3_600), ("min", 60), ("s", 1))
-    for (large, size), (small, part) in zip(units, units[1:], strict=False):
+    for (large, size), (small, part) in pairwise(units):
         parts = round(seconds / part)
         if parts >= size // part:
             whole, rest = divmod(parts, size // part)
             return f"{whole}\u00a0{large}" + (f" {rest}\u00a0{small}" if rest else "")
     return _joined(_plain_or_power(_decimal(seconds), 3, keep_zeros=False), "s")
+
+
+def raised(exponent: int) -> str:
+    """Write 10 to a whole power.
+
+    >>> raised(-18)
+    '10⁻¹⁸'
+    """
+    return "10" + str(exponent).translate(_SUPERSCRIPTS)
 
 
 def typeset(text: str) -> str:
@@ -135,8 +146,7 @@ def typeset(text: str) -> str:
     mantissa, found, power = text.partition("e")
     if found:
         digits, _, unit = power.partition(" ")
-        raised = str(int(digits)).translate(_SUPERSCRIPTS)
-        mantissa += f"{GROUP}×{GROUP}10{raised}" + (f" {unit}" if unit else "")
+        mantissa += f"{GROUP}×{GROUP}{raised(int(digits))}" + (f" {unit}" if unit else "")
     return mantissa.replace("-", "−", 1) if mantissa.startswith("-") else mantissa
 
 

@@ -1,0 +1,181 @@
+"""One self-contained page: sections of words, pictures and tables, put into the template."""
+
+from __future__ import annotations
+
+import base64
+import hashlib
+from collections.abc import Sequence
+from dataclasses import dataclass
+from functools import cache
+from importlib.resources import files
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from clockgeo.files import write_text
+from clockgeo.report.embedding import inline_svg
+from clockgeo.report.sheets import Sheet
+from clockgeo.report.style import DARK, LIGHT
+
+if TYPE_CHECKING:
+    from jinja2 import Environment
+    from matplotlib.figure import Figure
+
+__all__ = ["Answer", "Page", "Picture", "Section", "render_page", "write_page"]
+
+
+@dataclass(frozen=True, eq=False)
+class Picture:
+    """A figure with what it shows in words.
+
+    Attributes
+    ----------
+    id : str
+        Letters, digits and hyphens; unique on the page, and its file name.
+    figure : Figure
+    caption : str
+        Under the picture.
+    alt : str
+        For those who cannot see it.
+    """
+
+    id: str
+    figure: Figure
+    caption: str
+    alt: str
+
+    @property
+    def svg(self) -> str:
+        """The figure as an element of the page."""
+        return inline_svg(self.figure, self.id, self.alt)
+
+
+@dataclass(frozen=True)
+class Section:
+    """A part of the page under one heading.
+
+    Attributes
+    ----------
+    id, title : str
+    paragraphs : tuple of str
+        Plain text.
+    parts : tuple of Picture or Sheet
+        In reading order.
+    notes : tuple of str
+        Listed at the end.
+    """
+
+    id: str
+    title: str
+    paragraphs: tuple[str, ...] = ()
+    parts: tuple[Picture | Sheet, ...] = ()
+    notes: tuple[str, ...] = ()
+
+
+@dataclass(frozen=True)
+class Answer:
+    """One thing that the reader came for.
+
+    Attributes
+    ----------
+    what : str
+        Such as "Kesselin Saddle above Harbel".
+    value : str
+        With its uncertainty and unit.
+    also : tuple of str
+        The same in other terms, and how to read it.
+    verdict : str
+        What speaks for or against it, in one sentence; empty where nothing does.
+    """
+
+    what: str
+    value: str
+    also: tuple[str, ...] = ()
+    verdict: str = ""
+
+
+@dataclass(frozen=True)
+class Page:
+    """Everything on a page.
+
+    Attributes
+    ----------
+    title : str
+    kind : str
+        What the page reports, such as "Clock levelling".
+    summary : str
+        One line under the title.
+    answers : tuple of Answer
+    sections : tuple of Section
+    caution : str
+    version : str
+        Of clockgeo.
+    """
+
+    title: str
+    kind: str
+    summary: str
+    answers: tuple[Answer, ...]
+    sections: tuple[Section, ...]
+    caution: str
+    version: str
+
+
+def render_page(page: Page) -> str:
+    """Return the page as HTML; all text of `page` is escaped."""
+    script = _package_text("page.js")
+    digest = base64.b64encode(hashlib.sha256(script.encode()).digest()).decode()
+    return (
+        _environment()
+        .get_template("page.html.j2")
+        .render(
+            page=page,
+            style=_package_text("page.css"),
+            script=script,
+            script_digest=digest,
+            light=LIGHT,
+            dark=DARK,
+        )
+    )
+
+
+def write_page(path: str | Path, page: Page, *, replace: bool = False) -> Path:
+    """Write the page as one self-contained HTML file.
+
+    Raises
+    ------
+    OutputError
+        If the file cannot be written, or exists and `replace` is false.
+    """
+    write_text(path, render_page(page), replace=replace)
+    return Path(path)
+
+
+def pictures_of(page: Page) -> Sequence[Picture]:
+    """All pictures on the page, in order."""
+    return [
+        part for section in page.sections for part in section.parts if isinstance(part, Picture)
+    ]
+
+
+def _is_picture(part: object) -> bool:
+    return isinstance(part, Picture)
+
+
+def _package_text(name: str) -> str:
+    return files("clockgeo.report").joinpath("templates", name).read_text(encoding="utf-8")
+
+
+@cache
+def _environment() -> Environment:
+    from jinja2 import Environment, PackageLoader, StrictUndefined
+
+    environment = Environment(
+        loader=PackageLoader("clockgeo.report", "templates"),
+        autoescape=True,
+        undefined=StrictUndefined,
+        trim_blocks=True,
+        lstrip_blocks=True,
+        keep_trailing_newline=True,
+    )
+    environment.tests["picture"] = _is_picture
+    return environment

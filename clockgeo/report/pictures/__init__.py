@@ -1,0 +1,1 @@
+"""Pictures: each a function from plain results to a matplotlib figure."""

@@ -1,0 +1,154 @@
+"""Timeline of a campaign: where each clock stood, and when it was compared."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from clockgeo.report.envelope import days_utc
+from clockgeo.report.style import HATCHES, LIGHT, SERIES, blank, label_axes, picture, time_axis
+
+if TYPE_CHECKING:
+    from matplotlib.axes import Axes
+    from matplotlib.figure import Figure
+
+__all__ = ["TimelineSession", "timeline_picture"]
+
+_LABELLED = 16
+"""Up to so many sessions carry their names."""
+
+
+@dataclass(frozen=True)
+class TimelineSession:
+    """One session on the timeline.
+
+    Attributes
+    ----------
+    name : str
+    start, stop : int
+        TAI nanoseconds.
+    clocks, sites : tuple of (str, str)
+        Numerator and denominator.
+    uptime : float
+        Share of valid time.
+    """
+
+    name: str
+    start: int
+    stop: int
+    clocks: tuple[str, str]
+    sites: tuple[str, str]
+    uptime: float
+
+
+@picture
+def timeline_picture(sessions: Sequence[TimelineSession], *, title: str = "") -> Figure:
+    """Draw one lane a clock: a thin line for each stay at a site, a block for each session.
+
+    The filled height of a block is the uptime. Sites differ by colour, hatch and label.
+
+    Parameters
+    ----------
+    sessions : sequence of TimelineSession
+    title : str
+    """
+    ordered = sorted(sessions, key=lambda one: one.start)
+    clocks = list(dict.fromkeys(clock for one in ordered for clock in one.clocks))
+    sites = sorted({site for one in ordered for site in one.sites})
+    figure, axes = blank(7.0, 1.15 + 0.55 * len(clocks))
+    for lane, clock in enumerate(clocks):
+        _draw_stays(axes, ordered, clock, lane, sites)
+        for one in ordered:
+            if clock in one.clocks:
+                _draw_session(axes, one, lane, sites.index(one.sites[one.clocks.index(clock)]))
+    if len(ordered) <= _LABELLED:
+        for one in ordered:
+            _name(axes, one)
+    axes.set_yticks(range(len(clocks)), clocks)
+    axes.set_ylim(len(clocks) - 0.45, -0.95 if len(ordered) <= _LABELLED else -0.6)
+    axes.grid(visible=True, axis="x")
+    axes.grid(visible=False, axis="y")
+    time_axis(axes)
+    label_axes(axes, "time (UTC)", "", title)
+    _explain(figure, sites)
+    return figure
+
+
+def _look(site: int) -> dict[str, str]:
+    return {
+        "facecolor": LIGHT[SERIES[site % len(SERIES)]],
+        "hatch": HATCHES[site % len(HATCHES)],
+        "edgecolor": LIGHT[SERIES[site % len(SERIES)]],
+    }
+
+
+def _draw_stays(
+    axes: Axes, ordered: Sequence[TimelineSession], clock: str, lane: int, sites: Sequence[str]
+) -> None:
+    """Lines from the first to the last session of each stay."""
+    visits = [
+        (one.start, one.stop, sites.index(one.sites[one.clocks.index(clock)]))
+        for one in ordered
+        if clock in one.clocks
+    ]
+    start, stop, site = visits[0]
+    for next_start, next_stop, next_site in [*visits[1:], (0, 0, -1)]:
+        if next_site == site:
+            stop = max(stop, next_stop)
+            continue
+        axes.plot(
+            days_utc(np.array([start, stop])),
+            [lane + 0.32, lane + 0.32],
+            color=LIGHT[SERIES[site % len(SERIES)]],
+            linewidth=1.6,
+            solid_capstyle="butt",
+        )
+        start, stop, site = next_start, next_stop, next_site
+
+
+def _draw_session(axes: Axes, one: TimelineSession, lane: int, site: int) -> None:
+    left, right = days_utc(np.array([one.start, one.stop])).tolist()
+    height = 0.5
+    look = _look(site)
+    axes.bar(
+        left,
+        height,
+        width=right - left,
+        bottom=lane - 0.25,
+        align="edge",
+        facecolor=LIGHT["wash"],
+        edgecolor=look["edgecolor"],
+        linewidth=0.7,
+    )
+    filled = height * one.uptime
+    axes.bar(
+        left,
+        filled,
+        width=right - left,
+        bottom=lane + 0.25 - filled,
+        align="edge",
+        facecolor=look["facecolor"],
+        hatch=look["hatch"],
+        linewidth=0.0,
+    )
+
+
+def _name(axes: Axes, one: TimelineSession) -> None:
+    middle = float(days_utc(np.array([one.start, one.stop])).mean())
+    axes.annotate(one.name, (middle, -0.32), ha="center", va="bottom", fontsize=7.0, rotation=0)
+
+
+def _explain(figure: Figure, sites: Sequence[str]) -> None:
+    from matplotlib.patches import Patch
+
+    handles = [
+        Patch(facecolor=_look(place)["facecolor"], hatch=_look(place)["hatch"], label=f"at {site}")
+        for place, site in enumerate(sites)
+    ]
+    handles.append(
+        Patch(facecolor=LIGHT["wash"], edgecolor=LIGHT["quiet"], label="no valid data in session")
+    )
+    figure.legend(handles=handles, loc="outside lower left", ncols=4)
