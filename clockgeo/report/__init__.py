@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
     from clockgeo.report.embedding import save_picture
-    from clockgeo.report.level_page import level_page, write_level_page
+    from clockgeo.report.levelling_page import level_page, write_level_page
     from clockgeo.report.page import write_page
     from clockgeo.report.pictures.budget import budget_picture
     from clockgeo.report.pictures.comparison import (
@@ -33,14 +33,14 @@ _HOMES = {
     "budget_picture": "pictures.budget",
     "comparison_picture": "pictures.comparison",
     "correlation_picture": "pictures.comparison",
-    "level_page": "level_page",
+    "level_page": "levelling_page",
     "record_picture": "pictures.record",
     "residual_picture": "pictures.comparison",
     "save_picture": "embedding",
     "site_map": "pictures.places",
     "stability_picture": "pictures.stability",
     "timeline_picture": "pictures.timeline",
-    "write_level_page": "level_page",
+    "write_level_page": "levelling_page",
     "write_page": "page",
 }
 """Public name -> module of this package that holds it."""

@@ -26,6 +26,7 @@ _COLOUR_NAMES = {colour: name for name, colour in LIGHT.items()}
 _COLOUR = re.compile("|".join(LIGHT.values()))
 _PAINT = re.compile(r'(?<=\s)(style|fill|stroke)="[^"]*"')
 _FONT = re.compile(r"font(-family)?: ?(?P<before>[^;'\"]*?)'DejaVu Sans'[^;\"]*")
+_TAG = re.compile(r"<[^>]+>")
 _PREAMBLE = re.compile(r"\A.*?(?=<svg)", re.DOTALL)
 _NOT_FOR_PAGES = re.compile(
     r"\s*(<metadata>.*?</metadata>|<defs>\s*<style type=\"text/css\">.*?</style>\s*</defs>)",
@@ -78,16 +79,21 @@ def inline_svg(figure: Figure, prefix: str, title: str) -> str:
     with drawing():
         figure.savefig(stream, format="svg", metadata=_NO_DATES[".svg"], transparent=True)
     text = _NOT_FOR_PAGES.sub("", _PREAMBLE.sub("", stream.getvalue()))
-    text = _PAINT.sub(lambda paint: _COLOUR.sub(_as_variable, paint.group()), text)
-    text = _LONG_DECIMALS.sub(r"\1", _FONT.sub(_without_family, text))
-    text = _IDENTIFIER.sub(f"{prefix}-", text)
+    text = _TAG.sub(lambda tag: _for_page(tag.group(), prefix), text)
     start, end = text.split(">", 1)
     start = re.sub(r' (width|height)="[^"]*pt"', "", start)
     label = f"{prefix}-title"
     return (
-        f'{start} role="img" aria-labelledby="{label}">\n'
+        f'{start} preserveAspectRatio="xMinYMin meet" role="img" aria-labelledby="{label}">\n'
         f'<title id="{label}">{escape(title)}</title>{end}'
     )
+
+
+def _for_page(tag: str, prefix: str) -> str:
+    """Change one tag; the text between tags, which may come from users, is never touched."""
+    tag = _PAINT.sub(lambda paint: _COLOUR.sub(_as_variable, paint.group()), tag)
+    tag = _LONG_DECIMALS.sub(r"\1", _FONT.sub(_without_family, tag))
+    return _IDENTIFIER.sub(f"{prefix}-", tag)
 
 
 def _as_variable(colour: re.Match[str]) -> str:

@@ -33,6 +33,7 @@ __all__ = [
     "logarithmic",
     "picture",
     "power_of_ten",
+    "shortened",
     "time_axis",
 ]
 
@@ -158,6 +159,15 @@ def label_axes(axes: Axes, across: str, up: str, title: str = "") -> None:
     axes.set_xlabel(across)
     axes.set_ylabel(up)
     axes.set_title(title)
+
+
+def shortened(name: str, limit: int = 24) -> str:
+    """Cut a long name for an axis; the tables have it whole.
+
+    >>> shortened("a very long name of a clock", 12)
+    'a very long…'
+    """
+    return name if len(name) <= limit else f"{name[: limit - 1]}…"
 
 
 def power_of_ten(values: ArrayLike) -> int:

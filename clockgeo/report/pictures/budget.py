@@ -6,7 +6,7 @@ from collections.abc import Sequence
 from typing import TYPE_CHECKING, Protocol
 
 from clockgeo.report.numbers import rounded, typeset
-from clockgeo.report.style import HATCHES, LIGHT, SERIES, blank, label_axes, picture
+from clockgeo.report.style import HATCHES, LIGHT, SERIES, blank, label_axes, picture, shortened
 
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
@@ -68,7 +68,7 @@ def budget_picture(lines: Sequence[BudgetLine], *, title: str = "") -> Figure:
             va="center",
             fontsize=7.5,
         )
-    names = ["whole standard uncertainty", *(_short(bar[0]) for bar in bars)]
+    names = ["whole standard uncertainty", *(shortened(bar[0], 46) for bar in bars)]
     axes.set_yticks(range(len(names)), names)
     axes.invert_yaxis()
     axes.set_xlim(0.0, 1.32 * whole[0] or 1.0)
@@ -83,10 +83,6 @@ def _whole(lines: Sequence[BudgetLine]) -> tuple[float, float]:
     """Root of the sum of squares, in mm and as fractional frequency."""
     height = sum(line.height_mm**2 for line in lines) ** 0.5
     return height, sum(line.y**2 for line in lines) ** 0.5
-
-
-def _short(name: str, limit: int = 46) -> str:
-    return name if len(name) <= limit else f"{name[: limit - 1]}…"
 
 
 def _explain(figure: Figure, kinds: set[str]) -> None:

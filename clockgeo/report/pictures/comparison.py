@@ -10,7 +10,15 @@ from numpy.typing import ArrayLike
 
 from clockgeo.campaign.results import Comparison, SessionResult
 from clockgeo.report.numbers import raised, typeset, with_uncertainty
-from clockgeo.report.style import LIGHT, MARKERS, blank, label_axes, picture, power_of_ten
+from clockgeo.report.style import (
+    LIGHT,
+    MARKERS,
+    blank,
+    label_axes,
+    picture,
+    power_of_ten,
+    shortened,
+)
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -46,7 +54,10 @@ def comparison_picture(lines: Sequence[Comparison], *, title: str = "") -> Figur
             fontsize=7.5,
         )
     axes.axvline(0.0, color=LIGHT["quiet"], linewidth=0.8)
-    axes.set_yticks(range(len(lines)), [f"{one.from_site} → {one.to_site}" for one in lines])
+    axes.set_yticks(
+        range(len(lines)),
+        [f"{shortened(one.from_site)} → {shortened(one.to_site)}" for one in lines],
+    )
     axes.set_ylim(len(lines) - 0.55, -0.6)
     axes.margins(x=0.12)
     axes.grid(visible=True, axis="x")
@@ -117,6 +128,7 @@ def residual_picture(sessions: Sequence[SessionResult], *, title: str = "") -> F
 
 def _name_places(axes: Axes, names: Sequence[str], most: int = 40) -> None:
     """Put names under places; beyond `most` only every so manieth."""
+    names = [shortened(name, 18) for name in names]
     step = max(1, -(-len(names) // most))
     rotation = 0 if len(names) <= 8 and max(map(len, names)) <= 12 else 90
     axes.set_xticks(range(0, len(names), step), names[::step], rotation=rotation)
@@ -152,8 +164,8 @@ def correlation_picture(names: Sequence[str], covariance: ArrayLike, *, title: s
     axes.set_xlim(-0.6, size - 0.4)
     axes.set_ylim(size - 0.4, -0.6)
     axes.set_aspect("equal")
-    axes.set_yticks(range(size), names)
-    axes.set_xticks(range(size), names, rotation=90)
+    axes.set_yticks(range(size), [shortened(name) for name in names])
+    axes.set_xticks(range(size), [shortened(name) for name in names], rotation=90)
     axes.grid(visible=False)
     axes.set_title(title)
     return figure

@@ -222,7 +222,7 @@ def _degrees(axes: Axes) -> None:
         return f"{abs(wrapped):.6g}° {'E' if wrapped >= 0.0 else 'W'}"
 
     def north(value: float, _: int) -> str:
-        return f"{abs(value):.6g}° {'N' if value >= 0.0 else 'S'}"
+        return f"{abs(value):.6g}° {'N' if value >= 0.0 else 'S'}" if abs(value) <= 90.0 else ""
 
     axes.xaxis.set_major_formatter(FuncFormatter(east))
     axes.yaxis.set_major_formatter(FuncFormatter(north))

@@ -9,7 +9,16 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from clockgeo.report.envelope import days_utc
-from clockgeo.report.style import HATCHES, LIGHT, SERIES, blank, label_axes, picture, time_axis
+from clockgeo.report.style import (
+    HATCHES,
+    LIGHT,
+    SERIES,
+    blank,
+    label_axes,
+    picture,
+    shortened,
+    time_axis,
+)
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -67,7 +76,7 @@ def timeline_picture(sessions: Sequence[TimelineSession], *, title: str = "") ->
     if len(ordered) <= _LABELLED:
         for one in ordered:
             _name(axes, one)
-    axes.set_yticks(range(len(clocks)), clocks)
+    axes.set_yticks(range(len(clocks)), [shortened(clock) for clock in clocks])
     axes.set_ylim(len(clocks) - 0.45, -0.95 if len(ordered) <= _LABELLED else -0.6)
     axes.grid(visible=True, axis="x")
     axes.grid(visible=False, axis="y")
@@ -138,14 +147,20 @@ def _draw_session(axes: Axes, one: TimelineSession, lane: int, site: int) -> Non
 
 def _name(axes: Axes, one: TimelineSession) -> None:
     middle = float(days_utc(np.array([one.start, one.stop])).mean())
-    axes.annotate(one.name, (middle, -0.32), ha="center", va="bottom", fontsize=7.0, rotation=0)
+    axes.annotate(
+        shortened(one.name, 16), (middle, -0.32), ha="center", va="bottom", fontsize=7.0, rotation=0
+    )
 
 
 def _explain(figure: Figure, sites: Sequence[str]) -> None:
     from matplotlib.patches import Patch
 
     handles = [
-        Patch(facecolor=_look(place)["facecolor"], hatch=_look(place)["hatch"], label=f"at {site}")
+        Patch(
+            facecolor=_look(place)["facecolor"],
+            hatch=_look(place)["hatch"],
+            label=f"at {shortened(site)}",
+        )
         for place, site in enumerate(sites)
     ]
     handles.append(

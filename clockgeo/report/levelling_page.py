@@ -7,8 +7,8 @@ from pathlib import Path
 
 from clockgeo.campaign.evidence import Evidence
 from clockgeo.campaign.results import Comparison, DifferenceResult, LevelResult, SiteResult
-from clockgeo.report import level_sheets as sheets
-from clockgeo.report.level_pictures import (
+from clockgeo.report import levelling_sheets as sheets
+from clockgeo.report.levelling_pictures import (
     budget_pictures,
     campaign_map,
     campaign_timeline,
