@@ -12,6 +12,13 @@ if TYPE_CHECKING:
     from clockgeo.report.embedding import save_picture
     from clockgeo.report.levelling_page import level_page, write_level_page
     from clockgeo.report.page import write_page
+    from clockgeo.report.pictures.adjustment import (
+        DatumOffset,
+        PlanePoint,
+        datum_picture,
+        observation_picture,
+        plane_picture,
+    )
     from clockgeo.report.pictures.budget import budget_picture
     from clockgeo.report.pictures.comparison import (
         comparison_picture,
@@ -19,8 +26,10 @@ if TYPE_CHECKING:
         residual_picture,
     )
     from clockgeo.report.pictures.places import Background, MapSite, site_map
+    from clockgeo.report.pictures.planning import alternatives_picture, reach_picture
     from clockgeo.report.pictures.record import record_picture
     from clockgeo.report.pictures.stability import stability_picture
+    from clockgeo.report.pictures.tide import tide_picture
     from clockgeo.report.pictures.timeline import TimelineSession, timeline_picture
 
 PAGE = "report.html"
@@ -28,17 +37,25 @@ PAGE = "report.html"
 
 _HOMES = {
     "Background": "pictures.places",
+    "DatumOffset": "pictures.adjustment",
     "MapSite": "pictures.places",
+    "PlanePoint": "pictures.adjustment",
     "TimelineSession": "pictures.timeline",
+    "alternatives_picture": "pictures.planning",
     "budget_picture": "pictures.budget",
     "comparison_picture": "pictures.comparison",
     "correlation_picture": "pictures.comparison",
+    "datum_picture": "pictures.adjustment",
     "level_page": "levelling_page",
+    "observation_picture": "pictures.adjustment",
+    "plane_picture": "pictures.adjustment",
+    "reach_picture": "pictures.planning",
     "record_picture": "pictures.record",
     "residual_picture": "pictures.comparison",
     "save_picture": "embedding",
     "site_map": "pictures.places",
     "stability_picture": "pictures.stability",
+    "tide_picture": "pictures.tide",
     "timeline_picture": "pictures.timeline",
     "write_level_page": "levelling_page",
     "write_page": "page",
@@ -47,18 +64,26 @@ _HOMES = {
 
 __all__ = [
     "Background",
+    "DatumOffset",
     "MapSite",
     "PAGE",
+    "PlanePoint",
     "TimelineSession",
+    "alternatives_picture",
     "budget_picture",
     "comparison_picture",
     "correlation_picture",
+    "datum_picture",
     "level_page",
+    "observation_picture",
+    "plane_picture",
+    "reach_picture",
     "record_picture",
     "residual_picture",
     "save_picture",
     "site_map",
     "stability_picture",
+    "tide_picture",
     "timeline_picture",
     "write_level_page",
     "write_page",

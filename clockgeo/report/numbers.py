@@ -138,15 +138,18 @@ def raised(exponent: int) -> str:
 
 
 def typeset(text: str) -> str:
-    """Turn a number written above into print: a true minus and "× 10⁻¹³" for "e-13".
+    """Turn a number written above into print.
+
+    A true minus, "× 10⁻¹³" for "e-13", and no break between the number and its unit.
 
     >>> typeset("-1.5159(3)e-13")
     '−1.5159(3)\u202f×\u202f10⁻¹³'
     """
+    text = text.replace(" ", "\u00a0")
     mantissa, found, power = text.partition("e")
     if found:
-        digits, _, unit = power.partition(" ")
-        mantissa += f"{GROUP}×{GROUP}{raised(int(digits))}" + (f" {unit}" if unit else "")
+        digits, _, unit = power.partition("\u00a0")
+        mantissa += f"{GROUP}×{GROUP}{raised(int(digits))}" + (f"\u00a0{unit}" if unit else "")
     return mantissa.replace("-", "−", 1) if mantissa.startswith("-") else mantissa
 
 

@@ -161,13 +161,17 @@ def label_axes(axes: Axes, across: str, up: str, title: str = "") -> None:
     axes.set_title(title)
 
 
-def shortened(name: str, limit: int = 24) -> str:
-    """Cut a long name for an axis; the tables have it whole.
+def shortened(name: str, limit: int = 24, *, tail: int = 0) -> str:
+    """Cut a long name for an axis, all but its last `tail` letters; the tables have it whole.
 
     >>> shortened("a very long name of a clock", 12)
     'a very long…'
+    >>> shortened("density, first stay", 12, tail=4)
+    'density…stay'
     """
-    return name if len(name) <= limit else f"{name[: limit - 1]}…"
+    if len(name) <= limit:
+        return name
+    return f"{name[: limit - tail - 1]}…{name[len(name) - tail :]}"
 
 
 def power_of_ten(values: ArrayLike) -> int:
@@ -179,7 +183,7 @@ def power_of_ten(values: ArrayLike) -> int:
 
 
 def logarithmic(axes: Axes, which: str) -> None:
-    """Make the x or y axis logarithmic with decades written 10⁻¹⁸."""
+    """Make the x or y axis logarithmic with ticks written 10⁻¹⁸, or plain."""
     from matplotlib.ticker import FuncFormatter, LogLocator, NullFormatter
 
     axis = axes.xaxis if which == "x" else axes.yaxis
@@ -192,6 +196,9 @@ def logarithmic(axes: Axes, which: str) -> None:
 
 
 def _decade(value: float, _: int) -> str:
+    """Plain from 0.01 to 1000, else with powers of ten."""
+    if 0.009 < value < 1100.0:
+        return f"{value:g}"
     exponent = int(np.floor(np.log10(value) + 1e-9))
     factor = value / 10.0**exponent
     return raised(exponent) if abs(factor - 1.0) < 1e-6 else f"{factor:.0f}·{raised(exponent)}"

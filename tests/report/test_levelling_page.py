@@ -62,7 +62,7 @@ def structure(page):
 def test_the_answer_comes_first(page):
     order = [page.index(f'id="{one}"') for one in ("answer-heading", "places", "records", "inputs")]
     assert order == sorted(order)
-    flat = page.replace("\u202f", " ")
+    flat = page.replace("\u202f", " ").replace("\u00a0", " ")
     answer = flat[: flat.index('id="places"')]
     # u of the invented result: root of the sum of squares of its parts, 0.5099 m² s⁻²
     assert "ΔC = 13 630.72(51) m² s⁻²" in answer

@@ -135,7 +135,7 @@ def test_shares(share, written):
 
 
 def test_print_form():
-    assert typeset(f"-1.5(3)e-13 m{GROUP}s⁻²") == f"−1.5(3){GROUP}×{GROUP}10⁻¹³ m{GROUP}s⁻²"
+    assert typeset("-1.5(3)e-13 m s⁻²") == f"−1.5(3){GROUP}×{GROUP}10⁻¹³\u00a0m\u00a0s⁻²"
     assert typeset("3.2(1.1)") == "3.2(1.1)"
 
 

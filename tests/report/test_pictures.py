@@ -11,15 +11,23 @@ import pytest
 from clockgeo.frequency import NoiseModel
 from clockgeo.report import (
     Background,
+    DatumOffset,
     MapSite,
+    PlanePoint,
     TimelineSession,
+    alternatives_picture,
     budget_picture,
     comparison_picture,
     correlation_picture,
+    datum_picture,
+    observation_picture,
+    plane_picture,
+    reach_picture,
     record_picture,
     residual_picture,
     site_map,
     stability_picture,
+    tide_picture,
     timeline_picture,
 )
 from clockgeo.report.pictures.stability import in_words
@@ -41,6 +49,7 @@ def texts(figure) -> list[str]:
 
 def outside(figure) -> list[str]:
     """Texts that reach beyond the paper."""
+    from matplotlib.axis import Axis
     from matplotlib.backends.backend_agg import FigureCanvasAgg
     from matplotlib.text import Text
 
@@ -50,7 +59,8 @@ def outside(figure) -> list[str]:
         renderer = canvas.get_renderer()
         wide, high = figure.get_size_inches() * figure.dpi
         found = []
-        unseen = {t for axes in figure.axes for axis in (axes.xaxis, axes.yaxis) for t in cut(axis)}
+        unseen = {text for axis in figure.findobj(Axis) for text in cut(axis)}
+        unseen |= {text for text in figure.findobj(Text) if text.get_clip_on()}
         for text in figure.findobj(Text):
             if text.get_visible() and text.get_text().strip() and text not in unseen:
                 box = text.get_window_extent(renderer)
@@ -112,6 +122,51 @@ def drawn(result):
         "comparison": comparison_picture(result.comparison),
         "residuals": residual_picture(result.sessions),
         "correlations": correlation_picture(["harbel", "kesselin", "third"], size),
+        **drawn_of_networks(),
+        **drawn_of_plans(),
+    }
+
+
+def drawn_of_networks():
+    rng = np.random.default_rng(2)
+    observations = [
+        SimpleNamespace(
+            id=f"line {n}",
+            kind="levelling" if n % 3 else "gnss",
+            standardised=float(value),
+            redundancy=float(n / 60.0),
+        )
+        for n, value in enumerate(rng.standard_normal(60))
+    ]
+    observations[17].standardised = 5.2
+    observations[0].standardised = None
+    latitude, longitude = np.linspace(44.0, 48.0, 20), np.linspace(7.0, 13.0, 25)
+    plane = Background(latitude, longitude, np.add.outer(latitude, longitude), "plane / m")
+    points = [
+        PlanePoint(f"p{n}", 45.0 + n / 9, 8.0 + n % 4, 0.01 * (n - 4), 3e-3) for n in range(9)
+    ]
+    datums = [DatumOffset("north", 0.42, 0.02), DatumOffset("island", None, None)]
+    return {
+        "observations": observation_picture(observations, limit=3.29),
+        "datums": datum_picture(datums),
+        "plane": plane_picture(points, plane),
+    }
+
+
+def drawn_of_plans():
+    days, distance = np.geomspace(0.1, 60.0, 80), np.geomspace(1.0, 2000.0, 60)
+    parts = {"statistics": 40.0 / np.sqrt(days), "floor": np.full(80, 14.0), "tiny": days * 1e-3}
+    whole = np.sqrt(parts["statistics"] ** 2 + parts["floor"] ** 2)
+    tai = tai_from_iso("2027-03-01") + np.arange(400, dtype=np.int64) * 3600 * 10**9
+    wave = 1.5 * np.cos(np.arange(400) / 2.0)
+    return {
+        "reach": reach_picture(days, whole, parts, target_mm=30.0, planned_days=4.0),
+        "alternatives": alternatives_picture(
+            distance,
+            {"spirit levelling": np.sqrt(distance), "GNSS and geoid": np.full(60, 20.0)},
+            pairs={"harbel to kesselin": (76.0, 24.0)},
+        ),
+        "tide": tide_picture(tai, wave, u=0.06, per_potential=-1.112650056e-17),
     }
 
 
@@ -123,6 +178,12 @@ UNITS = {
     "timeline": ["time (UTC)"],
     "comparison": ["difference from the geodetic value / m² s⁻²"],
     "residuals": ["observed − adjusted y / 10⁻¹⁸"],
+    "observations": ["redundancy number / 1", "standardised residual / 1", "line 17"],
+    "datums": ["offset of the datum / m", "not determined by the data"],
+    "plane": ["plane / m", "50 km", "20 mm"],
+    "reach": ["time of measurement / d", "standard uncertainty of height / mm", "target"],
+    "alternatives": ["distance / km", "standard uncertainty of height difference / mm"],
+    "tide": ["tidal potential / m² s⁻²", "fractional frequency / 10⁻¹⁸", "± u"],
     "correlations": ["+0.42", "−0.24", "+0.12"],  # 0.6/√2, −0.3/√1.5, 0.2/√3
 }
 
@@ -144,6 +205,15 @@ def test_no_window_is_opened(drawn):
     assert (
         "matplotlib.pyplot" not in sys.modules or not sys.modules["matplotlib.pyplot"].get_fignums()
     )
+
+
+def test_parts_of_a_plan_that_limit_nothing_are_left_out(drawn):
+    assert "floor" in texts(drawn["reach"])
+    assert "tiny" not in texts(drawn["reach"])
+
+
+def test_observations_that_nothing_controls_are_told_apart(drawn):
+    assert "gnss, uncontrolled (1)" in texts(drawn["observations"])
 
 
 def test_flagged_epochs_are_counted_and_drawn_even_beyond_the_picture(drawn):

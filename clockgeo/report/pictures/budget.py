@@ -68,7 +68,7 @@ def budget_picture(lines: Sequence[BudgetLine], *, title: str = "") -> Figure:
             va="center",
             fontsize=7.5,
         )
-    names = ["whole standard uncertainty", *(shortened(bar[0], 46) for bar in bars)]
+    names = ["whole standard uncertainty", *(shortened(bar[0], 46, tail=20) for bar in bars)]
     axes.set_yticks(range(len(names)), names)
     axes.invert_yaxis()
     axes.set_xlim(0.0, 1.32 * whole[0] or 1.0)

@@ -16,7 +16,7 @@ if TYPE_CHECKING:
     from matplotlib.axes import Axes
     from matplotlib.figure import Figure
 
-__all__ = ["Background", "MapSite", "site_map"]
+__all__ = ["Background", "MapSite", "draw_map", "site_map"]
 
 _KM_PER_DEGREE = 111.2
 _SMALLEST_SPAN = 0.02
@@ -85,27 +85,45 @@ def site_map(
         Drawn as contour lines with labels.
     title : str
     """
-    latitude = np.array([site.latitude for site in sites])
-    middle = _middle_longitude([site.longitude for site in sites])
-    longitude = middle + (np.array([site.longitude for site in sites]) - middle + 180.0) % 360.0
-    longitude -= 180.0
     figure, axes = blank(7.0, 4.0)
-    stretch = float(np.cos(np.radians(np.clip(latitude.mean(), -85.0, 85.0))))
-    _frame(axes, longitude, latitude, stretch)
-    if background is not None:
-        _contours(axes, background)
+    latitude = np.array([site.latitude for site in sites])
+    longitude = draw_map(axes, latitude, np.array([site.longitude for site in sites]), background)
     at = {s.name: (x, y) for s, x, y in zip(sites, longitude, latitude, strict=True)}
     _connections(axes, at, connections)
     here = Counter(first for first, second in connections if first == second)
     for site in sites:
         _site(axes, site, at[site.name], here[site.name])
-    _scale_bar(axes, stretch)
-    _degrees(axes)
+    if background is not None:
+        figure.legend(loc="outside lower left")
     axes.set_title(title)
     return figure
 
 
-def _middle_longitude(longitudes: Sequence[float]) -> float:
+def draw_map(
+    axes: Axes,
+    latitude: NDArray[np.float64],
+    longitude: NDArray[np.float64],
+    background: Background | None = None,
+) -> NDArray[np.float64]:
+    """Draw graticule, scale bar and background of a map that holds the given points.
+
+    Returns
+    -------
+    float array, shape (N,)
+        Longitudes as they are drawn, without a jump at the antimeridian.
+    """
+    middle = _middle_longitude(longitude)
+    drawn = middle + (longitude - middle + 180.0) % 360.0 - 180.0
+    stretch = float(np.cos(np.radians(np.clip(latitude.mean(), -85.0, 85.0))))
+    _frame(axes, drawn, latitude, stretch)
+    if background is not None:
+        _contours(axes, background)
+    _scale_bar(axes, stretch)
+    _degrees(axes)
+    return np.asarray(drawn)
+
+
+def _middle_longitude(longitudes: NDArray[np.float64]) -> float:
     """Mean direction, so that sites on both sides of the antimeridian stay together."""
     angles = np.radians(longitudes)
     return float(np.degrees(np.arctan2(np.sin(angles).mean(), np.cos(angles).mean())))
@@ -135,11 +153,11 @@ def _contours(axes: Axes, background: Background) -> None:
         background.values,
         levels=8,
         colors=LIGHT["lichen"],
+        linestyles="solid",
         linewidths=0.7,
     )
-    axes.clabel(lines, fontsize=7.0, fmt="%g")
+    axes.clabel(lines, fontsize=7.0, fmt=lambda value: f"{value:g}".replace("-", "−"))
     axes.plot([], [], color=LIGHT["lichen"], linewidth=0.7, label=background.label)
-    axes.legend(loc="lower right")
 
 
 def _connections(
