@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Annotated, Any
 
 import typer
 
-from clockgeo.cli.options import Force, Json, OutFile, Quiet
+from clockgeo.cli.options import Force, Json, OutFile, PictureFile, Quiet
 
 if TYPE_CHECKING:
     import numpy as np
@@ -83,6 +83,7 @@ def command(
     longitude: Longitude = None,
     points: Points = None,
     out: OutFile = None,
+    picture: PictureFile = None,
     describe: Describe = False,
     convert: Convert = None,
     resolution: Resolution = None,
@@ -105,7 +106,7 @@ def command(
     """Sample, describe or convert a gridded geoid model.
 
     Reads CF netCDF, OGC GGXF, GeoTIFF geodetic grids, GTX and ISG 2.0. What a file does not say of
-    its conventions must be stated; it is never guessed.
+    its conventions must be stated; it is never guessed. --picture draws a map around the points.
 
     Example: clockgeo geoid egm96_15.nc --latitude 47.2 --longitude 11.1
     """
@@ -113,6 +114,12 @@ def command(
     from clockgeo.gravity import open_geoid, write_geoid
 
     _check_usage(latitude, longitude, points, describe or convert is not None, outside)
+    if picture is not None:
+        from clockgeo.report import checked_picture
+
+        if latitude is None and points is None:
+            raise typer.BadParameter("--picture draws a map around points: give some")
+        checked_picture(picture, replace=force)
     path = _path(grid)
     if describe:
         _describe(path, variable, json=json, quiet=quiet)
@@ -140,6 +147,11 @@ def command(
         samples = _sampled(model, [latitude], [longitude], outside, epoch)
     if out is not None and samples is not None:
         _write_table(out, samples, model, force=force)
+    if picture is not None and samples is not None:
+        from clockgeo.cli.picturing import draw_geoid
+
+        at = samples.latitude, samples.longitude
+        draw_geoid(model, *at, samples.values, samples.u, picture, replace=force)
     if json:
         print_json({"schema": "clockgeo/geoid/1", **_result(model, samples, convert)})
     elif samples is not None and not quiet:

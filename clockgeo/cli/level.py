@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from clockgeo.cli.options import Force, Json, OutFolder, Quiet, Verbose
+from clockgeo.cli.options import FigureKind, Figures, Force, Json, OutFolder, Quiet, Verbose
 
 if TYPE_CHECKING:
     from clockgeo.campaign.results import LevelResult
@@ -26,6 +26,8 @@ def command(
     out: OutFolder,
     without: Without = None,
     skip_bad_rows: Skip = False,
+    figures: Figures = None,
+    figure_kind: FigureKind = "png",
     force: Force = False,
     json: Json = False,
     quiet: Quiet = False,
@@ -33,27 +35,33 @@ def command(
 ) -> None:
     """Turn a campaign's records into potential differences and heights.
 
-    Writes result.json, result.nc and report.html into the folder given with --out.
+    Writes result.json, result.nc and report.html into the folder given with --out, and the page's
+    pictures as files into the folder given with --figures.
 
     Example: clockgeo level examples/saddle/campaign.toml --out results/saddle
     """
     from clockgeo.campaign import level, prepare_folder, read_document, write_result
     from clockgeo.cli.terminal import print_json, progress_shown, say
-    from clockgeo.report import PAGE, write_level_page
+    from clockgeo.report import PAGE, level_page, prepare_figures, write_figures, write_page
 
     document = read_document(campaign)
     names = ("result.json", "result.nc", PAGE)
     folder = prepare_folder(out, names, replace=force)
+    suffix = f".{figure_kind}"
+    if figures is not None:
+        prepare_figures(figures, suffix=suffix, replace=force)
     with progress_shown(quiet=quiet or json):
         levelled = level(document, without=without or (), skip_bad_rows=skip_bad_rows)
         written = write_result(levelled.result, folder, replace=force)
-        page = folder / PAGE
-        write_level_page(page, levelled.result, levelled.evidence, replace=force)
+        page = level_page(levelled.result, levelled.evidence)
+        written.append(write_page(folder / PAGE, page, replace=force))
+        if figures is not None:
+            written += write_figures(page, figures, suffix=suffix, replace=force)
     if json:
         print_json(levelled.result)
     elif not quiet:
         _tell(levelled.result, verbose=verbose)
-        for path in [*written, page]:
+        for path in written:
             say(f"written: {path}")
 
 

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from clockgeo.cli.options import Force, Json, Quiet
+from clockgeo.cli.options import Force, Json, PictureFile, Quiet
 from clockgeo.cli.recording import RecordReading, with_record_options
 
 if TYPE_CHECKING:
@@ -47,6 +47,7 @@ def command(
     window: Window = None,
     rules: Rules = None,
     out: Out = None,
+    picture: PictureFile = None,
     force: Force = False,
     json: Json = False,
     quiet: Quiet = False,
@@ -55,10 +56,11 @@ def command(
 
     Nothing is deleted: the mean is shown with and without. Cycle slips are named where --carrier
     says whose cycles are counted. Interpolated rows, servo oscillations and steps across gaps are
-    pointed out.
+    pointed out. --picture draws the record with its flags (several records: name-1, name-2 ...).
 
     Example: clockgeo screen examples/saddle/records/local-1.txt.gz
     """
+    from clockgeo.cli.picturing import draw_screenings, numbered_pictures
     from clockgeo.cli.terminal import print_json, progress_shown
     from clockgeo.frequency import ScreeningRules, diagnose, screen
     from clockgeo.frequency.screening_files import (
@@ -67,6 +69,7 @@ def command(
         write_screening,
     )
 
+    pictures = numbered_pictures(picture, len(reading.files), replace=force)
     base = ScreeningRules() if rules is None else read_screening_rules(rules)
     stated = {"gross_bound": gross_bound, "outlier_threshold": threshold, "window": window}
     used = base.model_copy(
@@ -76,6 +79,7 @@ def command(
     with progress_shown(quiet=quiet or json):
         screenings = [screen(record, used, carrier_hz=carrier) for record in reading.records()]
         findings = [diagnose(each.record, valid=each.valid) for each in screenings]
+    draw_screenings(screenings, pictures, replace=force)
     if out is not None:
         write_screening(out, screenings, findings, replace=force)
     if json:

@@ -14,6 +14,7 @@ from clockgeo.cli.options import (
     Latitude,
     Longitude,
     OutFile,
+    PictureFile,
     Quiet,
 )
 
@@ -58,6 +59,7 @@ def command(
     load: Load = None,
     to_load: ToLoad = None,
     out: OutFile = None,
+    picture: PictureFile = None,
     force: Force = False,
     json: Json = False,
     quiet: Quiet = False,
@@ -66,7 +68,8 @@ def command(
 
     Gives the time-variable part that a clock on the solid Earth feels (Moon and Sun, Love numbers
     by degree); the permanent tide is stated beside it, not included. With a second place the
-    difference is the second minus the first. --out writes CSV or netCDF, by the suffix.
+    difference is the second minus the first. --out writes CSV or netCDF, by the suffix; --picture
+    draws the series.
 
     Example: clockgeo tide --latitude 52.3 --longitude 10.5 --start 2027-03-01 --stop 2027-03-02
     """
@@ -89,6 +92,10 @@ def command(
         raise typer.BadParameter("--to-load needs a second place")
     if out is not None:
         series_suffix(out)
+    if picture is not None:
+        from clockgeo.report import checked_picture
+
+        checked_picture(picture, replace=force)
     first, last = tai_from_iso(start), tai_from_iso(stop)
     wobble = None if pole is None else read_pole_coordinates(pole)
 
@@ -108,12 +115,17 @@ def command(
     y = shift_from_potential(-series.potential)
     if out is not None:
         write_tide_series(series, out, fractional_frequency=y, replace=force)
+    if picture is not None:
+        from clockgeo.cli.picturing import draw_tide
+
+        draw_tide(series, float(shift_from_potential(-1.0)), picture, replace=force)
     if json:
         print_json(_result(series, y))
     elif not quiet:
         _tell(series, y)
-        if out is not None:
-            say(f"written: {out}")
+        for path in (out, picture):
+            if path is not None:
+                say(f"written: {path}")
 
 
 def _result(series: TideSeries, y: NDArray[np.float64]) -> dict[str, object]:

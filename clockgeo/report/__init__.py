@@ -9,9 +9,9 @@ import importlib
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
-    from clockgeo.report.embedding import save_picture
+    from clockgeo.report.embedding import checked_picture, save_picture
     from clockgeo.report.levelling_page import level_page, write_level_page
-    from clockgeo.report.page import write_page
+    from clockgeo.report.page import prepare_figures, write_figures, write_page
     from clockgeo.report.pictures.adjustment import (
         DatumOffset,
         PlanePoint,
@@ -25,7 +25,7 @@ if TYPE_CHECKING:
         correlation_picture,
         residual_picture,
     )
-    from clockgeo.report.pictures.places import Background, MapSite, site_map
+    from clockgeo.report.pictures.places import Background, MapSite, map_extent, site_map
     from clockgeo.report.pictures.planning import alternatives_picture, reach_picture
     from clockgeo.report.pictures.record import record_picture
     from clockgeo.report.pictures.stability import stability_picture
@@ -44,11 +44,14 @@ _HOMES = {
     "alternatives_picture": "pictures.planning",
     "budget_picture": "pictures.budget",
     "comparison_picture": "pictures.comparison",
+    "checked_picture": "embedding",
     "correlation_picture": "pictures.comparison",
     "datum_picture": "pictures.adjustment",
     "level_page": "levelling_page",
+    "map_extent": "pictures.places",
     "observation_picture": "pictures.adjustment",
     "plane_picture": "pictures.adjustment",
+    "prepare_figures": "page",
     "reach_picture": "pictures.planning",
     "record_picture": "pictures.record",
     "residual_picture": "pictures.comparison",
@@ -57,6 +60,7 @@ _HOMES = {
     "stability_picture": "pictures.stability",
     "tide_picture": "pictures.tide",
     "timeline_picture": "pictures.timeline",
+    "write_figures": "page",
     "write_level_page": "levelling_page",
     "write_page": "page",
 }
@@ -72,11 +76,14 @@ __all__ = [
     "alternatives_picture",
     "budget_picture",
     "comparison_picture",
+    "checked_picture",
     "correlation_picture",
     "datum_picture",
     "level_page",
+    "map_extent",
     "observation_picture",
     "plane_picture",
+    "prepare_figures",
     "reach_picture",
     "record_picture",
     "residual_picture",
@@ -85,6 +92,7 @@ __all__ = [
     "stability_picture",
     "tide_picture",
     "timeline_picture",
+    "write_figures",
     "write_level_page",
     "write_page",
 ]

@@ -7,14 +7,14 @@ import re
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from clockgeo.errors import DataError
+from clockgeo.errors import DataError, OutputError
 from clockgeo.files import whole_file
 from clockgeo.report.style import LIGHT, drawing
 
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
-__all__ = ["PICTURE_SUFFIXES", "inline_svg", "save_picture"]
+__all__ = ["PICTURE_SUFFIXES", "checked_picture", "inline_svg", "save_picture"]
 
 PICTURE_SUFFIXES = (".png", ".svg", ".pdf")
 _NO_DATES: dict[str, dict[str, Any]] = {
@@ -46,14 +46,40 @@ def save_picture(figure: Figure, path: str | Path, *, replace: bool = False) -> 
     OutputError
         If the file cannot be written, or exists and `replace` is false.
     """
-    path = Path(path)
+    path = checked_picture(path, replace=replace)
     suffix = path.suffix.lower()
-    if suffix not in PICTURE_SUFFIXES:
-        raise DataError(
-            "no such kind of picture", value=repr(path.name), allowed=", ".join(PICTURE_SUFFIXES)
-        )
     with whole_file(path, replace=replace) as partial, drawing():
         figure.savefig(partial, format=suffix[1:], metadata=_NO_DATES[suffix])
+    return path
+
+
+def checked_picture(path: str | Path, *, replace: bool = False) -> Path:
+    """Return the path of a picture, refused before any work if it cannot be written later.
+
+    Raises
+    ------
+    DataError
+        If the suffix is none of `PICTURE_SUFFIXES`.
+    OutputError
+        If the file exists and `replace` is false, or its folder is missing.
+    """
+    path = Path(path)
+    if path.suffix.lower() not in PICTURE_SUFFIXES:
+        raise DataError(
+            "no such kind of picture",
+            value=repr(path.name),
+            allowed=f"One of {', '.join(PICTURE_SUFFIXES)}",
+        )
+    if path.exists() and not replace:
+        raise OutputError(
+            "the picture exists already",
+            value=path,
+            advice="Choose another name, or allow replacing it with --force",
+        )
+    if not path.parent.is_dir():
+        raise OutputError(
+            "the folder of the picture is not there", value=path.parent, advice="Create it first"
+        )
     return path
 
 

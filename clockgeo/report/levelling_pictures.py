@@ -135,7 +135,7 @@ def budget_pictures(result: LevelResult) -> Iterator[tuple[tuple[str, str], Pict
         yield (
             pair,
             Picture(
-                id=f"budget-picture-{number}",
+                id=f"budget-{number}",
                 figure=budget_picture(lines),
                 caption=f"What makes up the standard uncertainty, {pair[0]} to {pair[1]}.",
                 alt=f"Bars of the budget; the largest part is {largest.effect}, "
@@ -149,7 +149,7 @@ def correlation_pictures(result: LevelResult) -> Iterator[Picture]:
     order = result.covariance.order
     if len(order) > 2:
         yield Picture(
-            id="correlations-picture",
+            id="correlations",
             figure=correlation_picture(order, result.covariance.matrix),
             caption="Correlation of the geopotential numbers: filled squares are positive, hollow "
             "ones negative, their area is the size.",
@@ -160,7 +160,7 @@ def correlation_pictures(result: LevelResult) -> Iterator[Picture]:
 def comparison_pictures(result: LevelResult) -> Iterator[Picture]:
     """Clocks against geodesy."""
     yield Picture(
-        id="comparison-picture",
+        id="comparison",
         figure=comparison_picture(result.comparison),
         caption="Each difference twice: from geodesy (at zero) and from clocks.",
         alt="; ".join(

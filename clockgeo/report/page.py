@@ -4,15 +4,16 @@ from __future__ import annotations
 
 import base64
 import hashlib
-from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cache
 from importlib.resources import files
 from pathlib import Path
 from typing import TYPE_CHECKING
 
+from clockgeo.errors import OutputError
 from clockgeo.files import write_text
-from clockgeo.report.embedding import inline_svg
+from clockgeo.progress import track
+from clockgeo.report.embedding import checked_picture, inline_svg, save_picture
 from clockgeo.report.sheets import Sheet
 from clockgeo.report.style import DARK, LIGHT
 
@@ -20,7 +21,17 @@ if TYPE_CHECKING:
     from jinja2 import Environment
     from matplotlib.figure import Figure
 
-__all__ = ["Answer", "Page", "Picture", "Section", "render_page", "write_page"]
+__all__ = [
+    "Answer",
+    "Page",
+    "Picture",
+    "Section",
+    "pictures_of",
+    "prepare_figures",
+    "render_page",
+    "write_figures",
+    "write_page",
+]
 
 
 @dataclass(frozen=True, eq=False)
@@ -150,11 +161,64 @@ def write_page(path: str | Path, page: Page, *, replace: bool = False) -> Path:
     return Path(path)
 
 
-def pictures_of(page: Page) -> Sequence[Picture]:
-    """All pictures on the page, in order."""
+def write_figures(
+    page: Page, folder: str | Path, *, suffix: str = ".png", replace: bool = False
+) -> list[Path]:
+    """Write every picture of a page as a file of its own, named by its id.
+
+    Parameters
+    ----------
+    page : Page
+    folder : path
+        Made if missing.
+    suffix : str
+        ``.png``, ``.svg`` or ``.pdf``.
+    replace : bool
+        Whether existing files may be replaced.
+
+    Raises
+    ------
+    DataError
+        If the suffix is another.
+    OutputError
+        If a file exists and `replace` is false, or cannot be written.
+    """
+    folder = prepare_figures(folder, suffix=suffix, replace=replace)
     return [
-        part for section in page.sections for part in section.parts if isinstance(part, Picture)
+        save_picture(picture.figure, folder / f"{picture.id}{suffix}", replace=replace)
+        for picture in track(pictures_of(page), "writing pictures")
     ]
+
+
+def prepare_figures(folder: str | Path, *, suffix: str, replace: bool = False) -> Path:
+    """Make a folder for pictures; refuse, before any work, what could not be written later.
+
+    Raises
+    ------
+    DataError
+        If the suffix is none of ``.png``, ``.svg`` and ``.pdf``.
+    OutputError
+        If the folder cannot be made, or holds such pictures and `replace` is false.
+    """
+    folder = Path(folder)
+    try:
+        folder.mkdir(parents=True, exist_ok=True)
+    except OSError as error:
+        raise OutputError(
+            f"cannot make the folder of pictures ({error.strerror})",
+            value=folder,
+            advice="Choose another with --figures",
+        ) from error
+    checked_picture(folder / f"new{suffix}", replace=True)
+    for present in sorted(folder.glob(f"*{suffix}")):
+        checked_picture(present, replace=replace)
+    return folder
+
+
+def pictures_of(page: Page) -> list[Picture]:
+    """All pictures on a page, in order."""
+    parts = [part for section in page.sections for part in section.parts]
+    return [part for part in parts if isinstance(part, Picture)]
 
 
 def _is_picture(part: object) -> bool:

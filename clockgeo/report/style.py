@@ -149,8 +149,10 @@ def picture(draw: Callable[P, R]) -> Callable[P, R]:
 def blank(width: float = 7.0, height: float = 2.8) -> tuple[Figure, Axes]:
     """Return a figure of that size in inches with one pair of axes; no window is ever opened."""
     from matplotlib.figure import Figure
+    from matplotlib.layout_engine import ConstrainedLayoutEngine
 
-    figure = Figure(figsize=(width, height), layout="constrained")
+    engine = ConstrainedLayoutEngine(w_pad=0.06, h_pad=0.07)
+    figure = Figure(figsize=(width, height), layout=engine)
     return figure, figure.add_subplot()
 
 

@@ -16,7 +16,7 @@ if TYPE_CHECKING:
     from matplotlib.axes import Axes
     from matplotlib.figure import Figure
 
-__all__ = ["Background", "MapSite", "draw_map", "site_map"]
+__all__ = ["Background", "MapSite", "draw_map", "map_extent", "site_map"]
 
 _KM_PER_DEGREE = 111.2
 _SMALLEST_SPAN = 0.02
@@ -71,6 +71,7 @@ def site_map(
     connections: Sequence[tuple[str, str]] = (),
     *,
     background: Background | None = None,
+    span: float = _SMALLEST_SPAN,
     title: str = "",
 ) -> Figure:
     """Draw sites in a plain local projection with a scale bar.
@@ -83,11 +84,14 @@ def site_map(
         labelled with their number of sessions.
     background : Background, optional
         Drawn as contour lines with labels.
+    span : float
+        Smallest height of the map in degrees, before room is added for labels.
     title : str
     """
     figure, axes = blank(7.0, 4.0)
     latitude = np.array([site.latitude for site in sites])
-    longitude = draw_map(axes, latitude, np.array([site.longitude for site in sites]), background)
+    longitudes = np.array([site.longitude for site in sites])
+    longitude = draw_map(axes, latitude, longitudes, background, span=span)
     at = {s.name: (x, y) for s, x, y in zip(sites, longitude, latitude, strict=True)}
     _connections(axes, at, connections)
     here = Counter(first for first, second in connections if first == second)
@@ -104,6 +108,8 @@ def draw_map(
     latitude: NDArray[np.float64],
     longitude: NDArray[np.float64],
     background: Background | None = None,
+    *,
+    span: float = _SMALLEST_SPAN,
 ) -> NDArray[np.float64]:
     """Draw graticule, scale bar and background of a map that holds the given points.
 
@@ -112,38 +118,49 @@ def draw_map(
     float array, shape (N,)
         Longitudes as they are drawn, without a jump at the antimeridian.
     """
-    middle = _middle_longitude(longitude)
-    drawn = middle + (longitude - middle + 180.0) % 360.0 - 180.0
-    stretch = float(np.cos(np.radians(np.clip(latitude.mean(), -85.0, 85.0))))
-    _frame(axes, drawn, latitude, stretch)
-    if background is not None:
-        _contours(axes, background)
-    _scale_bar(axes, stretch)
-    _degrees(axes)
-    return np.asarray(drawn)
-
-
-def _middle_longitude(longitudes: NDArray[np.float64]) -> float:
-    """Mean direction, so that sites on both sides of the antimeridian stay together."""
-    angles = np.radians(longitudes)
-    return float(np.degrees(np.arctan2(np.sin(angles).mean(), np.cos(angles).mean())))
-
-
-def _frame(
-    axes: Axes, longitude: NDArray[np.float64], latitude: NDArray[np.float64], stretch: float
-) -> None:
-    """Leave room around the sites, and show a degree of longitude as long as it is."""
-    height = max(float(np.ptp(latitude)), float(np.ptp(longitude)) * stretch / 2.2, _SMALLEST_SPAN)
-    width = max(float(np.ptp(longitude)), height * 1.6 / stretch)
-    centre = (longitude.max() + longitude.min()) / 2.0, (latitude.max() + latitude.min()) / 2.0
-    half_up = max(0.85 * height, 0.75 * width * stretch / _SHAPE)
-    half_across = half_up * _SHAPE / stretch
-    axes.set_xlim(centre[0] - half_across, centre[0] + half_across)
-    axes.set_ylim(centre[1] - half_up, centre[1] + half_up)
+    west, east, south, north = map_extent(latitude, longitude, span=span)
+    stretch = _stretch(latitude)
+    axes.set_xlim(west, east)
+    axes.set_ylim(south, north)
     axes.set_aspect(1.0 / stretch, adjustable="box", anchor="W")
     axes.grid(visible=True, axis="both")
     for side in ("top", "right"):
         axes.spines[side].set_visible(True)
+    if background is not None:
+        _contours(axes, background)
+    _scale_bar(axes, stretch)
+    _degrees(axes)
+    return _unwrapped(longitude)
+
+
+def map_extent(
+    latitude: NDArray[np.float64], longitude: NDArray[np.float64], *, span: float = _SMALLEST_SPAN
+) -> tuple[float, float, float, float]:
+    """West, east, south and north of the map that holds these points, in degrees.
+
+    There is room around the points for their labels. Longitudes run on past 180 where the map
+    crosses the antimeridian.
+    """
+    drawn, stretch = _unwrapped(longitude), _stretch(latitude)
+    height = max(float(np.ptp(latitude)), float(np.ptp(drawn)) * stretch / 2.2, span)
+    width = max(float(np.ptp(drawn)), height * 1.6 / stretch)
+    half_up = max(0.85 * height, 0.75 * width * stretch / _SHAPE)
+    half_across = half_up * _SHAPE / stretch
+    centre = float(drawn.max() + drawn.min()) / 2.0
+    middle = float(latitude.max() + latitude.min()) / 2.0
+    return centre - half_across, centre + half_across, middle - half_up, middle + half_up
+
+
+def _unwrapped(longitude: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Keep points on both sides of the antimeridian together."""
+    angles = np.radians(longitude)
+    middle = float(np.degrees(np.arctan2(np.sin(angles).mean(), np.cos(angles).mean())))
+    return np.asarray(middle + (longitude - middle + 180.0) % 360.0 - 180.0)
+
+
+def _stretch(latitude: NDArray[np.float64]) -> float:
+    """Length of a degree of longitude in degrees of latitude; never quite zero."""
+    return float(np.cos(np.radians(np.clip(latitude.mean(), -85.0, 85.0))))
 
 
 def _contours(axes: Axes, background: Background) -> None:
@@ -206,6 +223,7 @@ def _site(axes: Axes, site: MapSite, place: tuple[float, float], sessions: int) 
         ha="left" if is_left else "right",
         va="bottom" if is_high else "top",
         fontsize=8.0,
+        bbox={"facecolor": LIGHT["paper"], "edgecolor": "none", "alpha": 0.8, "pad": 1.0},
         zorder=5,
     )
 

@@ -125,7 +125,7 @@ def _draw_valid(
 
 def _draw_mean(axes: Axes, middle: float, u_mean: float | None, unit: float) -> None:
     colour = LIGHT["lake"]
-    written = typeset(with_uncertainty(middle, u_mean)) if u_mean else rounded(middle, 6)
+    written = typeset(with_uncertainty(middle, u_mean) if u_mean else rounded(middle, 6))
     if u_mean is not None:
         axes.axhspan(-u_mean / unit, u_mean / unit, color=colour, alpha=0.45, linewidth=0.0)
     axes.axhline(0.0, color=colour, linewidth=1.2, label=f"mean as read {written}")
