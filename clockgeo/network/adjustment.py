@@ -152,6 +152,7 @@ def adjust_network(
     zero: ZeroRule | None = None,
     method: Literal["auto", "dense", "sparse"] = "auto",
     row_weights: NDArray[np.float64] | None = None,
+    known: Identifiability | None = None,
 ) -> Adjustment:
     """Adjust a network.
 
@@ -164,6 +165,8 @@ def adjust_network(
         How the normal equations are solved; by size if "auto".
     row_weights : float array, shape (n,), optional
         Factors of the rows' weights, as a robust estimation sets them.
+    known : Identifiability, optional
+        What the rows determine, where that was found before.
 
     Returns
     -------
@@ -182,7 +185,7 @@ def adjust_network(
     """
     if not model.rows:
         raise DataError("there is nothing to adjust", advice="Add observations")
-    known = identify(model)
+    known = identify(model) if known is None else known
     system = whiten(model, held=known.null_space.pivots, row_weights=row_weights)
     dense = {"auto": None, "dense": True, "sparse": False}[method]
     normals = normal_equations(system.design, dense=dense)
