@@ -27,6 +27,7 @@ _ANSWERS = 8
 _AGREE, _DOUBTFUL = 2.0, 3.0
 """Differences up to so many standard uncertainties are called agreement, and doubtful."""
 _SIGNIFICANT = 0.05
+_OTHER_BUDGETS = "The budgets of the other pairs stand in result.json, under effects."
 _USE_THE_COVARIANCE = (
     "Numbers of sites share the clocks, the links and the reference; use the covariance "
     "whenever they are combined."
@@ -162,9 +163,11 @@ def _sections(result: LevelResult, evidence: Evidence) -> Iterator[Section]:
         parts=(*stability_pictures(evidence), sheets.noise_sheet(result)),
     )
     budgets = dict(sheets.budget_sheets(result))
+    every = {(line.from_site, line.to_site) for line in result.effects}
     yield Section(
         "budget",
         "Uncertainty budget",
+        paragraphs=(_OTHER_BUDGETS,) if len(every) > len(budgets) else (),
         parts=tuple(
             part for pair, picture in budget_pictures(result) for part in (picture, budgets[pair])
         ),

@@ -6,6 +6,7 @@ from collections.abc import Iterator
 
 from clockgeo.campaign.evidence import Evidence
 from clockgeo.campaign.results import LevelResult
+from clockgeo.report.levelling_sheets import budget_pairs
 from clockgeo.report.numbers import duration, percentage, rounded, typeset, with_uncertainty
 from clockgeo.report.page import Picture
 from clockgeo.report.pictures.budget import budget_picture
@@ -127,9 +128,8 @@ def stability_pictures(evidence: Evidence) -> Iterator[Picture]:
 
 
 def budget_pictures(result: LevelResult) -> Iterator[tuple[tuple[str, str], Picture]]:
-    """One picture a pair of sites."""
-    pairs = list(dict.fromkeys((line.from_site, line.to_site) for line in result.effects))
-    for number, pair in enumerate(pairs, start=1):
+    """One picture a pair with the reference site."""
+    for number, pair in enumerate(budget_pairs(result), start=1):
         lines = [e for e in result.effects if (e.from_site, e.to_site) == pair]
         largest = max(lines, key=lambda line: line.height_mm)
         yield (

@@ -10,6 +10,7 @@ from clockgeo.report.pictures.stability import in_words
 from clockgeo.report.sheets import Cell, Sheet, count, measured, plain, words
 
 __all__ = [
+    "budget_pairs",
     "budget_sheets",
     "comparison_sheet",
     "convention_sheet",
@@ -185,10 +186,16 @@ def noise_sheet(result: LevelResult) -> Sheet:
     return Sheet.of("noise", caption, columns, rows, heads=1)
 
 
-def budget_sheets(result: LevelResult) -> Iterator[tuple[tuple[str, str], Sheet]]:
-    """One budget a pair of sites."""
+def budget_pairs(result: LevelResult) -> list[tuple[str, str]]:
+    """Pairs whose budgets the page shows: those with the reference site, or all without one."""
     pairs = list(dict.fromkeys((line.from_site, line.to_site) for line in result.effects))
-    for number, pair in enumerate(pairs, start=1):
+    reference = result.conventions.reference_site
+    return [pair for pair in pairs if reference in pair] or pairs
+
+
+def budget_sheets(result: LevelResult) -> Iterator[tuple[tuple[str, str], Sheet]]:
+    """One budget a pair with the reference site."""
+    for number, pair in enumerate(budget_pairs(result), start=1):
         lines = [e for e in result.effects if (e.from_site, e.to_site) == pair]
         columns: list[tuple[str, str | tuple[str, str]]] = [
             ("cause", "cause"),

@@ -130,6 +130,14 @@ class Page:
     caution: str
     version: str
 
+    def _repr_html_(self) -> str:
+        """Show the page in a notebook, in a frame of its own."""
+        from markupsafe import escape
+
+        frame = "width: 100%; height: 50rem; border: 0"
+        text = escape(render_page(self))
+        return f'<iframe title="{escape(self.kind)}" style="{frame}" srcdoc="{text}"></iframe>'
+
 
 def render_page(page: Page) -> str:
     """Return the page as HTML; all text of `page` is escaped."""

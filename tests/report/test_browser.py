@@ -77,6 +77,16 @@ def test_the_switch_changes_the_paper(opened):
     assert paper == rgb(DARK["paper"])
 
 
+def test_pictures_can_be_enlarged(opened):
+    width = "document.querySelector('#figure-record-1 svg').getBoundingClientRect().width"
+    before = opened.value(width)
+    opened.value("document.querySelector('#figure-record-1 button').click()")
+    assert opened.value(width) > 2.0 * before
+    assert opened.value("document.documentElement.scrollWidth <= window.innerWidth")
+    opened.value("document.querySelector('#figure-record-1 button').click()")
+    assert opened.value(width) == before
+
+
 def test_tables_can_be_copied(opened):
     opened.value(
         "window.taken = []; document.execCommand = function () {"

@@ -163,6 +163,12 @@ def test_equal_results_give_equal_bytes(page):
     assert again == page
 
 
+def test_notebooks_show_the_page_in_a_frame(result, evidence, page):
+    shown = Structure(level_page(result, evidence)._repr_html_())
+    assert [tag for tag, _, _ in shown.found] == ["iframe"]
+    assert shown.found[0][1]["srcdoc"] == page
+
+
 def test_a_campaign_without_comparison_or_second_site(result, evidence):
     lonely = result.model_copy(update={"comparison": (), "scatter": None, "differences": ()})
     text = render_page(level_page(lonely, evidence))

@@ -27,7 +27,7 @@ if TYPE_CHECKING:
 
 __all__ = ["record_picture"]
 
-_COLUMNS = 800
+_COLUMNS = 1_000
 _FEW = 1_500
 """Up to so many epochs are drawn as single points."""
 _NOT_USABLE, _MASKED = 1, 16
@@ -63,7 +63,7 @@ def record_picture(
     Returns
     -------
     Figure
-        Up to 1500 epochs as points, more as lowest and highest value of 800 columns of time.
+        Up to 1500 epochs as points, more as lowest and highest value of 1000 columns of time.
     """
     counts = reasons == 0
     start, stop = int(tai_ns[0]), int(tai_ns[-1]) + round(interval * SECOND_NS)

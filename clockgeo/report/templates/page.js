@@ -41,6 +41,13 @@
       copy(details.querySelector("pre").textContent, made);
     }), details);
   });
+  document.querySelectorAll("figure").forEach(function (figure) {
+    var frame = figure.querySelector(".frame");
+    figure.insertBefore(button("larger", function (made) {
+      made.textContent = figure.classList.toggle("large") ? "fit to page" : "larger";
+      frame.tabIndex = figure.classList.contains("large") ? 0 : -1;
+    }), figure.querySelector("figcaption"));
+  });
   var root = document.documentElement;
   var dark = window.matchMedia("(prefers-color-scheme: dark)");
   var change = button("light or dark", function () {
