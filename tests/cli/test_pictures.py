@@ -91,3 +91,31 @@ def test_what_cannot_be_written_is_refused_first(tmp_path, arguments):
         assert done.exit_code == 1
         assert words in done.output
     assert (tmp_path / "there.png").read_bytes() == b"mine"
+
+
+@pytest.fixture(scope="module")
+def campaign(project, tmp_path_factory):
+    """The shipped example with records drawn anew."""
+    folder = tmp_path_factory.mktemp("campaign")
+    path = folder / "campaign.toml"
+    path.write_bytes((project / "examples" / "saddle" / "campaign.toml").read_bytes())
+    assert run("simulate", path, "--seed", 3, "--quiet").exit_code == 0
+    return path
+
+
+def test_pictures_of_a_campaign(campaign, tmp_path):
+    figures = tmp_path / "figures"
+    options = ["--figures", figures, "--figure-kind", "svg"]
+    done = run("level", campaign, "--out", tmp_path / "out", *options)
+    assert done.exit_code == 0, done.output
+    names = {path.name for path in figures.iterdir()}
+    assert {"map.svg", "timeline.svg", "record-1.svg", "budget-1.svg", "comparison.svg"} <= names
+    assert "figures/map.svg" in done.output.replace("\n", "")
+
+
+def test_an_unknown_kind_is_refused_before_levelling(campaign, tmp_path):
+    options = ["--figures", tmp_path, "--figure-kind", "gif"]
+    done = run("level", campaign, "--out", tmp_path / "out", *options)
+    assert done.exit_code == 1
+    assert "no such kind of picture" in done.output
+    assert not list((tmp_path / "out").iterdir())
