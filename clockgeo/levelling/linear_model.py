@@ -19,7 +19,11 @@ from scipy import sparse
 
 from clockgeo.errors import DataError
 
-__all__ = ["LinearModel", "ModelBuilder"]
+__all__ = ["LinearModel", "ModelBuilder", "Named"]
+
+Named = tuple[Hashable | list[Hashable], ArrayLike]
+"""An unknown or effect common to many rows, or a list of one for each, with its coefficients."""
+_Places = NDArray[np.int64]
 
 
 @dataclass(frozen=True, eq=False)
@@ -76,6 +80,9 @@ class ModelBuilder:
     _design: list[tuple[int, int, float]] = field(default_factory=list)
     _loading: list[tuple[int, int, float]] = field(default_factory=list)
     _noise: list[tuple[int, int, float]] = field(default_factory=list)
+    _many: dict[str, list[tuple[_Places, _Places, NDArray[np.float64]]]] = field(
+        default_factory=lambda: {"design": [], "loading": [], "noise": []}
+    )
 
     def observe(
         self,
@@ -139,6 +146,62 @@ class ModelBuilder:
             if coefficient:
                 entries.append((place, column, float(coefficient)))
 
+    def observe_all(
+        self,
+        rows: Sequence[str],
+        *,
+        kind: str,
+        values: ArrayLike,
+        on: Sequence[Named],
+        effects: Sequence[Named] = (),
+        variance: ArrayLike = 0.0,
+    ) -> None:
+        """Add many observations of one kind at once.
+
+        Parameters
+        ----------
+        rows : sequence of str, length m
+            Their ids, each used once.
+        kind : str
+            What they are.
+        values : array, shape (m,)
+            Observed values in m² s⁻².
+        on, effects : sequence of Named
+            Unknowns with coefficients, and effects with loadings in m² s⁻²: one name for all rows
+            or a list of m names, and a scalar or an array of shape (m,).
+        variance : float or array, shape (m,)
+            Variance of each row's own noise in m⁴ s⁻⁴.
+
+        Raises
+        ------
+        DataError
+            As `observe`.
+        """
+        size, start = len(rows), len(self._rows)
+        fresh = {row: start + i for i, row in enumerate(rows)}
+        taken = fresh.keys() & self._rows.keys()
+        if taken or len(fresh) < size:
+            twice = min(taken) if taken else next(r for r in rows if list(rows).count(r) > 1)
+            raise DataError("an observation id is used twice", value=twice, advice="Rename one")
+        observed = np.broadcast_to(np.asarray(values, dtype=np.float64), (size,))
+        spread = np.broadcast_to(np.asarray(variance, dtype=np.float64), (size,))
+        checked = [observed, spread, *(np.asarray(c, dtype=float) for _, c in (*on, *effects))]
+        if not all(np.all(np.isfinite(one)) for one in checked) or np.any(spread < 0.0):
+            raise DataError(
+                "observations have numbers that are not finite, or negative variances",
+                where=f"observations {rows[0]} to {rows[-1]}",
+            )
+        self._rows.update(fresh)
+        self._kinds += [kind] * size
+        self._values += observed.tolist()
+        places = np.arange(start, start + size)
+        for part, names, terms in (
+            ("design", self._unknowns, on),
+            ("loading", self._effects, effects),
+        ):
+            self._many[part] += [_entries(places, names, *term) for term in terms]
+        self._many["noise"].append((places, places, spread.copy()))
+
     def correlate(self, rows: Sequence[str], covariance: ArrayLike) -> None:
         """Add a full covariance block in m⁴ s⁻⁴ to the noise of the named `rows`."""
         places = [self._rows[row] for row in rows]
@@ -149,12 +212,8 @@ class ModelBuilder:
                 value=f"shape {block.shape}",
                 allowed=f"Shape {(len(places), len(places))} for {len(places)} rows",
             )
-        self._noise += [
-            (i, j, float(block[a, b]))
-            for a, i in enumerate(places)
-            for b, j in enumerate(places)
-            if block[a, b]
-        ]
+        i, j = np.meshgrid(np.array(places, dtype=np.int64), places, indexing="ij")
+        self._many["noise"].append((i.ravel(), j.ravel(), block.ravel()))
 
     def build(self) -> LinearModel:
         """Return the model of all observations so far."""
@@ -165,13 +224,37 @@ class ModelBuilder:
             rows=tuple(self._rows),
             kinds=tuple(self._kinds),
             values=np.array(self._values, dtype=np.float64),
-            design=_sparse(self._design, (n, p)),
-            loading=_sparse(self._loading, (n, q)),
-            noise=_sparse(self._noise, (n, n)),
+            design=_sparse(self._design, self._many["design"], (n, p)),
+            loading=_sparse(self._loading, self._many["loading"], (n, q)),
+            noise=_sparse(self._noise, self._many["noise"], (n, n)),
         )
 
 
-def _sparse(entries: list[tuple[int, int, float]], shape: tuple[int, int]) -> sparse.csr_array:
-    rows, columns, values = zip(*entries, strict=True) if entries else ((), (), ())
-    numbers = np.array(values, dtype=np.float64)
-    return sparse.csr_array(sparse.coo_array((numbers, (rows, columns)), shape=shape))
+def _entries(
+    places: _Places,
+    names: dict[Hashable, int],
+    name: Hashable | list[Hashable],
+    coefficients: ArrayLike,
+) -> tuple[_Places, _Places, NDArray[np.float64]]:
+    """Entries of many rows in one matrix; names that are new become columns."""
+    if isinstance(name, list):
+        found = [names.setdefault(one, len(names)) for one in name]
+        columns = np.array(found, dtype=np.int64)
+    else:
+        columns = np.full(places.size, names.setdefault(name, len(names)))
+    values = np.broadcast_to(np.asarray(coefficients, dtype=np.float64), places.shape)
+    return places, columns, values
+
+
+def _sparse(
+    single: list[tuple[int, int, float]],
+    many: list[tuple[_Places, _Places, NDArray[np.float64]]],
+    shape: tuple[int, int],
+) -> sparse.csr_array:
+    rows, columns, values = zip(*single, strict=True) if single else ((), (), ())
+    parts = [(np.array(rows, dtype=int), np.array(columns, dtype=int), np.array(values)), *many]
+    places = tuple(np.concatenate([part[axis] for part in parts]) for axis in (0, 1))
+    numbers = np.concatenate([part[2] for part in parts]).astype(np.float64)
+    matrix = sparse.csr_array(sparse.coo_array((numbers, places), shape=shape))
+    matrix.eliminate_zeros()
+    return matrix

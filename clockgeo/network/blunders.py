@@ -15,8 +15,8 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy import stats
 
+from clockgeo.network.critical_values import critical_residual
 from clockgeo.network.reliability import Reliability
-from clockgeo.network.test_theory import critical_residual
 
 __all__ = ["BlunderSearch", "Suspect", "find_blunders"]
 
@@ -179,9 +179,7 @@ def _next_rows(state: _State, limit: float, chi_squared: float, freedom: int) ->
     return _best_pair(state, w, sharpness)
 
 
-def _best_pair(
-    state: _State, w: NDArray[np.float64], sharpness: NDArray[np.float64]
-) -> list[int]:
+def _best_pair(state: _State, w: NDArray[np.float64], sharpness: NDArray[np.float64]) -> list[int]:
     """Pair of rows that together explain most, if that is more than chance among all pairs."""
     rows = np.flatnonzero(sharpness > 0.0)
     rows = rows[np.argsort(-np.abs(w[rows]), kind="stable")[:_PAIR_ROWS]]

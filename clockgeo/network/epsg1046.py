@@ -54,7 +54,7 @@ class OffsetAndSlope:
     def from_tilts(
         cls, origin: tuple[float, float], offset: float, tilt_north: float, tilt_east: float
     ) -> OffsetAndSlope:
-        """Make the parameters from an offset in m and tilts in m a metre at an origin in degrees."""
+        """Parameters from an offset in m and tilts in m a metre at an origin in degrees."""
         return cls(*origin, offset, tilt_north / _ARC_SECOND, tilt_east / _ARC_SECOND)
 
     def shift(self, latitude: ArrayLike, longitude: ArrayLike) -> float | NDArray[np.float64]:
@@ -70,9 +70,8 @@ class OffsetAndSlope:
         >>> round(OffsetAndSlope(50.0, 8.0, -0.25, 0.1).shift(50.0, 9.0), 6)
         -0.25
         """
-        north, east = ways_from(
-            (self.latitude, self.longitude), checked_latitude(latitude), checked_longitude(longitude)
-        )
+        checked_latitude(latitude), checked_longitude(longitude)
+        north, east = ways_from((self.latitude, self.longitude), latitude, longitude)
         slopes = self.inclination_latitude * north + self.inclination_longitude * east
         return plain(self.offset + _ARC_SECOND * slopes)
 
@@ -158,7 +157,7 @@ def read_wkt(text: str) -> OffsetAndSlope:
     DataError
         If the text is no such operation, or a parameter is missing or in an unknown unit.
     """
-    from pyproj.crs import CoordinateOperation
+    from pyproj.crs import CoordinateOperation  # type: ignore[attr-defined]
     from pyproj.exceptions import CRSError
 
     try:
@@ -178,7 +177,7 @@ def read_wkt(text: str) -> OffsetAndSlope:
             raise DataError(
                 "a parameter has an unknown unit", value=f"{one.name} in {one.unit_name}"
             )
-        found[one.name] = one.value
+        found[one.name] = float(one.value)
     missing = [name for name in _PARAMETERS if name not in found]
     if missing:
         raise DataError("parameters are missing in the operation", value=", ".join(missing))

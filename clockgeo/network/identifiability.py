@@ -92,9 +92,7 @@ def listed(names: Iterable[str], *, most: int = 4) -> str:
     return " and ".join(filter(None, [", ".join(every[:-1]), every[-1]])) if every else ""
 
 
-def _sentence(
-    model: LinearModel, names: Sequence[Hashable], weights: NDArray[np.float64]
-) -> str:
+def _sentence(model: LinearModel, names: Sequence[Hashable], weights: NDArray[np.float64]) -> str:
     sites = [name.site for name in names if isinstance(name, NumberOf)]
     others = [name for name in names if not isinstance(name, NumberOf)]
     if sites and bool(np.all(np.abs(np.abs(weights) - 1.0) < 1e-6)):

@@ -38,7 +38,7 @@ class NormalEquations(Protocol):
     def diagonal(self) -> NDArray[np.float64]:
         """Diagonal of N⁻¹: the variance of every unknown."""
 
-    def at(self, first: NDArray[np.int64], second: NDArray[np.int64]) -> NDArray[np.float64]:
+    def at(self, first: NDArray[Any], second: NDArray[Any]) -> NDArray[np.float64]:
         """Entries of N⁻¹ at pairs of unknowns."""
 
 
@@ -92,7 +92,7 @@ class _Dense:
     def diagonal(self) -> NDArray[np.float64]:
         return np.diag(self._inverse).copy()
 
-    def at(self, first: NDArray[np.int64], second: NDArray[np.int64]) -> NDArray[np.float64]:
+    def at(self, first: NDArray[Any], second: NDArray[Any]) -> NDArray[np.float64]:
         return np.asarray(self._inverse[first, second])
 
 
@@ -151,15 +151,15 @@ class _Sparse:
         places = np.arange(self._scale.size)
         return self.at(places, places)
 
-    def at(self, first: NDArray[np.int64], second: NDArray[np.int64]) -> NDArray[np.float64]:
+    def at(self, first: NDArray[Any], second: NDArray[Any]) -> NDArray[np.float64]:
         first, second = np.asarray(first).ravel(), np.asarray(second).ravel()
         found = np.zeros(first.size)
         for start in range(0, first.size, _PART):
             part = slice(start, start + _PART)
             found[part] = self._part(first[part], second[part])
-        return found * self._scale[first] * self._scale[second]
+        return np.asarray(found * self._scale[first] * self._scale[second])
 
-    def _part(self, first: NDArray[np.int64], second: NDArray[np.int64]) -> NDArray[np.float64]:
+    def _part(self, first: NDArray[Any], second: NDArray[Any]) -> NDArray[np.float64]:
         place = self._order()
         a, b = place[first], place[second]
         inside = (a >= 0) & (b >= 0)

@@ -152,11 +152,9 @@ def _dense_null_space(rows: sparse.csr_array, settled: Settled) -> NDArray[np.fl
     triangle = np.zeros((0, core.size))
     for start in range(0, matrix.shape[0], _PART):
         part = matrix[start : start + _PART].toarray() / lengths
-        triangle = np.linalg.qr(np.vstack([triangle, part]), mode="r")
+        triangle = np.asarray(np.linalg.qr(np.vstack([triangle, part]), mode="r"))
     inside = (
-        linalg.null_space(triangle, rcond=_TOLERANCE)
-        if triangle.size
-        else np.zeros((core.size, 0))
+        linalg.null_space(triangle, rcond=_TOLERANCE) if triangle.size else np.zeros((core.size, 0))
     )
     basis = np.zeros((groups, unseen.size + inside.shape[1]))
     basis[unseen, np.arange(unseen.size)] = 1.0

@@ -21,7 +21,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from clockgeo.network.adjustment import Adjustment
-from clockgeo.network.test_theory import detectable_shift
+from clockgeo.network.critical_values import detectable_shift
 from clockgeo.network.whitening import WhitenedSystem
 
 __all__ = ["Reliability", "reliability_of"]
@@ -185,7 +185,7 @@ def _block(
 
 
 def _without_whitening(
-    system: WhitenedSystem, rows: NDArray[np.int64], places: NDArray[np.int64]
+    system: WhitenedSystem, rows: NDArray[np.int64], places: NDArray[np.int32]
 ) -> NDArray[np.float64]:
     """Coefficients of the free unknowns among `places` in the rows as observed."""
     unknowns = places < system.free.size

@@ -76,7 +76,7 @@ def selected_inverse(lower: Any, pivots: NDArray[np.float64]) -> SelectedInverse
     return SelectedInverse(diagonal, starts, rows, values)
 
 
-@numba.njit(cache=True)  # type: ignore[untyped-decorator]
+@numba.njit(cache=True)
 def _recur(starts, rows, factor, pivots, diagonal, values):  # type: ignore[no-untyped-def]
     """Fill `diagonal` and `values` from the last column to the first."""
     size = pivots.size
@@ -105,7 +105,7 @@ def _recur(starts, rows, factor, pivots, diagonal, values):  # type: ignore[no-u
         diagonal[j] = own
 
 
-@numba.njit(cache=True)  # type: ignore[untyped-decorator]
+@numba.njit(cache=True)
 def _look_up(columns, lines, stored, found):  # type: ignore[no-untyped-def]
     diagonal, starts, rows, values = stored
     for m in range(columns.size):

@@ -116,9 +116,7 @@ def scaled_model(
     )
 
 
-def _reml(
-    model: LinearModel, components: Sequence[Component]
-) -> tuple[ComponentEstimate, ...]:
+def _reml(model: LinearModel, components: Sequence[Component]) -> tuple[ComponentEstimate, ...]:
     design = model.design.toarray()
     held = null_space_of(model.design).pivots
     design = np.delete(design, held, axis=1)
@@ -142,7 +140,7 @@ def _reml(
         _require_redundancy(components, information, theta)
         fresh = np.zeros(theta.size)
         fresh[free] = np.linalg.solve(information[np.ix_(free, free)], score[free] / 2.0)
-        # A step below zero is cut to a tenth of the way; what keeps falling has its minimum at zero.
+        # A step below zero is shortened; what keeps falling has its best value at zero.
         fresh = np.where(free & (fresh <= 0.0), 0.1 * theta, fresh)
         free &= fresh > _NOTHING
         fresh[~free] = 0.0
@@ -171,9 +169,7 @@ def _part(model: LinearModel, component: Component) -> NDArray[np.float64]:
     return np.asarray((chosen @ model.noise @ chosen + loads @ loads.T).toarray())
 
 
-def _projector(
-    covariance: NDArray[np.float64], design: NDArray[np.float64]
-) -> NDArray[np.float64]:
+def _projector(covariance: NDArray[np.float64], design: NDArray[np.float64]) -> NDArray[np.float64]:
     """M = V⁻¹ - V⁻¹A (AᵀV⁻¹A)⁻¹ AᵀV⁻¹."""
     try:
         weight = linalg.cho_solve(linalg.cho_factor(covariance), np.eye(covariance.shape[0]))

@@ -74,9 +74,7 @@ class ZeroDefinition:
         if self.direction is None or self.mean_of is None or self.cross is None:
             return variance
         spread = float(self.mean_of @ self.cross)
-        return np.asarray(
-            variance - 2.0 * self.direction * self.cross + self.direction**2 * spread
-        )
+        return np.asarray(variance - 2.0 * self.direction * self.cross + self.direction**2 * spread)
 
     def sees(self, weights: NDArray[np.float64]) -> bool:
         """Whether a combination has no part in the directions that stay open."""

@@ -96,7 +96,7 @@ def critical_tau(degrees_of_freedom: int, *, alpha: float = 0.05) -> float:
             "a variance factor and a residual need two degrees of freedom", value=degrees_of_freedom
         )
     t = float(stats.t.isf(alpha / 2.0, degrees_of_freedom - 1))
-    return t * np.sqrt(degrees_of_freedom) / float(np.sqrt(degrees_of_freedom - 1 + t**2))
+    return float(t * np.sqrt(degrees_of_freedom / (degrees_of_freedom - 1 + t**2)))
 
 
 def global_limits(degrees_of_freedom: int, *, alpha: float = 0.05) -> tuple[float, float]:
@@ -104,5 +104,6 @@ def global_limits(degrees_of_freedom: int, *, alpha: float = 0.05) -> tuple[floa
     _check(alpha=alpha)
     if degrees_of_freedom < 1:
         raise DataError("the global test needs a degree of freedom", value=degrees_of_freedom)
-    low, high = stats.chi2.ppf([alpha / 2.0, 1.0 - alpha / 2.0], degrees_of_freedom)
-    return float(low) / degrees_of_freedom, float(high) / degrees_of_freedom
+    low = float(stats.chi2.ppf(alpha / 2.0, degrees_of_freedom))
+    high = float(stats.chi2.isf(alpha / 2.0, degrees_of_freedom))
+    return low / degrees_of_freedom, high / degrees_of_freedom
