@@ -24,7 +24,8 @@ def reference_problems(raw: dict[str, Any], campaign: Campaign | None) -> list[s
     campaign : Campaign or None
         The validated document, if it is valid; times and conventions are checked on it.
     """
-    names = {kind: _ids(raw, kind) for kind in ("site", "clock", "link", "session")}
+    kinds = ("site", "clock", "link", "session", "datum", "levelling", "gnss")
+    names = {kind: _ids(raw, kind) for kind in kinds}
     problems = [
         f"[[{kind}]] {name!r}: the id is used {ids.count(name)} times; give each its own"
         for kind, ids in names.items()

@@ -16,6 +16,13 @@ from clockgeo.frequency.noise import NoiseModel
 from clockgeo.frequency.screening import ScreeningRules
 from clockgeo.gravity.tide_systems import TideSystem
 from clockgeo.levelling.stations import Clock, Link, Site
+from clockgeo.network.tables import (
+    Datum,
+    GnssHeights,
+    Levelling,
+    NetworkSettings,
+    TideGauge,
+)
 from clockgeo.tables import Identifier, NonNegative, Positive, Table, Uncertainty
 
 __all__ = [
@@ -198,6 +205,11 @@ class Campaign(Table):
     sessions: tuple[Session, ...] = Field(default=(), alias="session")
     nominal_ratios: tuple[NominalRatio, ...] = Field(default=(), alias="nominal_ratio")
     geoid: GeoidSource | None = None
+    network: NetworkSettings = NetworkSettings()
+    datums: tuple[Datum, ...] = Field(default=(), alias="datum")
+    levellings: tuple[Levelling, ...] = Field(default=(), alias="levelling")
+    gnss: tuple[GnssHeights, ...] = ()
+    tide_gauges: tuple[TideGauge, ...] = Field(default=(), alias="tide_gauge")
     target: Target | None = None
     truth: Truth | None = None
 

@@ -8,7 +8,7 @@ solved, and the zero level can be defined by known numbers, by the mean of sites
 from __future__ import annotations
 
 from collections.abc import Hashable, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 from typing import Any, Literal
 
@@ -18,7 +18,7 @@ from scipy import stats
 
 from clockgeo.errors import DataError
 from clockgeo.levelling.linear_model import LinearModel
-from clockgeo.levelling.solution import Contribution, Fit
+from clockgeo.levelling.solution import Contribution, Fit, Solution
 from clockgeo.network.identifiability import Identifiability, identify
 from clockgeo.network.normal_equations import NormalEquations, normal_equations
 from clockgeo.network.whitening import WhitenedSystem, whiten
@@ -144,6 +144,27 @@ class Adjustment:
         if kind is not None:
             gain = np.where(np.array(self.model.kinds) == kind, gain, 0.0)
         return float(np.sqrt(max(float(gain @ (self.model.noise @ gain)), 0.0)))
+
+    def solution_for(self, names: Sequence[Hashable]) -> Solution:
+        """Part of the adjustment as a `Solution` of some unknowns alone.
+
+        Raises
+        ------
+        DataError
+            If one of them is not estimable.
+        """
+        for name in names:
+            if not self.estimable({name: 1.0}):
+                raise DataError("not estimable from these observations", value=name)
+        columns = [self.place[name] for name in names]
+        return Solution(
+            model=replace(self.model, unknowns=tuple(names), design=self.model.design[:, columns]),
+            estimate=self.estimate[columns],
+            covariance=self.covariance([{name: 1.0} for name in names]),
+            gain=np.array([self.gain({name: 1.0}) for name in names]),
+            residuals=self.residuals,
+            fit=self.fit,
+        )
 
 
 def adjust_network(

@@ -238,6 +238,8 @@ class NetworkSettings(Table):
     """Known numbers, inner constraints over all points, or sites whose mean number is held."""
     zero_mean: float = 0.0
     """Value of that mean in m² s⁻²."""
+    pairs: tuple[tuple[Identifier, Identifier], ...] = ()
+    """Pairs of points whose difference and its u are wanted, beside those of all sites."""
     shared_points: tuple[Identifier, ...] = ()
     """Marks whose heights are published in more than one datum on purpose."""
     geoid_terms: TermSettings = TermSettings(offset=False)

@@ -121,19 +121,19 @@ def _reml(model: LinearModel, components: Sequence[Component]) -> tuple[Componen
     held = null_space_of(model.design).pivots
     design = np.delete(design, held, axis=1)
     parts = [_part(model, one) for one in components]
-    rest = model.covariance() - sum(parts)
+    rest = model.covariance() - np.sum([part.toarray() for part in parts], axis=0)
     theta = np.ones(len(parts))
     free = np.ones(len(parts), dtype=bool)
     for _ in range(_ROUNDS):
         covariance = rest + sum(t * part for t, part in zip(theta, parts, strict=True))
         projector = _projector(covariance, design)
         pull = projector @ model.values
-        seen = [projector @ part for part in parts]
+        seen = [np.asarray((part @ projector).T) for part in parts]
         information = np.array([[np.sum(a * b.T) for b in seen] for a in seen]) / 2.0
         fixed = projector @ rest
         score = np.array(
             [
-                pull @ part @ pull - np.sum(fixed * one.T)
+                pull @ (part @ pull) - np.sum(fixed * one.T)
                 for part, one in zip(parts, seen, strict=True)
             ]
         )
@@ -160,13 +160,13 @@ def _reml(model: LinearModel, components: Sequence[Component]) -> tuple[Componen
     )
 
 
-def _part(model: LinearModel, component: Component) -> NDArray[np.float64]:
-    """V_g: the group's noise and effects, dense."""
+def _part(model: LinearModel, component: Component) -> sparse.csr_array:
+    """V_g: the group's noise and effects."""
     inside = np.zeros(len(model.rows))
     inside[component.rows] = 1.0
     chosen = sparse.diags_array(inside)
     loads = model.loading[:, component.effects]
-    return np.asarray((chosen @ model.noise @ chosen + loads @ loads.T).toarray())
+    return sparse.csr_array(chosen @ model.noise @ chosen + loads @ loads.T)
 
 
 def _projector(covariance: NDArray[np.float64], design: NDArray[np.float64]) -> NDArray[np.float64]:
