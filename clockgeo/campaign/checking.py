@@ -86,20 +86,20 @@ def _sites(document: Document) -> list[str]:
 def _check_session(
     document: Document, session: Session, report: CheckReport, measured: list[Measured]
 ) -> None:
-    ends = [f"{place.clock} at {place.site}" for place in session.places]
+    n, d = (f"{place.clock} at {place.site}" for place in session.places)
     if session.record is None:
-        report.sessions.append(SessionState(session.id, *ends, "planned"))
+        report.sessions.append(SessionState(session.id, n, d, "planned"))
         return
     try:
         one = measure(document.campaign, session, document.folder)
     except ClockgeoError as error:
-        report.sessions.append(SessionState(session.id, *ends, "problem"))
+        report.sessions.append(SessionState(session.id, n, d, "problem"))
         report.problems.append(f"[[session]] {session.id!r}: {error}")
         return
     measured.append(one)
     valid = one.series.y.size * one.record.interval
     report.sessions.append(
-        SessionState(session.id, *ends, "measured", valid, valid / one.record.span)
+        SessionState(session.id, n, d, "measured", valid, valid / one.record.span)
     )
     report.notes.extend(f"[[session]] {session.id!r}: {note}" for note in one.record.notes)
     report.problems.extend(_outside_its_time(session, one))

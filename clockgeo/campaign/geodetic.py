@@ -13,7 +13,7 @@ from clockgeo.campaign.results import Comparison
 from clockgeo.campaign.schema import Campaign, GeoidSource
 from clockgeo.errors import DataError
 from clockgeo.files import shipped_grid
-from clockgeo.gravity import TideSystem, convert_tide_system, number_of, zero_level_shift
+from clockgeo.gravity import Separation, number_from_ellipsoidal_height
 from clockgeo.levelling.session_rows import NumberOf
 from clockgeo.levelling.solution import Solution
 from clockgeo.levelling.stations import Site
@@ -21,7 +21,7 @@ from clockgeo.levelling.stations import Site
 if TYPE_CHECKING:
     from clockgeo.gravity import GeoidModel
 
-__all__ = ["GeodeticNumbers", "compare", "geodetic_numbers", "geoid_path"]
+__all__ = ["GeodeticNumbers", "campaign_geoid", "compare", "geodetic_numbers", "geoid_path"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -67,6 +67,30 @@ def geoid_path(source: GeoidSource, folder: Path) -> Path:
         ) from None
 
 
+def campaign_geoid(source: GeoidSource, folder: Path) -> GeoidModel:
+    """Open the geoid model that `[geoid]` names, with what it states.
+
+    Raises
+    ------
+    ConventionError
+        If the grid's conventions are missing or do not fit.
+    DataError
+        If the grid is not there.
+    """
+    from clockgeo.gravity import open_geoid  # heavy: only where a geoid is named
+
+    return open_geoid(
+        geoid_path(source, folder),
+        quantity=source.quantity,
+        tide_system=source.tide_system,
+        zero_level=source.zero_level,
+        ellipsoid=source.ellipsoid,
+        interpolation=source.interpolation,
+        u=source.u,
+        correlation_length=source.correlation_length,
+    )
+
+
 def geodetic_numbers(
     campaign: Campaign, folder: Path, solved: Sequence[str]
 ) -> GeodeticNumbers | None:
@@ -85,19 +109,8 @@ def geodetic_numbers(
     placed = [site for site in sites if site.ellipsoidal_height is not None]
     if campaign.geoid is None or len(placed) < 2:
         return None
-    from clockgeo.gravity import open_geoid  # heavy: only where a geoid is named
-
     source = campaign.geoid
-    model = open_geoid(
-        geoid_path(source, folder),
-        quantity=source.quantity,
-        tide_system=source.tide_system,
-        zero_level=source.zero_level,
-        ellipsoid=source.ellipsoid,
-        interpolation=source.interpolation,
-        u=source.u,
-        correlation_length=source.correlation_length,
-    )
+    model = campaign_geoid(source, folder)
     latitude = np.array([site.latitude for site in placed])
     longitude = np.array([site.longitude for site in placed])
     separation = np.asarray(model.sample(latitude, longitude))
@@ -118,32 +131,25 @@ def _number(
     campaign: Campaign, model: GeoidModel, site: Site, separation: float
 ) -> tuple[float, float]:
     """C of one site in the campaign's conventions, and dC/dh."""
-    target = campaign.head.tide_system
-    given = campaign.head.ellipsoidal_tide_system or target
-    assert site.ellipsoidal_height is not None
-    ellipsoidal = _in_system("ellipsoidal_height", site.ellipsoidal_height, site, given, target)
-    undulation = _in_system(model.quantity, separation, site, model.tide_system, target)
-    height = ellipsoidal - undulation
-    kind = "normal" if model.quantity == "height_anomaly" else "orthometric"
-    if kind == "orthometric" and site.gravity is None:
-        raise DataError(
-            "an orthometric height needs gravity to become a geopotential number",
-            where=f"site {site.id}",
-            advice="Give the site's gravity, or use a quasigeoid",
-        )
-    number, higher = (
-        number_of(value, kind=kind, latitude=site.latitude, gravity=site.gravity)[0]
-        for value in (height, height + 1.0)
+    head = campaign.head
+    surface = Separation(
+        separation, 0.0, model.quantity, model.tide_system, model.zero_level, model.ellipsoid
     )
-    shift = zero_level_shift(source=model.zero_level, target=campaign.head.zero_level)
-    return number + shift, higher - number
 
+    def at(height: float) -> float:
+        number = number_from_ellipsoidal_height(
+            height,
+            surface,
+            latitude=site.latitude,
+            height_tide_system=head.ellipsoidal_tide_system or head.tide_system,
+            tide_system=head.tide_system,
+            gravity=site.gravity,
+        )
+        return number.counted_from(head.zero_level).value
 
-def _in_system(
-    quantity: str, value: float, site: Site, source: TideSystem, target: TideSystem
-) -> float:
-    return float(
-        convert_tide_system(value, site.latitude, quantity=quantity, source=source, target=target)
+    assert site.ellipsoidal_height is not None
+    return at(site.ellipsoidal_height), at(site.ellipsoidal_height + 1.0) - at(
+        site.ellipsoidal_height
     )
 
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from pathlib import Path
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
@@ -124,7 +124,7 @@ def result_dataset(result: LevelResult) -> xr.Dataset:
             ("tide_correction", "1", "mean tide correction included in y"),
         )
     ]
-    variables = {name: ("site", values, attrs) for name, values, attrs in at_site}
+    variables: dict[str, Any] = {name: ("site", values, attrs) for name, values, attrs in at_site}
     variables |= {name: ("session", values, attrs) for name, values, attrs in of_session}
     variables["covariance"] = (
         ("site", "other_site"),

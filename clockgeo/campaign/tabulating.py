@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Hashable, Iterable, Iterator, Mapping, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from itertools import combinations
 
 import numpy as np
@@ -22,7 +22,7 @@ from clockgeo.gravity import heights_of
 from clockgeo.gravity.zero_levels import zero_level
 from clockgeo.levelling.redshift import potential_from_shift, shift_from_potential
 from clockgeo.levelling.session_rows import NumberOf
-from clockgeo.levelling.solution import Solution
+from clockgeo.levelling.solution import Combination, Solution
 
 __all__ = [
     "budget",
@@ -154,7 +154,7 @@ def covariance_of(solution: Solution, solved: Sequence[str]) -> CovarianceTable:
 
 
 def statistical_parts(
-    solution: Solution, combination: Mapping[Hashable, float], scatter_u: float
+    solution: Solution, combination: Combination, scatter_u: float
 ) -> tuple[float, float]:
     """Parts of u from excess scatter and from noise, in m² s⁻².
 

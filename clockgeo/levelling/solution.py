@@ -21,7 +21,10 @@ from scipy import linalg, stats
 from clockgeo.errors import DataError
 from clockgeo.levelling.linear_model import LinearModel
 
-__all__ = ["Contribution", "Fit", "Solution", "null_space", "solve"]
+__all__ = ["Combination", "Contribution", "Fit", "Solution", "null_space", "solve"]
+
+Combination = Mapping[Any, float]
+"""A linear combination of unknowns: name of the unknown -> coefficient."""
 
 _RANK_TOLERANCE = 1e-9
 """Relative size below which a singular value of a scaled matrix counts as zero."""
@@ -75,7 +78,7 @@ class Solution:
     def _place(self) -> dict[Hashable, int]:
         return {name: i for i, name in enumerate(self.model.unknowns)}
 
-    def weights(self, combination: Mapping[Hashable, float]) -> NDArray[np.float64]:
+    def weights(self, combination: Combination) -> NDArray[np.float64]:
         """Coefficients of a combination of unknowns as a vector of shape (p,); absent ones are 0.
 
         A name that is not an unknown of the model is taken as known without error (the fixed
@@ -87,16 +90,16 @@ class Solution:
                 vector[self._place[name]] += coefficient
         return vector
 
-    def value(self, combination: Mapping[Hashable, float]) -> float:
+    def value(self, combination: Combination) -> float:
         """Estimate of a linear combination of unknowns in m² s⁻²."""
         return float(self.weights(combination) @ self.estimate)
 
-    def u(self, combination: Mapping[Hashable, float]) -> float:
+    def u(self, combination: Combination) -> float:
         """Standard uncertainty of a linear combination of unknowns in m² s⁻²."""
         weights = self.weights(combination)
         return _root(weights @ self.covariance @ weights)
 
-    def contributions(self, combination: Mapping[Hashable, float]) -> list[Contribution]:
+    def contributions(self, combination: Combination) -> list[Contribution]:
         """Split the uncertainty of a combination by effect (signed, noise not included)."""
         loads = (self.weights(combination) @ self.gain) @ self.model.loading
         return [
@@ -104,7 +107,7 @@ class Solution:
             for effect, load in zip(self.model.effects, loads, strict=True)
         ]
 
-    def noise_u(self, combination: Mapping[Hashable, float], kind: str | None = None) -> float:
+    def noise_u(self, combination: Combination, kind: str | None = None) -> float:
         """Part of the uncertainty that comes from the noise of observations (of one `kind`)."""
         weights = self.weights(combination) @ self.gain
         if kind is not None:
