@@ -143,7 +143,7 @@ def systematic_loads(
 ) -> dict[Hashable, float]:
     """All effects that act on a session, with sign, in m² s⁻² (clocks, links, tide, transfer)."""
     loads: dict[Hashable, float] = {}
-    owners = [
+    owners: list[tuple[Clock | Link, float]] = [
         (mean.numerator, 1.0),
         (mean.denominator, -1.0),
         *((link, 1.0) for link in mean.links),
