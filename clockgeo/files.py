@@ -12,11 +12,22 @@ from collections.abc import Iterator
 from contextlib import contextmanager
 from enum import Enum
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from clockgeo.errors import OutputError
 
-__all__ = ["json_text", "sha256_of", "shipped_grid", "whole_file", "write_text"]
+if TYPE_CHECKING:
+    import xarray as xr
+
+__all__ = [
+    "json_text",
+    "netcdf_file",
+    "sha256_of",
+    "shipped_grid",
+    "whole_file",
+    "write_dataset",
+    "write_text",
+]
 
 
 @contextmanager
@@ -73,6 +84,46 @@ def write_text(path: str | Path, text: str, *, replace: bool = False) -> None:
     """Write UTF-8 text with `\\n` line ends, whole or not at all (see `whole_file`)."""
     with whole_file(path, replace=replace) as partial:
         partial.write_text(text, encoding="utf-8", newline="\n")
+
+
+@contextmanager
+def netcdf_file(path: Path) -> Iterator[Any]:
+    """Give an empty netCDF-4 dataset; write it to `path` when the block ends well.
+
+    The dataset grows in memory and is written in one go: the HDF5 library itself can take the whole
+    process down when a disk fills up.
+
+    Yields
+    ------
+    netCDF4.Dataset
+    """
+    import netCDF4
+
+    dataset = netCDF4.Dataset(path.name, "w", format="NETCDF4", memory=1)
+    try:
+        yield dataset
+    finally:
+        content = dataset.close()
+    path.write_bytes(content)
+
+
+def write_dataset(
+    path: str | Path, dataset: xr.Dataset, *, replace: bool = False, **options: Any
+) -> None:
+    """Write an xarray dataset as netCDF-4, whole or not at all (see `whole_file`).
+
+    Parameters
+    ----------
+    path : path
+    dataset : xarray.Dataset
+    replace : bool
+        Whether an existing file may be replaced.
+    **options
+        For `xarray.Dataset.to_netcdf`: format, encoding.
+    """
+    with whole_file(path, replace=replace) as partial:
+        # In memory first, for the same reason as in `netcdf_file`.
+        partial.write_bytes(dataset.to_netcdf(engine="netcdf4", **options))
 
 
 def sha256_of(path: str | Path) -> str:

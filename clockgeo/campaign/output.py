@@ -9,7 +9,7 @@ import numpy as np
 
 from clockgeo.campaign.results import LevelResult
 from clockgeo.errors import DataError, OutputError
-from clockgeo.files import json_text, whole_file, write_text
+from clockgeo.files import json_text, write_dataset, write_text
 
 if TYPE_CHECKING:
     import xarray as xr
@@ -55,8 +55,7 @@ def write_result(result: LevelResult, folder: Path, *, replace: bool = False) ->
     """Write `result.json` and `result.nc` into `folder`; return their paths."""
     json_path, netcdf_path = folder / RESULT_JSON, folder / RESULT_NETCDF
     write_text(json_path, json_text(result), replace=replace)
-    with whole_file(netcdf_path, replace=replace) as partial:
-        result_dataset(result).to_netcdf(partial, engine="netcdf4", format="NETCDF4_CLASSIC")
+    write_dataset(netcdf_path, result_dataset(result), replace=replace, format="NETCDF4_CLASSIC")
     return [json_path, netcdf_path]
 
 

@@ -8,6 +8,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from clockgeo.files import netcdf_file
 from clockgeo.frequency.layout import RecordLayout
 from clockgeo.frequency.netcdf_rows import TIME_VARIABLE, VALUE_VARIABLE
 
@@ -34,9 +35,7 @@ def write_netcdf(path: Path, columns: dict[str, Any], layout: RecordLayout) -> N
     layout : RecordLayout
         Names of the variables; ``time`` and ``fractional_frequency`` where it gives numbers.
     """
-    import netCDF4
-
-    with netCDF4.Dataset(path, "w", format="NETCDF4") as dataset:
+    with netcdf_file(path) as dataset:
         dataset.Conventions = "CF-1.12"
         dataset.title = "Frequency record"
         for key in ("interval", "weighting"):

@@ -13,7 +13,7 @@ import numpy as np
 from pydantic import ValidationError
 
 from clockgeo.errors import DataError
-from clockgeo.files import json_text, whole_file, write_text
+from clockgeo.files import json_text, netcdf_file, whole_file, write_text
 from clockgeo.frequency.diagnosis import Finding
 from clockgeo.frequency.netcdf_rows import TIME_VARIABLE, VALUE_VARIABLE
 from clockgeo.frequency.netcdf_writing import write_time
@@ -165,10 +165,8 @@ def _csv(screenings: Sequence[Screening]) -> str:
 
 
 def _write_netcdf(path: Path, screening: Screening) -> None:
-    import netCDF4
-
     record = screening.record
-    with netCDF4.Dataset(path, "w", format="NETCDF4") as dataset:
+    with netcdf_file(path) as dataset:
         dataset.Conventions = "CF-1.12"
         dataset.title = f"Screening of the frequency record {record.name}"
         dataset.interval = record.interval

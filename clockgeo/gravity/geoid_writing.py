@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from clockgeo.errors import DataError
-from clockgeo.files import whole_file
+from clockgeo.files import write_dataset
 from clockgeo.gravity.geoid_model import GeoidModel
 from clockgeo.gravity.grid_dataset import dataset_of_tile
 from clockgeo.gravity.grid_ggxf_writing import write_ggxf
@@ -115,5 +115,4 @@ def _write_netcdf(
             f"values are multiples of {resolution:g} m, at most {resolution / 2:g} m off"
         )
     encoding |= {axis: {"_FillValue": None} for axis in ("latitude", "longitude")}
-    with whole_file(target, replace=replace) as partial:
-        dataset.to_netcdf(partial, engine="netcdf4", encoding=encoding)
+    write_dataset(target, dataset, replace=replace, encoding=encoding)

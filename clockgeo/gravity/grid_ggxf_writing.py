@@ -10,7 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from clockgeo.errors import ConventionError, DataError
-from clockgeo.files import whole_file
+from clockgeo.files import netcdf_file, whole_file
 from clockgeo.gravity.geoid_model import GeoidModel
 from clockgeo.gravity.grid_ggxf import HEIGHT_PARAMETERS, OWN_PREFIX, RATE_PARAMETER, YEAR
 from clockgeo.gravity.grid_tile import GridTile
@@ -54,8 +54,6 @@ def write_ggxf(
     The standard has no field for tide system, zero level and error model. They are written as
     global attributes that begin with `clockgeo_`, and in words as the remark of the target CRS.
     """
-    import netCDF4
-
     if model.ellipsoid not in _CRS_CODES:
         raise ConventionError(
             "no CRS is known for the ellipsoid of the model",
@@ -64,7 +62,7 @@ def write_ggxf(
             allowed=", ".join(_CRS_CODES),
         )
     parents = _parents(model)
-    with whole_file(path, replace=replace) as partial, netCDF4.Dataset(partial, "w") as out:
+    with whole_file(path, replace=replace) as partial, netcdf_file(partial) as out:
         for name, value in _head(model):
             out.setncattr(name, value)
         groups: dict[int, Any] = {-1: out.createGroup("geoid")}

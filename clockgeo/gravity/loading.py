@@ -155,7 +155,7 @@ def read_load_table(path: str | Path, *, gravity: float | None = None) -> LoadTa
 
 def write_load_table(table: LoadTable, path: str | Path, *, replace: bool = False) -> None:
     """Write a loading table as CSV, or as netCDF if the suffix is ``.nc``; whole or not at all."""
-    from clockgeo.files import whole_file, write_text
+    from clockgeo.files import write_dataset, write_text
 
     columns = (*_REQUIRED, *_OPTIONAL)
     rows = [[getattr(wave, column) for column in columns] for wave in table.constituents]
@@ -169,8 +169,8 @@ def write_load_table(table: LoadTable, path: str | Path, *, replace: bool = Fals
         name: ("wave", np.array(values, dtype=object if name in _WORDS else np.float64))
         for name, values in zip(columns, zip(*rows, strict=True), strict=True)
     }
-    with whole_file(path, replace=replace) as partial:
-        xarray.Dataset(data, attrs={"title": "harmonic loading of one place"}).to_netcdf(partial)
+    dataset = xarray.Dataset(data, attrs={"title": "harmonic loading of one place"})
+    write_dataset(path, dataset, replace=replace)
 
 
 def uplift_difference(rate: float, years: float, *, gravity: float) -> float:

@@ -10,7 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from clockgeo.errors import DataError
-from clockgeo.files import whole_file, write_text
+from clockgeo.files import write_dataset, write_text
 from clockgeo.gravity.tide_model import SiteTide
 from clockgeo.gravity.tides import sky_positions, tidal_potential_from
 from clockgeo.times import DAY_NS, SECOND_NS, iso_utc, utc_julian_date
@@ -134,8 +134,7 @@ def write_tide_series(
     if series_suffix(path) == ".csv":
         write_text(path, _csv(series, columns), replace=replace)
     else:
-        with whole_file(path, replace=replace) as partial:
-            _dataset(series, columns).to_netcdf(partial)
+        write_dataset(path, _dataset(series, columns), replace=replace)
 
 
 def series_suffix(path: str | Path) -> str:
