@@ -8,7 +8,7 @@ import hashlib
 import json
 import math
 import secrets
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
 from enum import Enum
 from pathlib import Path
@@ -108,9 +108,14 @@ def netcdf_file(path: Path) -> Iterator[Any]:
 
 
 def write_dataset(
-    path: str | Path, dataset: xr.Dataset, *, replace: bool = False, **options: Any
+    path: str | Path,
+    dataset: xr.Dataset,
+    *,
+    replace: bool = False,
+    classic: bool = False,
+    encoding: Mapping[Any, Any] | None = None,
 ) -> None:
-    """Write an xarray dataset as netCDF-4, whole or not at all (see `whole_file`).
+    """Write an xarray dataset as netCDF, whole or not at all (see `whole_file`).
 
     Parameters
     ----------
@@ -118,12 +123,16 @@ def write_dataset(
     dataset : xarray.Dataset
     replace : bool
         Whether an existing file may be replaced.
-    **options
-        For `xarray.Dataset.to_netcdf`: format, encoding.
+    classic : bool
+        Write the classic format, whose bytes depend on nothing but the content; netCDF-4, which
+        can compress and hold 64-bit integers, also notes the time of writing.
+    encoding : mapping, optional
+        Of `xarray.Dataset.to_netcdf`.
     """
     with whole_file(path, replace=replace) as partial:
         # In memory first, for the same reason as in `netcdf_file`.
-        partial.write_bytes(dataset.to_netcdf(engine="netcdf4", **options))
+        engine: Any = "scipy" if classic else "netcdf4"
+        partial.write_bytes(dataset.to_netcdf(engine=engine, encoding=encoding))
 
 
 def sha256_of(path: str | Path) -> str:

@@ -3,21 +3,17 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field
-from datetime import datetime
 from pathlib import Path
 
 from clockgeo.campaign.document import Document, read_document
 from clockgeo.campaign.geodetic import geodetic_numbers
 from clockgeo.campaign.measuring import Measured, measure
+from clockgeo.campaign.plausibility import record_problems
 from clockgeo.campaign.schema import Session
 from clockgeo.errors import CampaignError, ClockgeoError
 from clockgeo.progress import track
-from clockgeo.times import SECOND_NS, iso_utc, tai_from_iso
 
 __all__ = ["CheckReport", "SessionState", "check_campaign"]
-
-_SLACK_S = 3600.0
-"""How far a record may reach beyond its session's stated times before it is questioned."""
 
 
 @dataclass(frozen=True)
@@ -71,7 +67,7 @@ def check_campaign(path: str | Path) -> CheckReport:
     measured: list[Measured] = []
     for session in track(document.campaign.sessions, "checking records"):
         _check_session(document, session, report, measured)
-    _check_places(measured, report)
+    report.problems.extend(record_problems(measured))
     try:
         geodetic_numbers(document.campaign, document.folder, _sites(document))
     except ClockgeoError as error:
@@ -102,44 +98,3 @@ def _check_session(
         SessionState(session.id, n, d, "measured", valid, valid / one.record.span)
     )
     report.notes.extend(f"[[session]] {session.id!r}: {note}" for note in one.record.notes)
-    report.problems.extend(_outside_its_time(session, one))
-
-
-def _outside_its_time(session: Session, one: Measured) -> list[str]:
-    """A record that does not lie in its session's stated time belongs to another session."""
-    for stated, found, sign in (
-        (session.start, one.record.start, 1.0),
-        (session.planned_stop, one.record.stop, -1.0),
-    ):
-        if stated is None:
-            continue
-        early = sign * (_tai(stated) - found) / SECOND_NS
-        if early > _SLACK_S:
-            word = "starts" if sign > 0 else "stops"
-            problem = (
-                f"[[session]] {session.id!r}: its record {word} at {iso_utc(found, digits=0)}, "
-                f"outside the stated {stated:%Y-%m-%dT%H:%MZ}; correct the times or the file"
-            )
-            return [problem]
-    return []
-
-
-def _tai(instant: datetime) -> int:
-    return tai_from_iso(instant.isoformat())
-
-
-def _check_places(measured: list[Measured], report: CheckReport) -> None:
-    """A clock cannot be at two sites while two records run."""
-    for place, first in enumerate(measured):
-        for second in measured[place + 1 :]:
-            overlap = (
-                first.record.start < second.record.stop and second.record.start < first.record.stop
-            )
-            for here in first.session.places if overlap else ():
-                for there in second.session.places:
-                    if here.clock == there.clock and here.site != there.site:
-                        report.problems.append(
-                            f"[[session]] {second.session.id!r}: clock {here.clock!r} is at "
-                            f"{there.site!r} while the record of {first.session.id!r} has it at "
-                            f"{here.site!r}"
-                        )

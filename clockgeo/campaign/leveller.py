@@ -14,6 +14,7 @@ from clockgeo.campaign.document import Document
 from clockgeo.campaign.evidence import Evidence
 from clockgeo.campaign.geodetic import compare, geodetic_numbers, geoid_path
 from clockgeo.campaign.measuring import Measured, measure
+from clockgeo.campaign.plausibility import record_problems
 from clockgeo.campaign.results import (
     Conventions,
     FitResult,
@@ -31,7 +32,7 @@ from clockgeo.campaign.tabulating import (
     site_pairs,
     site_results,
 )
-from clockgeo.errors import DataError
+from clockgeo.errors import CampaignError, DataError
 from clockgeo.files import sha256_of
 from clockgeo.gravity import CAUTION, zero_level
 from clockgeo.levelling.linear_model import LinearModel, ModelBuilder
@@ -86,6 +87,8 @@ def level(
     ------
     DataError
         If a record cannot be used, no session has one, or the sessions do not connect the sites.
+    CampaignError
+        If records contradict the document: their times, a clock in two places, the nominal ratio.
     ConventionError
         If zero levels or tide systems do not fit together.
     """
@@ -98,6 +101,7 @@ def level(
             where=str(document.path),
             advice="Add records to the sessions, or draw some with clockgeo simulate",
         )
+    _refuse_unknown(without, campaign)
     notes = [f"session {name} was left out on request" for name in without]
     notes += [
         f"session {session.id} has no record yet and was left out"
@@ -108,9 +112,23 @@ def level(
         measure(campaign, session, document.folder, skip_bad_rows=skip_bad_rows)
         for session in track(measured_ones, "reading records")
     ]
+    problems = record_problems(measured)
+    if problems:
+        raise CampaignError(problems, where=str(document.path))
     return level_measured(
         campaign, measured, folder=document.folder, notes=notes, path=document.path
     )
+
+
+def _refuse_unknown(names: Collection[str], campaign: Campaign) -> None:
+    known = [session.id for session in campaign.sessions]
+    unknown = [name for name in names if name not in known]
+    if unknown:
+        raise DataError(
+            "there is no such session to leave out",
+            value=", ".join(unknown),
+            allowed=f"Sessions: {', '.join(known)}",
+        )
 
 
 def level_measured(

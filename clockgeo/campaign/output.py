@@ -55,7 +55,7 @@ def write_result(result: LevelResult, folder: Path, *, replace: bool = False) ->
     """Write `result.json` and `result.nc` into `folder`; return their paths."""
     json_path, netcdf_path = folder / RESULT_JSON, folder / RESULT_NETCDF
     write_text(json_path, json_text(result), replace=replace)
-    write_dataset(netcdf_path, result_dataset(result), replace=replace, format="NETCDF4_CLASSIC")
+    write_dataset(netcdf_path, result_dataset(result), replace=replace, classic=True)
     return [json_path, netcdf_path]
 
 

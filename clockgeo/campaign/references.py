@@ -38,7 +38,7 @@ def reference_problems(raw: dict[str, Any], campaign: Campaign | None) -> list[s
     ]
     if campaign is not None and not problems:
         problems += [*_reference_site(campaign), *_sessions(campaign), *_clocks(campaign)]
-        problems += [*_truth(campaign), *_targets(campaign)]
+        problems += [*_truth(campaign), *_targets(campaign), *_conventions(campaign)]
     return problems
 
 
@@ -80,6 +80,16 @@ def _reference_site(campaign: Campaign) -> Iterator[str]:
         yield (
             f"[[site]] {head.reference_site!r}: the reference site needs a geopotential_number; "
             "give its C in m2 s-2 (0 for heights relative to it)"
+        )
+
+
+def _conventions(campaign: Campaign) -> Iterator[str]:
+    """GNSS heights are usually tide-free, whatever the campaign counts in: to be stated."""
+    placed = any(site.ellipsoidal_height is not None for site in campaign.sites)
+    if campaign.geoid is not None and placed and campaign.head.ellipsoidal_tide_system is None:
+        yield (
+            "[campaign], ellipsoidal_tide_system: missing; with a [geoid] it must be stated "
+            "(mean_tide, zero_tide or tide_free; GNSS heights are usually tide_free)"
         )
 
 

@@ -23,8 +23,8 @@ __all__ = [
 ]
 
 Json = Annotated[bool, typer.Option("--json", help="Print one JSON object and nothing else.")]
-Quiet = Annotated[bool, typer.Option("--quiet", help="Print nothing but errors.")]
-Verbose = Annotated[bool, typer.Option("--verbose", help="Print more of the working.")]
+Quiet = Annotated[bool, typer.Option("--quiet", "-q", help="Print nothing but errors.")]
+Verbose = Annotated[bool, typer.Option("--verbose", "-v", help="Print more of the working.")]
 Force = Annotated[bool, typer.Option("--force", help="Replace results that exist already.")]
 OutFolder = Annotated[Path, typer.Option("--out", help="Folder for the results; made if missing.")]
 OutFile = Annotated[Path | None, typer.Option("--out", help="File for the result.")]
