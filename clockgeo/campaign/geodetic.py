@@ -88,6 +88,7 @@ def campaign_geoid(source: GeoidSource, folder: Path) -> GeoidModel:
         interpolation=source.interpolation,
         u=source.u,
         correlation_length=source.correlation_length,
+        fitted_to=source.fitted_to,
     )
 
 
@@ -123,8 +124,13 @@ def geodetic_numbers(
         sites=tuple(site.id for site in placed),
         values=values,
         covariance=np.outer(slopes, slopes) * (errors + own),
-        source=f"ellipsoidal heights and {source.grid}",
+        source=f"ellipsoidal heights and {source.grid}{_fit(model)}",
     )
+
+
+def _fit(model: GeoidModel) -> str:
+    """Say it where a model owes its values to levelling: it then speaks for that datum."""
+    return f", fitted to {model.fitted_to}" if model.hybrid and model.fitted_to else ""
 
 
 def _number(

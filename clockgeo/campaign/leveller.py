@@ -24,6 +24,7 @@ from clockgeo.campaign.results import (
     SessionResult,
 )
 from clockgeo.campaign.schema import Campaign
+from clockgeo.campaign.site_tides import tide_tables
 from clockgeo.campaign.statistics import SessionStatistics, session_statistics
 from clockgeo.campaign.tabulating import (
     budget,
@@ -166,6 +167,7 @@ def level_measured(
     if campaign.geoid is not None and geodetic is not None:
         grid = geoid_path(campaign.geoid, folder)
         inputs.append(Input(path=campaign.geoid.grid, sha256=sha256_of(grid)))
+    inputs += [Input(path=name, sha256=sha256_of(folder / name)) for name in tide_tables(campaign)]
     if path is not None:
         inputs.append(Input(path=path.name, sha256=sha256_of(path)))
     result = LevelResult(

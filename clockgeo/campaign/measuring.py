@@ -10,6 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from clockgeo.campaign.schema import Campaign, Session
+from clockgeo.campaign.site_tides import site_tide, years_from_epoch
 from clockgeo.errors import DataError
 from clockgeo.frequency import (
     Record,
@@ -20,9 +21,8 @@ from clockgeo.frequency import (
     read_record,
     screen,
 )
-from clockgeo.gravity import Place, SiteTide
 from clockgeo.levelling.session_rows import SessionMean
-from clockgeo.levelling.stations import Clock, Site
+from clockgeo.levelling.stations import Clock
 from clockgeo.levelling.tide_correction import TideCorrection, tide_correction
 
 __all__ = [
@@ -93,6 +93,7 @@ class Measured:
             start_ns=self.record.start,
             y=self.y,
             u_tide=self.tide.u,
+            years=years_from_epoch(campaign, (self.record.start + self.record.stop) // 2),
         )
 
 
@@ -121,7 +122,9 @@ def nominal_ratio_of(campaign: Campaign, session: Session) -> Fraction:
     return nominal_frequency_of(n) / nominal_frequency_of(d)
 
 
-def tide_of(campaign: Campaign, session: Session, tai_ns: NDArray[np.int64]) -> TideCorrection:
+def tide_of(
+    campaign: Campaign, session: Session, tai_ns: NDArray[np.int64], *, folder: Path
+) -> TideCorrection:
     """Correction that removes the time-variable tide from a session's y at the given epochs.
 
     Parameters
@@ -132,6 +135,8 @@ def tide_of(campaign: Campaign, session: Session, tai_ns: NDArray[np.int64]) -> 
         Says which sites are compared.
     tai_ns : int64 array, shape (N,)
         Epochs in TAI nanoseconds.
+    folder : Path
+        Where the names of tables for pole tide and loading start.
 
     Returns
     -------
@@ -141,11 +146,8 @@ def tide_of(campaign: Campaign, session: Session, tai_ns: NDArray[np.int64]) -> 
     n, d = (campaign.site(place.site) for place in session.places)
     if campaign.head.tide == "none" or n.id == d.id or tai_ns.size == 0:
         return TideCorrection.none(tai_ns.size)
-    return tide_correction(tai_ns, numerator=_tide_at(n), denominator=_tide_at(d))
-
-
-def _tide_at(site: Site) -> SiteTide:
-    return SiteTide(Place(site.latitude, site.longitude, site.ellipsoidal_height or 0.0))
+    at_n, at_d = (site_tide(campaign, site, folder) for site in (n, d))
+    return tide_correction(tai_ns, numerator=at_n, denominator=at_d)
 
 
 def measure(
@@ -183,10 +185,12 @@ def measure(
         carrier=nominal_frequency_of(campaign.clock(session.numerator.clock)),
         skip_bad_rows=skip_bad_rows,
     )
-    return measure_record(campaign, session, record)
+    return measure_record(campaign, session, record, folder=folder)
 
 
-def measure_record(campaign: Campaign, session: Session, record: Record) -> Measured:
+def measure_record(
+    campaign: Campaign, session: Session, record: Record, *, folder: Path
+) -> Measured:
     """Screen and correct a record that is already in memory; otherwise as `measure`."""
     n = campaign.clock(session.numerator.clock)
     rules = session.screening or campaign.head.screening
@@ -199,7 +203,7 @@ def measure_record(campaign: Campaign, session: Session, record: Record) -> Meas
             advice="Look at it with clockgeo screen, and at the screening rules",
         )
     valid = screening.valid
-    usable_tide = tide_of(campaign, session, record.tai_ns[record.usable])
+    usable_tide = tide_of(campaign, session, record.tai_ns[record.usable], folder=folder)
     correction = _systematic_correction(campaign, session)
     corrected = record.y[record.usable] + usable_tide.at_epochs + correction
     counted = valid[record.usable]

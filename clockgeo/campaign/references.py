@@ -94,6 +94,10 @@ def _conventions(campaign: Campaign) -> Iterator[str]:
 
 
 def _sessions(campaign: Campaign) -> Iterator[str]:
+    if campaign.head.epoch is None:
+        for site in campaign.sites:
+            if site.uplift_rate or site.u_uplift_rate:
+                yield f"[[site]] {site.id!r}, uplift_rate: needs the epoch in [campaign]"
     for session in campaign.sessions:
         place = f"[[session]] {session.id!r}"
         n, d = session.places

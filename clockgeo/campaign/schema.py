@@ -63,6 +63,8 @@ class Head(Table):
     """Epoch of the heights and potentials."""
     tide: Literal["solid_earth", "none"] = "solid_earth"
     """Whether the time-variable solid-Earth tide is removed epoch by epoch."""
+    pole_coordinates: str | None = None
+    """File with observed coordinates of the rotation pole; adds the pole tide."""
     scatter: Literal["estimate", "none"] = "estimate"
     """Whether excess scatter between sessions is estimated and added to u."""
     screening: ScreeningRules = ScreeningRules()
@@ -151,6 +153,8 @@ class GeoidSource(Table):
     """Standard uncertainty of a value in m."""
     correlation_length: Positive | None = None
     """Distance in m over which the model's errors are alike."""
+    fitted_to: str | None = None
+    """Levelling datum that a hybrid model was fitted to; such a model is no check of it."""
 
 
 class Difference(Table):

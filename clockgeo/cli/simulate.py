@@ -39,7 +39,9 @@ def command(
     document = read_document(campaign)
     folder = out if out is not None else document.folder
     with progress_shown(quiet=quiet or json):
-        written = simulate_records(document.campaign, seed=seed, folder=folder, replace=force)
+        written = simulate_records(
+            document.campaign, seed=seed, folder=folder, tables=document.folder, replace=force
+        )
     if json:
         print_json({"schema": "clockgeo/simulate/1", "seed": seed, "records": written})
     else:

@@ -18,7 +18,13 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from clockgeo.gravity import TideSystem, marker_to_atoms, normal_gravity, tide_system_shift
+from clockgeo.gravity import (
+    TideSystem,
+    marker_to_atoms,
+    normal_gravity,
+    tide_system_shift,
+    uplift_difference,
+)
 from clockgeo.levelling.effects import EffectKey, loading_of
 from clockgeo.levelling.linear_model import ModelBuilder
 from clockgeo.levelling.redshift import potential_from_shift
@@ -41,6 +47,7 @@ __all__ = [
 
 TIDE = "tide model"
 SITE_TRANSFER = "marker to atoms"
+UPLIFT = "uplift rate"
 _U_UNMEASURED_GRAVITY = 2e-3
 """m s⁻²: what normal gravity may be off at a place where gravity was not measured (200 mGal)."""
 
@@ -62,6 +69,8 @@ class SessionMean:
     u_tide : float
         Standard uncertainty of the session's tide correction; its phase is unknown, so it is a
         variable of the session's own.
+    years : float
+        Time from the epoch of the geopotential numbers to the session, a; 0 without an epoch.
     """
 
     id: str
@@ -73,6 +82,7 @@ class SessionMean:
     start_ns: int
     y: float
     u_tide: float = 0.0
+    years: float = 0.0
 
 
 @dataclass(frozen=True)
@@ -156,7 +166,7 @@ def systematic_loads(
     if mean.u_tide:
         loads[EffectKey("solid Earth", TIDE, mean.id)] = potential_from_shift(mean.u_tide)
     for clock, site, sign in _placed(mean):
-        for key, load in _transfer_loads(site, clock).items():
+        for key, load in _transfer_loads(site, clock, mean.years).items():
             loads[key] = loads.get(key, 0.0) + sign * load
     return {key: load for key, load in loads.items() if load}
 
@@ -190,25 +200,31 @@ def transfer_difference(mean: SessionMean, tide_system: TideSystem) -> float:
     Returns
     -------
     float
-        Numerator minus denominator of: height of the atoms above the marker, plus the step from
-        `tide_system` to the mean-tide system of averaged clock data.
+        Numerator minus denominator of: height of the atoms above the marker, plus the uplift of
+        the marker since the epoch, plus the step from `tide_system` to the mean-tide system of
+        averaged clock data.
     """
-    return sum(sign * _transfer(site, clock, tide_system) for clock, site, sign in _placed(mean))
+    return sum(
+        sign * _transfer(site, clock, tide_system, mean.years)
+        for clock, site, sign in _placed(mean)
+    )
 
 
-def _transfer(site: Site, clock: Clock, tide_system: TideSystem) -> float:
+def _transfer(site: Site, clock: Clock, tide_system: TideSystem, years: float) -> float:
     gravity, _ = _gravity(site)
     rise = site.atoms_height(clock.id)
     to_atoms = marker_to_atoms(rise, gravity=gravity, gradient=site.gravity_gradient)
     to_mean_tide = tide_system_shift(
         "geopotential_number", site.latitude, source=tide_system, target=TideSystem.MEAN_TIDE
     )
-    return to_atoms.geopotential_difference + float(to_mean_tide)
+    uplift = uplift_difference(site.uplift_rate, years, gravity=gravity)
+    return to_atoms.geopotential_difference + uplift + float(to_mean_tide)
 
 
-def _transfer_loads(site: Site, clock: Clock) -> dict[EffectKey, float]:
+def _transfer_loads(site: Site, clock: Clock, years: float) -> dict[EffectKey, float]:
     gravity, u_gravity = _gravity(site)
     return {
+        EffectKey(site.id, UPLIFT): uplift_difference(site.u_uplift_rate, years, gravity=gravity),
         EffectKey(clock.id, f"{SITE_TRANSFER}, height", site.id): gravity
         * site.u_atoms_above_marker,
         EffectKey(site.id, f"{SITE_TRANSFER}, gravity"): site.atoms_height(clock.id) * u_gravity,

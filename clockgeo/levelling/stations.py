@@ -37,6 +37,12 @@ class Site(Table):
     """Standard uncertainty of gravity in m s⁻²."""
     gravity_gradient: float | None = Field(default=None, ge=-1e-5, le=1e-5)
     """Measured change of gravity with height in s⁻²; the free-air value if absent."""
+    load: str | None = None
+    """File with the harmonic loading of the place (oceans and others), for the tide."""
+    uplift_rate: float = Field(default=0.0, ge=-1.0, le=1.0)
+    """Steady rise of the marker in m a⁻¹; brings sessions to the epoch of the campaign."""
+    u_uplift_rate: Uncertainty = 0.0
+    """Its standard uncertainty in m a⁻¹."""
     geopotential_number: float | None = None
     """Known C of the marker in m² s⁻²."""
     u_geopotential_number: Uncertainty = 0.0

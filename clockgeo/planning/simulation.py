@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 
 from clockgeo.campaign.measuring import nominal_ratio_of, tide_of
 from clockgeo.campaign.schema import Campaign, Session, Truth
+from clockgeo.campaign.site_tides import years_from_epoch
 from clockgeo.errors import DataError
 from clockgeo.frequency import NoiseModel, Record, draw_noise, write_record
 from clockgeo.levelling.redshift import shift_from_potential
@@ -67,7 +68,7 @@ class SimulatedSession:
 
 
 def simulate_records(
-    campaign: Campaign, *, seed: int, folder: Path, replace: bool = False
+    campaign: Campaign, *, seed: int, folder: Path, tables: Path, replace: bool = False
 ) -> list[Path]:
     """Draw and write the record of every session that names one.
 
@@ -79,6 +80,8 @@ def simulate_records(
         Seed of the generator; equal input and seed give equal bytes.
     folder : path
         Folder that the records' file names start from.
+    tables : path
+        Folder that the names of tables for the tide start from: the document's.
     replace : bool
         Whether existing records may be replaced.
 
@@ -94,7 +97,7 @@ def simulate_records(
     """
     truth = _truth(campaign)
     written: list[Path] = []
-    for drawn in simulate_sessions(campaign, np.random.default_rng(seed)):
+    for drawn in simulate_sessions(campaign, np.random.default_rng(seed), tables=tables):
         layout = drawn.session.record
         if layout is None:
             continue
@@ -121,7 +124,7 @@ def simulate_records(
 
 
 def simulate_sessions(
-    campaign: Campaign, generator: np.random.Generator
+    campaign: Campaign, generator: np.random.Generator, *, tables: Path
 ) -> Iterator[SimulatedSession]:
     """Yield one drawn record per session, in the document's order.
 
@@ -132,6 +135,8 @@ def simulate_sessions(
     generator : numpy.random.Generator
         Source of all chance; each clock, link, effect and session has its own stream, so that
         adding a session leaves the others as they were.
+    tables : path
+        Folder that the names of tables for the tide start from: the document's.
     """
     truth = _truth(campaign)
     timeline = _Timeline.of(campaign, truth)
@@ -153,7 +158,7 @@ def simulate_sessions(
         first, count = timeline.place(session)
         y = offset + _session_noise(session, noise, slice(first, first + count))
         stamps = mean.start_ns + np.arange(count) * timeline.step_ns
-        y -= tide_of(campaign, session, stamps).at_epochs
+        y -= tide_of(campaign, session, stamps, folder=tables).at_epochs
         yield _with_gaps(session, truth, stamps, y, stream)
 
 
@@ -232,6 +237,7 @@ def _true_mean(campaign: Campaign, session: Session) -> SessionMean:
         links=tuple(campaign.link(link) for link in session.links),
         start_ns=_window(session)[0],
         y=0.0,
+        years=years_from_epoch(campaign, sum(_window(session)) // 2),
     )
 
 

@@ -26,8 +26,10 @@ def run(runs: int, path: Path) -> None:
     numbers = campaign.truth.geopotential_numbers
     results = []
     for seed in range(runs):
-        drawn = simulate_sessions(campaign, np.random.default_rng(seed))
-        measured = [measure_record(campaign, one.session, one.record()) for one in drawn]
+        drawn = simulate_sessions(campaign, np.random.default_rng(seed), tables=path.parent)
+        measured = [
+            measure_record(campaign, one.session, one.record(), folder=path.parent) for one in drawn
+        ]
         result = level_measured(campaign, measured, folder=document.folder).result
         first = result.differences[0]
         truth = numbers[first.to_site] - numbers[first.from_site]

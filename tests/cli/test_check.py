@@ -39,7 +39,11 @@ def test_every_problem_of_the_records_is_told_at_once(saddle):
     assert [one["state"] for one in told["sessions"]].count("problem") == 2
     for problem, words in zip(
         told["problems"],
-        ("'local 2': the record's file does not exist", "'saddle 1': the file is empty", "'local 4'"),
+        (
+            "'local 2': the record's file does not exist",
+            "'saddle 1': the file is empty",
+            "'local 4'",
+        ),
         strict=True,
     ):
         assert words in problem
