@@ -106,6 +106,7 @@ def _session(number: int, place: tuple[str, str, str, float, float]) -> SessionR
         y=1.5168e-13 * (site != "harbel") + (number - 2.5) * 1e-18,
         u_statistical=5.2e-18,
         u_systematic=8.4e-18,
+        u_scatter=1.1e-18,
         u=9.9e-18,
         uptime=uptime,
         valid_seconds=3600.0 * hours * uptime,

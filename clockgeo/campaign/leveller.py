@@ -243,7 +243,8 @@ def _session_results(
     residual = dict(zip(solution.model.rows, solution.residuals, strict=True))
     results = []
     for place, one in enumerate(measured):
-        u_statistical = float(np.sqrt(statistics.covariance[place, place]))
+        variance = float(statistics.covariance[place, place])
+        u_statistical = float(np.sqrt(max(variance - statistics.scatter_u**2, 0.0)))
         u_systematic = shift_from_potential(float(systematic[place]))
         n, d = one.session.places
         valid = float(one.series.y.size * one.record.interval)
@@ -259,7 +260,8 @@ def _session_results(
                 y=one.y,
                 u_statistical=u_statistical,
                 u_systematic=u_systematic,
-                u=float(np.hypot(u_statistical, u_systematic)),
+                u_scatter=statistics.scatter_u,
+                u=float(np.hypot(np.sqrt(variance), u_systematic)),
                 uptime=valid / one.record.span,
                 valid_seconds=valid,
                 span_seconds=one.record.span,

@@ -118,6 +118,7 @@ def result_dataset(result: LevelResult) -> xr.Dataset:
             ("y", "1", "mean fractional frequency, numerator over denominator"),
             ("u_statistical", "1", "standard uncertainty of y from statistics"),
             ("u_systematic", "1", "standard uncertainty of y from systematic effects"),
+            ("u_scatter", "1", "standard uncertainty of y from excess scatter between sessions"),
             ("u", "1", "standard uncertainty of y"),
             ("uptime", "1", "share of valid time"),
             ("tide_correction", "1", "mean tide correction included in y"),

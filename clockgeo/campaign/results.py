@@ -81,8 +81,12 @@ class SessionResult(Table):
     y: float
     """Mean over valid epochs after all corrections."""
     u_statistical: float
+    """From the noise of the session itself."""
     u_systematic: float
+    u_scatter: float
+    """Excess scatter between sessions, the same for all."""
     u: float
+    """All three together."""
     uptime: float
     valid_seconds: float
     span_seconds: float

@@ -90,13 +90,14 @@ def _tell(result: LevelResult, *, verbose: bool) -> None:
     )
     show_table(
         "Sessions (1e-18)",
-        ["session", "y", "u stat.", "u syst.", "tide", "residual", "uptime", "flagged"],
+        ["session", "y", "u stat.", "u syst.", "u scatter", "tide", "residual", "uptime", "flagged"],
         [
             (
                 s.id,
                 in_units_of(s.y, 1e-18, s.u),
                 f"{s.u_statistical * 1e18:.2f}",
                 f"{s.u_systematic * 1e18:.2f}",
+                f"{s.u_scatter * 1e18:.2f}",
                 f"{s.tide_correction * 1e18:.2f}",
                 f"{s.residual * 1e18:.2f}",
                 f"{100 * s.uptime:.0f} %",

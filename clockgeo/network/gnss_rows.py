@@ -7,7 +7,8 @@ with the covariance of the model's errors between all points.
 
 from __future__ import annotations
 
-from collections.abc import Hashable
+from collections.abc import Hashable, Sequence
+from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -51,8 +52,7 @@ def gnss_columns(gnss: GnssHeights, read: str | None) -> Columns:
 
 def add_gnss(
     builder: ModelBuilder,
-    gnss: GnssHeights,
-    columns: Columns,
+    tables: Sequence[tuple[GnssHeights, Columns]],
     points: Points,
     *,
     geoid: GeoidModel,
@@ -60,14 +60,13 @@ def add_gnss(
     tide_system: TideSystem,
     zero_level: str | float,
 ) -> TermFrame:
-    """Add GNSS heights with a geoid model; its errors are correlated over the net.
+    """Add all GNSS heights with one geoid model, whose errors are correlated over the net.
 
     Parameters
     ----------
     builder : ModelBuilder
-    gnss : GnssHeights
-    columns : Columns
-        Its heights, see `gnss_columns`.
+    tables : sequence of (GnssHeights, Columns)
+        Tables and their heights, see `gnss_columns`.
     points : Points
     geoid : GeoidModel
         What gives separations, their covariance, and their conventions.
@@ -76,10 +75,15 @@ def add_gnss(
     tide_system, zero_level
         Of the campaign.
 
+    Returns
+    -------
+    TermFrame
+        Of the geoid model, with the rows of all tables.
+
     Raises
     ------
     DataError
-        If there are no heights, one has no u, or a point is unknown or outside the model.
+        If a table has no heights, one has no u, or a point is unknown or outside the model.
     ConventionError
         If the model was fitted to levelling, or states no covariance.
     """
@@ -89,43 +93,69 @@ def add_gnss(
             value=geoid.name,
             advice="Use the gravimetric model",
         )
-    places = listed_points(columns, points, f"[[gnss]] {gnss.id}")
-    latitude, longitude = points.latitude[places], points.longitude[places]
-    u = columns.filled("u", gnss.u)
-    columns.refuse(np.isnan(u), "the ellipsoidal height has no u", key="point", advice="Give u")
-    separation = columns.numbers["separation"].copy()
-    missing = np.isnan(separation)
-    if missing.any():
-        separation[missing] = geoid.sample(latitude[missing], longitude[missing])
-    height = np.asarray(
-        convert_tide_system(
-            columns.numbers["ellipsoidal_height"],
-            latitude,
-            quantity="ellipsoidal_height",
-            source=gnss.tide_system,
-            target=tide_system,
-        )
-    ) - np.asarray(
-        convert_tide_system(
-            separation,
-            latitude,
-            quantity=geoid.quantity,
-            source=geoid.tide_system,
-            target=tide_system,
-        )
-    )
-    number, slope, u_gravity = _number_above_geoid(geoid, height, latitude, points.gravity[places])
-    values = number + zero_level_shift(source=geoid.zero_level, target=zero_level)
-    own = np.hypot(u * slope, u_gravity)
-    rows = tuple(f"{gnss.id}: {name}" for name in columns.texts["point"])
+    parts = [_observed(gnss, columns, points, geoid, tide_system) for gnss, columns in tables]
+    places = np.concatenate([part.places for part in parts])
+    values = np.concatenate([part.values for part in parts])
+    slope = np.concatenate([part.slope for part in parts])
+    own = np.concatenate([part.own for part in parts])
+    values = values + zero_level_shift(source=geoid.zero_level, target=zero_level)
+    rows = tuple(row for part in parts for row in part.rows)
     frame = term_frame(geoid.name, None, terms, points, places, values, rows)
     names: dict[Term, Hashable] = {term: GeoidTerm(geoid.name, term) for term in frame.terms}
     on = [(numbers_at(points, places), 1.0), *term_entries(frame, names)]
-    builder.observe_all(list(rows), kind="gnss", values=values, on=on)
+    builder.observe_all(rows, kind="gnss", values=values, on=on)
+    latitude, longitude = points.latitude[places], points.longitude[places]
     errors = geoid.covariance(latitude, longitude) * np.outer(slope, slope)
     builder.correlate(rows, errors + np.diag(own**2))
     add_priors(builder, terms, names, frame.gravity)
     return frame
+
+
+@dataclass(frozen=True, eq=False)
+class _Observed:
+    """Heights of one table as numbers above the model's zero level; arrays of shape (m,)."""
+
+    places: NDArray[np.int64]
+    values: NDArray[np.float64]
+    slope: NDArray[np.float64]
+    own: NDArray[np.float64]
+    rows: tuple[str, ...]
+
+
+def _observed(
+    gnss: GnssHeights,
+    columns: Columns,
+    points: Points,
+    geoid: GeoidModel,
+    tide_system: TideSystem,
+) -> _Observed:
+    places = listed_points(columns, points, f"[[gnss]] {gnss.id}")
+    latitude, longitude = points.latitude[places], points.longitude[places]
+    u = columns.filled("u", gnss.u)
+    columns.refuse(np.isnan(u), "the ellipsoidal height has no u", key="point", advice="Give u")
+    columns.refuse(~(u > 0.0), "u of the ellipsoidal height is not positive", key="point")
+    separation = columns.numbers["separation"].copy()
+    missing = np.isnan(separation)
+    if missing.any():
+        separation[missing] = geoid.sample(latitude[missing], longitude[missing])
+    above_ellipsoid = convert_tide_system(
+        columns.numbers["ellipsoidal_height"],
+        latitude,
+        quantity="ellipsoidal_height",
+        source=gnss.tide_system,
+        target=tide_system,
+    )
+    surface = convert_tide_system(
+        separation,
+        latitude,
+        quantity=geoid.quantity,
+        source=geoid.tide_system,
+        target=tide_system,
+    )
+    height = np.asarray(above_ellipsoid) - np.asarray(surface)
+    number, slope, u_gravity = _number_above_geoid(geoid, height, latitude, points.gravity[places])
+    rows = tuple(f"{gnss.id}: {name}" for name in columns.texts["point"])
+    return _Observed(places, number, slope, np.hypot(u * slope, u_gravity), rows)
 
 
 def _number_above_geoid(

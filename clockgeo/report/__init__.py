@@ -9,6 +9,7 @@ import importlib
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
+    from clockgeo.report.adjustment_page import adjust_page, write_adjust_page
     from clockgeo.report.embedding import checked_picture, save_picture
     from clockgeo.report.levelling_page import level_page, write_level_page
     from clockgeo.report.page import prepare_figures, write_figures, write_page
@@ -25,6 +26,7 @@ if TYPE_CHECKING:
         correlation_picture,
         residual_picture,
     )
+    from clockgeo.report.pictures.net import NetPoint, net_picture
     from clockgeo.report.pictures.places import Background, MapSite, map_extent, site_map
     from clockgeo.report.pictures.planning import alternatives_picture, reach_picture
     from clockgeo.report.pictures.record import record_picture
@@ -39,16 +41,19 @@ _HOMES = {
     "Background": "pictures.places",
     "DatumOffset": "pictures.adjustment",
     "MapSite": "pictures.places",
+    "NetPoint": "pictures.net",
     "PlanePoint": "pictures.adjustment",
     "TimelineSession": "pictures.timeline",
+    "adjust_page": "adjustment_page",
     "alternatives_picture": "pictures.planning",
     "budget_picture": "pictures.budget",
-    "comparison_picture": "pictures.comparison",
     "checked_picture": "embedding",
+    "comparison_picture": "pictures.comparison",
     "correlation_picture": "pictures.comparison",
     "datum_picture": "pictures.adjustment",
     "level_page": "levelling_page",
     "map_extent": "pictures.places",
+    "net_picture": "pictures.net",
     "observation_picture": "pictures.adjustment",
     "plane_picture": "pictures.adjustment",
     "prepare_figures": "page",
@@ -60,6 +65,7 @@ _HOMES = {
     "stability_picture": "pictures.stability",
     "tide_picture": "pictures.tide",
     "timeline_picture": "pictures.timeline",
+    "write_adjust_page": "adjustment_page",
     "write_figures": "page",
     "write_level_page": "levelling_page",
     "write_page": "page",
@@ -70,17 +76,20 @@ __all__ = [
     "Background",
     "DatumOffset",
     "MapSite",
+    "NetPoint",
     "PAGE",
     "PlanePoint",
     "TimelineSession",
+    "adjust_page",
     "alternatives_picture",
     "budget_picture",
-    "comparison_picture",
     "checked_picture",
+    "comparison_picture",
     "correlation_picture",
     "datum_picture",
     "level_page",
     "map_extent",
+    "net_picture",
     "observation_picture",
     "plane_picture",
     "prepare_figures",
@@ -92,6 +101,7 @@ __all__ = [
     "stability_picture",
     "tide_picture",
     "timeline_picture",
+    "write_adjust_page",
     "write_figures",
     "write_level_page",
     "write_page",

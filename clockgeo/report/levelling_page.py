@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from pathlib import Path
 
 from clockgeo.campaign.evidence import Evidence
@@ -18,10 +18,18 @@ from clockgeo.report.levelling_pictures import (
     residual_pictures,
     stability_pictures,
 )
+from clockgeo.report.levelling_sheets import Solved
 from clockgeo.report.numbers import rounded, typeset, with_uncertainty
 from clockgeo.report.page import Answer, Page, Section, write_page
 
-__all__ = ["level_page", "write_level_page"]
+__all__ = [
+    "budget_section",
+    "difference_answers",
+    "level_page",
+    "said",
+    "session_section",
+    "write_level_page",
+]
 
 _ANSWERS = 8
 _AGREE, _DOUBTFUL = 2.0, 3.0
@@ -69,31 +77,33 @@ def level_page(result: LevelResult, evidence: Evidence) -> Page:
         title=result.name,
         kind="Heights from clocks",
         summary=f"{sessions}, {period} (UTC): {', '.join(sorted(pairs))}",
-        answers=tuple(_answers(result)),
+        answers=tuple(difference_answers(result, result.comparison)),
         sections=tuple(_sections(result, evidence)),
         caution=result.conventions.caution,
         version=result.provenance.version,
     )
 
 
-def _answers(result: LevelResult) -> Iterator[Answer]:
+def difference_answers(
+    result: Solved, comparison: Sequence[Comparison] | None = None
+) -> Iterator[Answer]:
+    """Differences from the reference site, with the verdict of what they were compared with."""
     sites = {site.id: site for site in result.sites}
     reference = result.conventions.reference_site
     from_reference = [d for d in result.differences if d.from_site == reference]
-    for difference in (from_reference or result.differences)[:_ANSWERS]:
-        compared = [
-            c
-            for c in result.comparison
-            if (c.from_site, c.to_site) == (difference.from_site, difference.to_site)
-        ]
+    for difference in (from_reference or list(result.differences))[:_ANSWERS]:
+        ends = difference.from_site, difference.to_site
+        compared = [c for c in comparison or () if (c.from_site, c.to_site) == ends]
         site = sites[difference.to_site]
+        number = with_uncertainty(difference.geopotential_difference, difference.u, "m² s⁻²")
+        verdict = " ".join(_verdict(line) for line in compared)
+        if comparison is not None and not compared:
+            verdict = "There is no geodetic value to hold against it."
         yield Answer(
             what=f"{site.name} minus {sites[difference.from_site].name}",
-            value="ΔC = "
-            + typeset(with_uncertainty(difference.geopotential_difference, difference.u, "m² s⁻²")),
+            value=f"ΔC = {typeset(number)}",
             also=tuple(_also(difference, site)),
-            verdict=" ".join(_verdict(c) for c in compared)
-            or "There is no geodetic value to hold against it.",
+            verdict=verdict,
         )
 
 
@@ -112,12 +122,13 @@ def _also(difference: DifferenceResult, site: SiteResult) -> Iterator[str]:
     ]
     yield f"{site.name}: C = {number}; {', '.join(heights)}."
     yield (
-        f"Zero level: {_said(site.zero_level)}; tide system: {_said(site.tide_system.value)}; "
+        f"Zero level: {said(site.zero_level)}; tide system: {said(site.tide_system.value)}; "
         "standard uncertainties (k = 1)."
     )
 
 
-def _said(name: str) -> str:
+def said(name: str) -> str:
+    """Write a name of a convention as words."""
     return name.replace("_", " ")
 
 
@@ -162,16 +173,7 @@ def _sections(result: LevelResult, evidence: Evidence) -> Iterator[Section]:
         "Stability",
         parts=(*stability_pictures(evidence), sheets.noise_sheet(result)),
     )
-    budgets = dict(sheets.budget_sheets(result))
-    every = {(line.from_site, line.to_site) for line in result.effects}
-    yield Section(
-        "budget",
-        "Uncertainty budget",
-        paragraphs=(_OTHER_BUDGETS,) if len(every) > len(budgets) else (),
-        parts=tuple(
-            part for pair, picture in budget_pictures(result) for part in (picture, budgets[pair])
-        ),
-    )
+    yield budget_section(result)
     yield Section(
         "correlations",
         "Correlations",
@@ -194,6 +196,37 @@ def _sections(result: LevelResult, evidence: Evidence) -> Iterator[Section]:
         "conventions", "Conventions and constants", parts=(sheets.convention_sheet(result),)
     )
     yield Section("inputs", "Inputs", parts=(sheets.input_sheet(result),))
+
+
+def session_section(result: Solved) -> Section:
+    """Sessions of clocks where they are only a part of what was observed."""
+    return Section(
+        "sessions",
+        "Clock sessions",
+        parts=(
+            campaign_timeline(result),
+            sheets.session_sheet(result),
+            sheets.mean_sheet(result),
+            sheets.screening_sheet(result),
+            sheets.noise_sheet(result),
+            *residual_pictures(result),
+        ),
+        notes=tuple(f"{s.id}: {note}" for s in result.sessions for note in s.notes),
+    )
+
+
+def budget_section(result: Solved) -> Section:
+    """What makes up the u of every difference."""
+    budgets = dict(sheets.budget_sheets(result))
+    every = {(line.from_site, line.to_site) for line in result.effects}
+    return Section(
+        "budget",
+        "Uncertainty budget",
+        paragraphs=(_OTHER_BUDGETS,) if len(every) > len(budgets) else (),
+        parts=tuple(
+            part for pair, picture in budget_pictures(result) for part in (picture, budgets[pair])
+        ),
+    )
 
 
 def _fit_words(result: LevelResult) -> Iterator[str]:

@@ -6,7 +6,7 @@ from collections.abc import Iterator
 
 from clockgeo.campaign.evidence import Evidence
 from clockgeo.campaign.results import LevelResult
-from clockgeo.report.levelling_sheets import budget_pairs
+from clockgeo.report.levelling_sheets import Solved, budget_pairs
 from clockgeo.report.numbers import duration, percentage, rounded, typeset, with_uncertainty
 from clockgeo.report.page import Picture
 from clockgeo.report.pictures.budget import budget_picture
@@ -33,7 +33,7 @@ __all__ = [
 ]
 
 
-def campaign_map(result: LevelResult) -> Picture:
+def campaign_map(result: Solved) -> Picture:
     """Sites, and which were compared."""
     names = {site.id: site.name for site in result.sites}
     sites = [
@@ -57,7 +57,7 @@ def campaign_map(result: LevelResult) -> Picture:
     )
 
 
-def campaign_timeline(result: LevelResult) -> Picture:
+def campaign_timeline(result: Solved) -> Picture:
     """When each clock was where."""
     sessions = [
         TimelineSession(
@@ -127,7 +127,7 @@ def stability_pictures(evidence: Evidence) -> Iterator[Picture]:
         )
 
 
-def budget_pictures(result: LevelResult) -> Iterator[tuple[tuple[str, str], Picture]]:
+def budget_pictures(result: Solved) -> Iterator[tuple[tuple[str, str], Picture]]:
     """One picture a pair with the reference site."""
     for number, pair in enumerate(budget_pairs(result), start=1):
         lines = [e for e in result.effects if (e.from_site, e.to_site) == pair]
@@ -144,7 +144,7 @@ def budget_pictures(result: LevelResult) -> Iterator[tuple[tuple[str, str], Pict
         )
 
 
-def correlation_pictures(result: LevelResult) -> Iterator[Picture]:
+def correlation_pictures(result: Solved) -> Iterator[Picture]:
     """Nothing where there are fewer than three sites: the table says it all."""
     order = result.covariance.order
     if len(order) > 2:
@@ -171,7 +171,7 @@ def comparison_pictures(result: LevelResult) -> Iterator[Picture]:
     )
 
 
-def residual_pictures(result: LevelResult) -> Iterator[Picture]:
+def residual_pictures(result: Solved) -> Iterator[Picture]:
     """Sessions about the solution."""
     yield Picture(
         id="residuals",

@@ -4,12 +4,14 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
+from clockgeo.campaign.adjust_results import AdjustResult
 from clockgeo.campaign.results import LevelResult, Quantity
 from clockgeo.report.numbers import duration, percentage, rounded, with_uncertainty
 from clockgeo.report.pictures.stability import in_words
 from clockgeo.report.sheets import Cell, Sheet, count, measured, plain, words
 
 __all__ = [
+    "Solved",
     "budget_pairs",
     "budget_sheets",
     "comparison_sheet",
@@ -24,10 +26,13 @@ __all__ = [
     "site_sheet",
 ]
 
+Solved = LevelResult | AdjustResult
+"""Results that hold sites, sessions and differences."""
+
 _ATTO = 1e-18
 
 
-def site_sheet(result: LevelResult) -> Sheet:
+def site_sheet(result: Solved) -> Sheet:
     """Geopotential numbers and heights."""
 
     def height(quantity: Quantity | None) -> Cell:
@@ -61,7 +66,7 @@ def site_sheet(result: LevelResult) -> Sheet:
     return Sheet.of("sites", "Geopotential numbers and heights of the markers", columns, rows)
 
 
-def difference_sheet(result: LevelResult) -> Sheet:
+def difference_sheet(result: Solved) -> Sheet:
     """Differences of all pairs."""
     columns: list[tuple[str, str | tuple[str, str]]] = [
         ("from", "from"),
@@ -87,7 +92,7 @@ def difference_sheet(result: LevelResult) -> Sheet:
     return Sheet.of("differences", "Differences, second site minus first", columns, rows, heads=2)
 
 
-def session_sheet(result: LevelResult) -> Sheet:
+def session_sheet(result: Solved) -> Sheet:
     """Who was compared with whom, and when."""
     columns: list[tuple[str, str | tuple[str, str]]] = [
         ("session", "session"),
@@ -115,13 +120,14 @@ def session_sheet(result: LevelResult) -> Sheet:
     return Sheet.of("sessions", "Sessions", columns, rows)
 
 
-def mean_sheet(result: LevelResult) -> Sheet:
+def mean_sheet(result: Solved) -> Sheet:
     """Means of all sessions."""
     columns: list[tuple[str, str | tuple[str, str]]] = [
         ("session", "session"),
         ("y / 10⁻¹⁸", ("y (1)", "u (1)")),
         ("u statistical / 10⁻¹⁸", "u_statistical (1)"),
         ("u systematic / 10⁻¹⁸", "u_systematic (1)"),
+        ("u scatter / 10⁻¹⁸", "u_scatter (1)"),
         ("corrections / 10⁻¹⁸", "correction (1)"),
         ("tide / 10⁻¹⁸", ("tide_correction (1)", "u_tide_correction (1)")),
         ("residual / 10⁻¹⁸", "residual (1)"),
@@ -132,6 +138,7 @@ def mean_sheet(result: LevelResult) -> Sheet:
             measured(s.y, s.u, step=_ATTO),
             plain(f"{s.u_statistical / _ATTO:.2f}", s.u_statistical),
             plain(f"{s.u_systematic / _ATTO:.2f}", s.u_systematic),
+            plain(f"{s.u_scatter / _ATTO:.2f}", s.u_scatter),
             plain(f"{s.correction / _ATTO:.1f}", s.correction),
             measured(s.tide_correction, s.u_tide_correction, step=_ATTO),
             plain(f"{s.residual / _ATTO:.2f}", s.residual),
@@ -141,7 +148,7 @@ def mean_sheet(result: LevelResult) -> Sheet:
     return Sheet.of("means", "Means of the sessions after all corrections", columns, rows)
 
 
-def screening_sheet(result: LevelResult) -> Sheet:
+def screening_sheet(result: Solved) -> Sheet:
     """What does not count, and what difference it makes."""
     reasons = list(dict.fromkeys(reason for s in result.sessions for reason in s.flagged))
     columns: list[tuple[str, str | tuple[str, str]]] = [("session", "session")]
@@ -165,7 +172,7 @@ def screening_sheet(result: LevelResult) -> Sheet:
     return Sheet.of("screening", caption, columns, rows)
 
 
-def noise_sheet(result: LevelResult) -> Sheet:
+def noise_sheet(result: Solved) -> Sheet:
     """Noise models."""
     levels = ("white_pm", "flicker_pm", "white_fm", "flicker_fm", "random_walk_fm", "drift")
     units = {"drift": "s-1"}
@@ -186,14 +193,14 @@ def noise_sheet(result: LevelResult) -> Sheet:
     return Sheet.of("noise", caption, columns, rows, heads=1)
 
 
-def budget_pairs(result: LevelResult) -> list[tuple[str, str]]:
+def budget_pairs(result: Solved) -> list[tuple[str, str]]:
     """Pairs whose budgets the page shows: those with the reference site, or all without one."""
     pairs = list(dict.fromkeys((line.from_site, line.to_site) for line in result.effects))
     reference = result.conventions.reference_site
     return [pair for pair in pairs if reference in pair] or pairs
 
 
-def budget_sheets(result: LevelResult) -> Iterator[tuple[tuple[str, str], Sheet]]:
+def budget_sheets(result: Solved) -> Iterator[tuple[tuple[str, str], Sheet]]:
     """One budget a pair with the reference site."""
     for number, pair in enumerate(budget_pairs(result), start=1):
         lines = [e for e in result.effects if (e.from_site, e.to_site) == pair]
@@ -218,7 +225,7 @@ def budget_sheets(result: LevelResult) -> Iterator[tuple[tuple[str, str], Sheet]
         yield pair, Sheet.of(f"budget-{number}", caption, columns, rows)
 
 
-def correlation_sheet(result: LevelResult) -> Sheet:
+def correlation_sheet(result: Solved) -> Sheet:
     """Covariance of the geopotential numbers."""
     order = result.covariance.order
     columns: list[tuple[str, str | tuple[str, str]]] = [("site", "site")]
@@ -257,7 +264,7 @@ def comparison_sheet(result: LevelResult) -> Sheet:
     return Sheet.of("comparison", "Clocks against geodesy", columns, rows, heads=2)
 
 
-def convention_sheet(result: LevelResult) -> Sheet:
+def convention_sheet(result: Solved) -> Sheet:
     """Conventions and constants."""
     from clockgeo.constants import SPEED_OF_LIGHT
 
@@ -278,7 +285,7 @@ def convention_sheet(result: LevelResult) -> Sheet:
     return _two_columns("conventions", "Conventions and constants", "convention", entries)
 
 
-def input_sheet(result: LevelResult) -> Sheet:
+def input_sheet(result: Solved) -> Sheet:
     """Inputs with checksums."""
     entries = [(one.path, one.sha256) for one in result.provenance.inputs]
     return _two_columns("inputs", "Files that were read", "file", entries, second="SHA-256")

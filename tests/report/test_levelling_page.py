@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import re
-from html.parser import HTMLParser
 from itertools import pairwise
 
 import pytest
@@ -13,40 +12,9 @@ from clockgeo.errors import OutputError
 from clockgeo.report import PAGE, level_page, write_level_page
 from clockgeo.report.page import render_page
 from invented_result import invented_evidence, invented_result
+from page_structure import Structure
 
 ATTACK = "<script>alert('x')</script>\"'&{{ 7 * 7 }}"
-VOID = {"meta", "link", "br", "img", "input"}
-
-
-class Structure(HTMLParser):
-    """Tags with their attributes and the text within them."""
-
-    def __init__(self, page: str) -> None:
-        super().__init__()
-        self.open: list[tuple[str, dict]] = []
-        self.found: list[tuple[str, dict, list[str]]] = []
-        self.stack: list[int] = []
-        self.feed(page)
-        self.close()
-
-    def handle_starttag(self, tag, attrs):
-        self.found.append((tag, dict(attrs), []))
-        if tag not in VOID:
-            self.stack.append(len(self.found) - 1)
-
-    def handle_startendtag(self, tag, attrs):
-        self.found.append((tag, dict(attrs), []))
-
-    def handle_endtag(self, tag):
-        last = self.stack.pop()
-        assert self.found[last][0] == tag, f"{self.found[last][0]} is closed by {tag}"
-
-    def handle_data(self, data):
-        for place in self.stack:
-            self.found[place][2].append(data)
-
-    def all(self, *tags):
-        return [(attrs, "".join(text)) for tag, attrs, text in self.found if tag in tags]
 
 
 @pytest.fixture(scope="module")
