@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import json
 
+import numpy as np
 import pytest
 from typer.testing import CliRunner
 
@@ -103,3 +104,33 @@ def test_the_result_says_what_the_data_show(levelled):
     assert all(session["flagged"]["not_usable"] > 4000 for session in levelled["sessions"])
     assert levelled["scatter"]["upper"] > 0.0
     assert levelled["noise"][0]["white_fm"] > 0.0
+
+
+PUBLISHED = {"pair1-day1": 1.02e-18, "pair1-day2": 1.28e-18, "pair1-day3": 1.11e-18}
+"""Statistical u of the day's mean, from the README of the records."""
+
+
+def test_u_of_a_day_is_near_the_published_one(levelled):
+    found = {session["id"]: session["u_statistical"] for session in levelled["sessions"]}
+    for day, published in PUBLISHED.items():
+        # s/sqrt(N) would give 0.56 times: neighbouring rows are correlated by the servo.
+        assert 0.8 * published < found[day] < 2.0 * published, day
+
+
+def test_u_of_the_noisier_pair_follows_its_own_block_means(levelled, real_records):
+    """The published 2.85e-18 lies a factor of 2.4 below what the rows themselves show.
+
+    Independent second route: means of 100 s no longer know of each other (the correlation of the
+    servo ends at 30 s), so their plain standard deviation over the root of their number is u.
+    """
+    mjd, y = np.loadtxt(real_records / "pair2-day3.txt.gz").T
+    mjd, y = mjd[np.isfinite(y)], y[np.isfinite(y)]
+    block = ((mjd - mjd[0]) * 864.0).astype(int)
+    count = np.bincount(block)
+    full = count > 80
+    means = np.bincount(block, weights=y)[full] / count[full]
+    plain = np.std(means, ddof=1) / np.sqrt(y.size / count[full].mean())
+    found = {session["id"]: session["u_statistical"] for session in levelled["sessions"]}
+    # 160 blocks know their spread to 6 %; two such routes agree within three times that.
+    assert found["pair2-day3"] == pytest.approx(plain, rel=0.18)
+    assert plain > 2.0 * 2.85e-18
