@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -10,9 +10,19 @@ from numpy.typing import NDArray
 
 from clockgeo.frequency.noise import NoiseModel
 
-__all__ = ["TickSeries", "block_kernel", "mean_covariance"]
+__all__ = [
+    "Blocks",
+    "TickSeries",
+    "block_kernel",
+    "block_means",
+    "block_width",
+    "mean_covariance",
+]
 
 _BLOCKS = 1500
+_NEAR = 100.0
+"""Lag beyond which the series in 1/lag is exact to 1e-11."""
+_LONGEST_TABLE = 2_000_000
 
 
 @dataclass(frozen=True, eq=False)
@@ -57,40 +67,110 @@ def mean_covariance(
         variance = (model.white_pm**2 + model.flicker_pm**2) / 3.0
         covariance += np.diag(2.0 * runs * variance / (counts * interval) ** 2)
     if model.h_minus1 or model.h_minus2:
-        weights, starts, width = _blocks(series, first, last)
-        kernel = block_kernel(model, starts * interval, width * interval, span)
+        weights, places, width = _shares(series, first)
+        kernel = block_kernel(model, places, width * interval, span)
         covariance += weights @ kernel @ weights.T
     return covariance
 
 
-def _blocks(
-    series: Sequence[TickSeries], first: int, last: int
-) -> tuple[NDArray[np.float64], NDArray[np.float64], float]:
-    """Share of each series in each occupied block of equal width."""
+@dataclass(frozen=True, eq=False)
+class Blocks:
+    """Means of the samples of one series in blocks of equal width.
+
+    Attributes
+    ----------
+    place : int64 array, shape (B,)
+        Occupied blocks, increasing, in units of the width.
+    mean, count : float array, shape (B,)
+        Mean and number of the samples in each.
+    """
+
+    place: NDArray[np.int64]
+    mean: NDArray[np.float64]
+    count: NDArray[np.float64]
+
+
+def block_means(one: TickSeries, *, first: int, width: int) -> Blocks:
+    """Average a series over blocks of `width` ticks that start at the tick `first`."""
+    number = (one.tick - first) // width
+    edges = np.flatnonzero(np.diff(number)) + 1
+    starts = np.concatenate(([0], edges))
+    count = np.diff(np.concatenate((starts, [number.size]))).astype(np.float64)
+    return Blocks(number[starts], np.add.reduceat(one.y, starts) / count, count)
+
+
+def block_width(series: Sequence[TickSeries], blocks: int) -> int:
+    """Ticks of a block so that all series together have about `blocks` of them."""
     total = sum(int(one.tick[-1] - one.tick[0]) + 1 for one in series)
-    width = max(1, -(-total // _BLOCKS))
-    numbers = [(one.tick - first) // width for one in series]
-    occupied = np.unique(np.concatenate([np.unique(n) for n in numbers]))
+    return max(1, -(-total // blocks))
+
+
+def _shares(
+    series: Sequence[TickSeries], first: int
+) -> tuple[NDArray[np.float64], NDArray[np.int64], int]:
+    """Share of each series in each occupied block of equal width, and the blocks' places."""
+    width = block_width(series, _BLOCKS)
+    averaged = [block_means(one, first=first, width=width) for one in series]
+    occupied = np.unique(np.concatenate([blocks.place for blocks in averaged]))
     weights = np.zeros((len(series), occupied.size))
-    for row, number in enumerate(numbers):
-        used, counts = np.unique(number, return_counts=True)
-        weights[row, np.searchsorted(occupied, used)] = counts / number.size
-    return weights, occupied * float(width), float(width)
+    for row, blocks in enumerate(averaged):
+        weights[row, np.searchsorted(occupied, blocks.place)] = blocks.count / blocks.count.sum()
+    return weights, occupied, width
 
 
 def block_kernel(
-    model: NoiseModel, starts: NDArray[np.float64], width: float, span: float
+    model: NoiseModel, places: NDArray[np.int64], width: float, span: float
 ) -> NDArray[np.float64]:
-    """Covariance of block means from the second antiderivative of the generalised covariance."""
-    t = np.abs(starts[:, None] - starts[None, :])
+    """Covariance of the means of equal blocks under flicker and random-walk frequency noise.
 
-    def second(x: NDArray[np.float64]) -> NDArray[np.float64]:
-        size = np.maximum(np.abs(x), 1e-12) / span
-        flicker = -model.h_minus1 * span**2 * (size**2 / 2.0 * np.log(size) - 0.75 * size**2)
-        return np.asarray(flicker - model.h_minus2 * np.pi**2 * (size * span) ** 3 / 6.0)
+    Parameters
+    ----------
+    model : NoiseModel
+        Only `flicker_fm` and `random_walk_fm` count.
+    places : int64 array, shape (B,)
+        Places of the blocks on the time line, in units of `width`.
+    width : float
+        Length of a block in s.
+    span : float
+        Length in s that fixes the additive constant; contrasts do not depend on it.
 
-    # the kernel is -h |..|; P is its second antiderivative, so the window formula gives + signs
-    mean = (second(t + width) + second(t - width) - 2.0 * second(t)) / width**2
-    flicker_constant = model.h_minus1 * (2.0 * np.log(2.0) - 1.5)
-    walk_constant = model.h_minus2 * np.pi**2 * span
-    return np.asarray(mean + flicker_constant + walk_constant)
+    Returns
+    -------
+    float array, shape (B, B)
+
+    Notes
+    -----
+    The generalised covariance is -h-1 ln(t) for flicker and -π² h-2 t for random-walk noise; block
+    means see its average over a triangle of base 2 `width`, from the second antiderivative, or
+    from the series in width/t where that would lose digits. Blocks on one grid share few lags.
+    """
+    lags = np.abs(places[:, None] - places[None, :])
+    longest = int(lags.max())
+    if longest > _LONGEST_TABLE:
+        return _kernel_at(model, lags.astype(np.float64), width, span)
+    return np.asarray(_kernel_at(model, np.arange(longest + 1.0), width, span)[lags])
+
+
+def _kernel_at(
+    model: NoiseModel, lag: NDArray[np.float64], width: float, span: float
+) -> NDArray[np.float64]:
+    """Kernel at lags in units of the width; see `block_kernel`."""
+    near = np.minimum(lag, _NEAR)
+    log_far = np.log(np.maximum(lag, 1.0)) - np.divide(1.0, 12.0 * np.maximum(lag, 1.0) ** 2)
+    logs = np.where(lag > _NEAR, log_far, _second_difference(near, _flicker_second))
+    linear = np.where(lag > 0.0, lag, 1.0 / 3.0)
+    flicker = model.h_minus1 * (2.0 * np.log(2.0) - 1.5 - np.log(width / span) - logs)
+    walk = model.h_minus2 * np.pi**2 * (span - width * linear)
+    return np.asarray(flicker + walk)
+
+
+def _flicker_second(x: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Second antiderivative of ln|x|."""
+    size = np.maximum(np.abs(x), 1e-300)
+    return np.asarray(size**2 * (np.log(size) / 2.0 - 0.75))
+
+
+def _second_difference(
+    x: NDArray[np.float64], f: Callable[[NDArray[np.float64]], NDArray[np.float64]]
+) -> NDArray[np.float64]:
+    return f(x + 1.0) + f(x - 1.0) - 2.0 * f(x)

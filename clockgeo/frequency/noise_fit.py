@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 from scipy import linalg, optimize, stats
 
 from clockgeo.errors import DataError
-from clockgeo.frequency.mean import TickSeries, block_kernel
+from clockgeo.frequency.mean import TickSeries, block_kernel, block_means, block_width
 from clockgeo.frequency.noise import NoiseModel
 
 __all__ = ["NoiseFit", "fit_noise"]
@@ -123,7 +123,7 @@ class _Fit:
 class _Blocks:
     y: NDArray[np.float64]
     count: NDArray[np.float64]
-    start: NDArray[np.float64]
+    place: NDArray[np.int64]
     session: NDArray[np.int64]
     width: float
 
@@ -136,8 +136,8 @@ def _penalty(parameters: int, freedom: int) -> float:
 
 def _two_laws(law: str, blocks: _Blocks, contrasts: NDArray[np.float64]) -> _Fit:
     """Fit white noise beside one slower law, and white noise alone."""
-    span = float(blocks.start.max() + blocks.width)
-    kernel = block_kernel(NoiseModel(**{law: 1.0}), blocks.start, blocks.width, span)
+    span = float(blocks.place.max() + 1) * blocks.width
+    kernel = block_kernel(NoiseModel(**{law: 1.0}), blocks.place, blocks.width, span)
     white = contrasts.T @ (contrasts / blocks.count[:, None])
     slow = contrasts.T @ kernel @ contrasts
     ratios, vectors = linalg.eigh(slow, white)
@@ -183,20 +183,13 @@ def _session_contrasts(blocks: _Blocks, sessions: int) -> NDArray[np.float64]:
 
 def _block_means(series: Sequence[TickSeries], interval: float) -> _Blocks:
     first = min(int(one.tick[0]) for one in series)
-    total = sum(int(one.tick[-1] - one.tick[0]) + 1 for one in series)
-    width = max(1, -(-total // _BLOCKS))
-    means, counts, starts, owners = [], [], [], []
-    for place, one in enumerate(series):
-        number = (one.tick - first) // width
-        used, inverse, count = np.unique(number, return_inverse=True, return_counts=True)
-        means.append(np.bincount(inverse, weights=one.y) / count)
-        counts.append(count)
-        starts.append(used * width * interval)
-        owners.append(np.full(used.size, place))
+    width = block_width(series, _BLOCKS)
+    averaged = [block_means(one, first=first, width=width) for one in series]
+    owners = [np.full(blocks.place.size, owner) for owner, blocks in enumerate(averaged)]
     return _Blocks(
-        np.concatenate(means),
-        np.concatenate(counts).astype(np.float64),
-        np.concatenate(starts).astype(np.float64),
+        np.concatenate([blocks.mean for blocks in averaged]),
+        np.concatenate([blocks.count for blocks in averaged]),
+        np.concatenate([blocks.place for blocks in averaged]),
         np.concatenate(owners),
         width * interval,
     )

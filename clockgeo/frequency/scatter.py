@@ -2,10 +2,11 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import ArrayLike, NDArray
+from numpy.typing import ArrayLike
 from scipy import linalg, optimize, stats
 
 from clockgeo.errors import DataError
@@ -102,7 +103,7 @@ def excess_scatter(
     )
 
 
-def _minimum(loss, ceiling: float) -> float:  # type: ignore[no-untyped-def]
+def _minimum(loss: Callable[[float], float], ceiling: float) -> float:
     grid = np.concatenate(([0.0], np.geomspace(1e-4, ceiling, 80)))
     place = int(np.argmin([loss(x) for x in grid]))
     low, high = grid[max(place - 1, 0)], grid[min(place + 1, grid.size - 1)]
@@ -110,7 +111,7 @@ def _minimum(loss, ceiling: float) -> float:  # type: ignore[no-untyped-def]
     return float(found.x) if found.fun < loss(0.0) else 0.0
 
 
-def _profile(loss, best: float, ceiling: float) -> tuple[float, float]:  # type: ignore[no-untyped-def]
+def _profile(loss: Callable[[float], float], best: float, ceiling: float) -> tuple[float, float]:
     limit = loss(best) + float(stats.chi2.ppf(0.95, 1))
 
     def above(x: float) -> float:

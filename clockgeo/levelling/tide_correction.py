@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -21,8 +22,6 @@ class TideCorrection:
     ----------
     at_epochs : float array, shape (N,)
         To be added to y, fractional.
-    u : float
-        Standard uncertainty of the mean correction, fractional; 0 where there is no correction.
     tai_ns : int64 array, shape (N,) or None
         Epochs; None where there is no correction.
     tide : TideInterpolator or None
@@ -30,25 +29,30 @@ class TideCorrection:
     """
 
     at_epochs: NDArray[np.float64]
-    u: float
     tai_ns: NDArray[np.int64] | None = None
     tide: TideInterpolator | None = None
 
     @classmethod
     def none(cls, size: int) -> TideCorrection:
         """No correction for `size` epochs, exact."""
-        return cls(np.zeros(size), 0.0)
+        return cls(np.zeros(size))
 
     @property
     def mean(self) -> float:
         """Mean over the epochs, fractional; 0 without epochs."""
         return float(np.mean(self.at_epochs)) if self.at_epochs.size else 0.0
 
+    @cached_property
+    def u(self) -> float:
+        """Standard uncertainty of the mean correction, fractional; 0 without a correction."""
+        if self.tide is None or self.tai_ns is None or not self.tai_ns.size:
+            return 0.0
+        return shift_from_potential(self.tide.mean(self.tai_ns).u)
+
     def at(self, chosen: NDArray[np.bool_]) -> TideCorrection:
-        """Correction at some of the epochs, with the u of their mean."""
-        if self.tide is None or self.tai_ns is None or not np.any(chosen):
-            return TideCorrection(self.at_epochs[chosen], 0.0)
-        return _with_u(self.at_epochs[chosen], self.tai_ns[chosen], self.tide)
+        """Correction at some of the epochs."""
+        epochs = None if self.tai_ns is None else self.tai_ns[chosen]
+        return TideCorrection(self.at_epochs[chosen], epochs, self.tide)
 
 
 def tide_correction(
@@ -73,10 +77,4 @@ def tide_correction(
     permanent tide stays in y, whose mean is therefore mean-tide.
     """
     tide = TideInterpolator(int(tai_ns.min()), int(tai_ns.max()), numerator, denominator)
-    return _with_u(shift_from_potential(tide(tai_ns)), tai_ns, tide)
-
-
-def _with_u(
-    at_epochs: NDArray[np.float64], tai_ns: NDArray[np.int64], tide: TideInterpolator
-) -> TideCorrection:
-    return TideCorrection(at_epochs, shift_from_potential(tide.mean(tai_ns).u), tai_ns, tide)
+    return TideCorrection(shift_from_potential(tide(tai_ns)), tai_ns, tide)

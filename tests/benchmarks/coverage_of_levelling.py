@@ -42,10 +42,12 @@ def run(runs: int, path: Path) -> None:
         k = stats.t.ppf(0.5 + share / 2, freedom)
         held = float(np.mean(np.abs(error) <= k * u))
         spread = 2 * np.sqrt(share * (1 - share) / runs)
-        print(f"{100 * share:.0f} % interval holds the truth in {100 * held:.1f} % "
-              f"(expected {100 * (share - spread):.1f} to {100 * (share + spread):.1f} %)")  # fmt: skip
-    print(f"scatter {np.std(error):.4f}, bias {np.mean(error):.4f} +- "
-          f"{np.std(error) / np.sqrt(runs):.4f}, median stated u {np.median(u):.4f} m2 s-2")  # fmt: skip
+        low, high = 100 * (share - spread), 100 * (share + spread)
+        print(f"{100 * share:.0f} % interval holds the truth in {100 * held:.1f} %", end=" ")
+        print(f"(expected {low:.1f} to {high:.1f} %)")
+    bias, u_bias = np.mean(error), np.std(error) / np.sqrt(runs)
+    print(f"scatter {np.std(error):.4f}, bias {bias:.4f} +- {u_bias:.4f},", end=" ")
+    print(f"median stated u {np.median(u):.4f} m2 s-2")
     print(f"excess scatter found in {100 * np.mean(scatter > 0):.0f} % of the campaigns")
 
 

@@ -59,7 +59,7 @@ def main() -> None:
                     carrier=exact_number("429228004229872.99"),
                 )
             )
-            print(  # noqa: T201
+            print(
                 f"{value:10}  polars floats {floats:.3f} s  record {exact:.3f} s  "
                 f"ratio {exact / floats:.2f}"
             )
