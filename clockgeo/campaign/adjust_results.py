@@ -148,7 +148,7 @@ class ObservationResult(Table):
 
 
 class GlobalTest(Table):
-    """Is the misfit what the stated uncertainties let expect?"""
+    """Whether the misfit is what the stated uncertainties let expect."""
 
     chi_squared: float
     degrees_of_freedom: int

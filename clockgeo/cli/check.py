@@ -1,4 +1,4 @@
-"""`clockgeo check`: is the document right, and are its records there?"""
+"""`clockgeo check`: whether a document is right and its records are there."""
 
 from __future__ import annotations
 

@@ -90,7 +90,17 @@ def _tell(result: LevelResult, *, verbose: bool) -> None:
     )
     show_table(
         "Sessions (1e-18)",
-        ["session", "y", "u stat.", "u syst.", "u scatter", "tide", "residual", "uptime", "flagged"],
+        [
+            "session",
+            "y",
+            "u stat.",
+            "u syst.",
+            "u scatter",
+            "tide",
+            "residual",
+            "uptime",
+            "flagged",
+        ],
         [
             (
                 s.id,
