@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Collection, Sequence
+from collections.abc import Collection, Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -49,7 +49,7 @@ from clockgeo.levelling.solution import Solution, solve
 from clockgeo.progress import track
 from clockgeo.times import iso_utc
 
-__all__ = ["Levelled", "level", "level_measured"]
+__all__ = ["Levelled", "level", "level_measured", "session_results"]
 
 _SIGN = (
     "y = (f_n/f_d)/(f_n/f_d)_nominal - 1; positive y: the numerator clock is higher. "
@@ -182,7 +182,7 @@ def level_measured(
             ellipsoid="grs80",
             caution=CAUTION,
         ),
-        sessions=tuple(_session_results(measured, statistics, systematic, solution)),
+        sessions=tuple(session_results(measured, statistics, systematic, solution.residual_of)),
         sites=tuple(site_results(campaign, solution, solved)),
         differences=tuple(differences(campaign, solution, pairs, statistics)),
         covariance=covariance_of(solution, solved),
@@ -234,13 +234,23 @@ def _solved_sites(campaign: Campaign, means: Sequence[SessionMean]) -> list[str]
     return [site.id for site in campaign.sites if site.id in present]
 
 
-def _session_results(
+def session_results(
     measured: Sequence[Measured],
     statistics: SessionStatistics,
     systematic: NDArray[np.float64],
-    solution: Solution,
+    residual: Mapping[str, float],
 ) -> list[SessionResult]:
-    residual = dict(zip(solution.model.rows, solution.residuals, strict=True))
+    """Table of the sessions.
+
+    Parameters
+    ----------
+    measured : sequence of Measured, length K
+    statistics : SessionStatistics
+    systematic : float array, shape (K,)
+        Systematic standard uncertainty of each session alone, m² s⁻².
+    residual : mapping
+        Session -> observed minus adjusted, m² s⁻².
+    """
     results = []
     for place, one in enumerate(measured):
         variance = float(statistics.covariance[place, place])
@@ -271,7 +281,7 @@ def _session_results(
                 u_tide_correction=one.tide.u,
                 flagged=dict(one.screening.counts),
                 y_without_screening=one.y_without_screening,
-                residual=shift_from_potential(float(residual[one.session.id])),
+                residual=shift_from_potential(residual[one.session.id]),
                 notes=(*one.record.notes, *statistics.findings[place]),
             )
         )

@@ -18,6 +18,7 @@ from clockgeo.network.datum_rows import add_datum, datum_columns, refuse_points_
 from clockgeo.network.gnss_rows import add_gnss, gnss_columns
 from clockgeo.network.observations import add_levelling, add_tide_gauges, line_columns
 from clockgeo.network.points import POINT_NUMBERS, POINT_TEXTS, Points, gather_points
+from clockgeo.network.tables import Datum, GnssHeights, Levelling
 from clockgeo.network.terms import TermFrame
 
 __all__ = ["NetworkRows", "add_network"]
@@ -55,7 +56,11 @@ def add_network(builder: ModelBuilder, document: Document) -> NetworkRows:
         If a table cannot be used; all bad rows of a file are named.
     """
     campaign, folder = document.campaign, document.folder
-    tables = [*campaign.levellings, *campaign.datums, *campaign.gnss]
+    tables: list[Levelling | Datum | GnssHeights] = [
+        *campaign.levellings,
+        *campaign.datums,
+        *campaign.gnss,
+    ]
     files = [campaign.network.points, *(table.file for table in tables)]
     inputs = [
         Input(path=name, sha256=sha256_of(_found(name, folder)))

@@ -111,7 +111,7 @@ def differences(
     campaign: Campaign,
     solution: Solution,
     pairs: Sequence[tuple[str, str]],
-    statistics: SessionStatistics,
+    statistics: SessionStatistics | None,
 ) -> list[DifferenceResult]:
     """Potential and normal-height difference of every pair, second minus first."""
     names = {name for pair in pairs for name in pair}
@@ -123,11 +123,11 @@ def differences(
         u = solution.u(combination)
         (low, low_slope), (high, high_slope) = slopes[first], slopes[second]
         in_height = {NumberOf(second): high_slope, NumberOf(first): -low_slope}
-        scatter, noise = statistical_parts(solution, combination, statistics.scatter_u)
-        effective = effective_freedom(
-            u,
-            [(noise, statistics.noise_freedom), (scatter, statistics.scatter_freedom)],
-        )
+        effective = float("inf")
+        if statistics is not None:
+            scatter, noise = statistical_parts(solution, combination, statistics.scatter_u)
+            estimated = [(noise, statistics.noise_freedom), (scatter, statistics.scatter_freedom)]
+            effective = effective_freedom(u, estimated)
         finite = effective if np.isfinite(effective) else 1e9
         results.append(
             DifferenceResult(

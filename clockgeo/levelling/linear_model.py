@@ -10,8 +10,8 @@ the covariance V = N + L Lᵀ is built, never assumed.
 
 from __future__ import annotations
 
-from collections.abc import Hashable, Mapping, Sequence
-from dataclasses import dataclass, field
+from collections.abc import Collection, Hashable, Mapping, Sequence
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -62,6 +62,22 @@ class LinearModel:
     def covariance(self) -> NDArray[np.float64]:
         """Dense V = N + L Lᵀ, shape (n, n), in m⁴ s⁻⁴."""
         return np.asarray((self.noise + self.loading @ self.loading.T).toarray())
+
+    def without(self, rows: Collection[str]) -> LinearModel:
+        """Return the model without some observations; unknowns and effects stay as they are."""
+        left_out = set(rows)
+        if not left_out:
+            return self
+        kept = np.array([i for i, row in enumerate(self.rows) if row not in left_out])
+        return replace(
+            self,
+            rows=tuple(self.rows[i] for i in kept),
+            kinds=tuple(self.kinds[i] for i in kept),
+            values=self.values[kept],
+            design=sparse.csr_array(self.design[kept]),
+            loading=sparse.csr_array(self.loading[kept]),
+            noise=sparse.csr_array(self.noise[kept][:, kept]),
+        )
 
 
 @dataclass

@@ -78,6 +78,11 @@ class Solution:
     def _place(self) -> dict[Hashable, int]:
         return {name: i for i, name in enumerate(self.model.unknowns)}
 
+    @property
+    def residual_of(self) -> dict[str, float]:
+        """Observation -> observed minus adjusted, m² s⁻²."""
+        return dict(zip(self.model.rows, self.residuals.tolist(), strict=True))
+
     def weights(self, combination: Combination) -> NDArray[np.float64]:
         """Coefficients of a combination of unknowns as a vector of shape (p,); absent ones are 0.
 

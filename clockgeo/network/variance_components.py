@@ -125,7 +125,9 @@ def _reml(model: LinearModel, components: Sequence[Component]) -> tuple[Componen
     theta = np.ones(len(parts))
     free = np.ones(len(parts), dtype=bool)
     for _ in range(_ROUNDS):
-        covariance = rest + sum(t * part for t, part in zip(theta, parts, strict=True))
+        covariance = rest.copy()
+        for factor, part in zip(theta, parts, strict=True):
+            covariance += factor * part.toarray()
         projector = _projector(covariance, design)
         pull = projector @ model.values
         seen = [np.asarray((part @ projector).T) for part in parts]

@@ -27,6 +27,7 @@ from clockgeo.levelling.session_rows import (
     systematic_loads,
     transfer_difference,
 )
+from clockgeo.levelling.stations import Clock, Link
 from clockgeo.progress import track
 from clockgeo.times import SECOND_NS, tai_from_iso
 
@@ -209,7 +210,8 @@ def _drawn_noise(
     campaign: Campaign, truth: Truth, timeline: _Timeline, seed: np.random.SeedSequence
 ) -> dict[str, NDArray[np.float64]]:
     """Noise of every clock and link over the whole campaign."""
-    stated = {item.id: item.instability for item in (*campaign.clocks, *campaign.links)}
+    devices: tuple[Clock | Link, ...] = (*campaign.clocks, *campaign.links)
+    stated = {item.id: item.instability for item in devices}
     models: dict[str, NoiseModel] = stated | truth.instability
     streams = [np.random.default_rng(s) for s in seed.spawn(len(models))]
     return {
