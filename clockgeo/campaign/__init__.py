@@ -9,6 +9,9 @@ import importlib
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
+    from clockgeo.campaign.adjust_output import adjust_files, adjusted_dataset, write_adjusted
+    from clockgeo.campaign.adjust_results import AdjustResult
+    from clockgeo.campaign.adjuster import Adjusted, adjust
     from clockgeo.campaign.checking import CheckReport, check_campaign
     from clockgeo.campaign.document import Document, campaign_schema, read_document
     from clockgeo.campaign.evidence import Evidence
@@ -19,6 +22,12 @@ if TYPE_CHECKING:
     from clockgeo.campaign.schema import Campaign
 
 _HOMES = {
+    "AdjustResult": "adjust_results",
+    "Adjusted": "adjuster",
+    "adjust": "adjuster",
+    "adjust_files": "adjust_output",
+    "adjusted_dataset": "adjust_output",
+    "write_adjusted": "adjust_output",
     "Campaign": "schema",
     "CheckReport": "checking",
     "Document": "document",
@@ -41,6 +50,12 @@ _HOMES = {
 """Public name -> module of this package that defines it."""
 
 __all__ = [
+    "AdjustResult",
+    "Adjusted",
+    "adjust",
+    "adjust_files",
+    "adjusted_dataset",
+    "write_adjusted",
     "Campaign",
     "CheckReport",
     "Document",

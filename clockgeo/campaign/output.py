@@ -2,19 +2,21 @@
 
 from __future__ import annotations
 
+import json
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from clockgeo.campaign.results import LevelResult
+from clockgeo.campaign.adjust_results import ADJUST_SCHEMA, AdjustResult
+from clockgeo.campaign.results import LEVEL_SCHEMA, LevelResult
 from clockgeo.errors import DataError, OutputError
 from clockgeo.files import json_text, write_dataset, write_text
 
 if TYPE_CHECKING:
     import xarray as xr
 
-__all__ = ["prepare_folder", "read_result", "result_dataset", "write_result"]
+__all__ = ["prepare_folder", "read_result", "result_dataset", "without_empty", "write_result"]
 
 RESULT_JSON = "result.json"
 RESULT_NETCDF = "result.nc"
@@ -59,34 +61,50 @@ def write_result(result: LevelResult, folder: Path, *, replace: bool = False) ->
     return [json_path, netcdf_path]
 
 
-def read_result(path: str | Path) -> LevelResult:
-    """Read a `result.json` back, checked against the schema.
+def read_result(path: str | Path) -> LevelResult | AdjustResult:
+    """Read a `result.json` back, checked against the schema it names.
 
     Raises
     ------
     DataError
-        If the file is missing or is not a result of `clockgeo level`.
+        If the file is missing or is no result of clockgeo.
     """
     from pydantic import ValidationError
 
     path = Path(path)
     path = path / RESULT_JSON if path.is_dir() else path
     try:
-        return LevelResult.model_validate_json(path.read_bytes())
+        content = path.read_bytes()
+        schema = json.loads(content).get("schema")
     except FileNotFoundError:
         raise DataError(
-            "no result here", value=path, advice="Run clockgeo level with --out first"
+            "no result here", value=path, advice="Run clockgeo level or adjust with --out first"
         ) from None
+    except (ValueError, AttributeError):
+        raise DataError("not a JSON object", where=str(path)) from None
+    kinds: dict[str, type[LevelResult | AdjustResult]] = {
+        LEVEL_SCHEMA: LevelResult,
+        ADJUST_SCHEMA: AdjustResult,
+    }
+    if schema not in kinds:
+        raise DataError(
+            "not a result of this version of clockgeo",
+            value=f"schema {schema!r}",
+            where=str(path),
+            allowed=f"Schemas {', '.join(kinds)}",
+        )
+    try:
+        return kinds[schema].model_validate_json(content)
     except ValidationError as error:
         first = error.errors()[0]
         raise DataError(
-            "not a result of clockgeo level",
+            "the result does not follow its schema",
             value=f"{'.'.join(map(str, first['loc']))}: {first['msg']}",
             where=str(path),
         ) from None
 
 
-def result_dataset(result: LevelResult) -> xr.Dataset:
+def result_dataset(result: LevelResult | AdjustResult) -> xr.Dataset:
     """Return the result as an xarray dataset that follows the CF conventions."""
     import xarray as xr
 
@@ -146,7 +164,7 @@ def result_dataset(result: LevelResult) -> xr.Dataset:
             {"units": "degrees_east", "standard_name": "longitude"},
         ),
     }
-    return xr.Dataset(
+    dataset = xr.Dataset(
         variables,
         coordinates,
         {
@@ -157,6 +175,12 @@ def result_dataset(result: LevelResult) -> xr.Dataset:
             "schema": result.schema_name,
         },
     )
+    return without_empty(dataset)
+
+
+def without_empty(dataset: xr.Dataset) -> xr.Dataset:
+    """Return the dataset without tables of no rows: in classic netCDF their size means another."""
+    return dataset.drop_dims([name for name, size in dataset.sizes.items() if size == 0])
 
 
 def _u(unit: str, of: str) -> dict[str, str]:
