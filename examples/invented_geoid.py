@@ -80,6 +80,21 @@ REGIONS = {
         correlation_length=60_000.0,
         source="invented quasigeoid of an invented mountain region, for examples only",
     ),
+    "coasts": Region(
+        south=43.5,
+        north=50.5,
+        west=-46.0,
+        east=-33.0,
+        level=52.0,
+        slope_north=0.9,
+        slope_east=-0.5,
+        amplitude=1.6,
+        longest=9.0,
+        u=0.04,
+        correlation_length=150_000.0,
+        source="invented quasigeoid of invented coasts, for examples only",
+        step=0.1,
+    ),
 }
 
 

@@ -124,21 +124,21 @@ def _tell_datums(result: AdjustResult) -> None:
 
 def _tell_tests(result: AdjustResult) -> None:
     from clockgeo.cli.terminal import say, show_table
+    from clockgeo.network.identifiability import listed
 
     test = result.global_test
     verdict = {True: "passed", False: "failed", None: "not possible"}[test.passed]
-    factor = (
-        "" if result.variance_factor is None else f", variance factor {result.variance_factor:.3f}"
-    )
+    factor = ""
+    if result.variance_factor is not None:
+        factor = f", variance factor {result.variance_factor:.3f}"
     say(
         f"{len(result.points)} points, {len(result.observations)} observations, "
         f"{test.degrees_of_freedom} degrees of freedom; global test {verdict}{factor}"
     )
     say(f"blunders: {result.blunders.text}")
     if result.identifiability.uncontrolled:
-        names = result.identifiability.uncontrolled
-        more = f" and {len(names) - _SHOWN} more" if len(names) > _SHOWN else ""
-        say(f"uncontrolled, nothing else checks them: {', '.join(names[:_SHOWN])}{more}")
+        names = listed(result.identifiability.uncontrolled)
+        say(f"uncontrolled, nothing else checks them: {names}")
     if result.variance_components:
         show_table(
             "Variance factors of the groups (1 where the stated u hold)",

@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 from scipy import stats
 
 from clockgeo.network.critical_values import critical_residual
+from clockgeo.network.identifiability import listed
 from clockgeo.network.reliability import Reliability
 
 __all__ = ["BlunderSearch", "Suspect", "find_blunders"]
@@ -262,6 +263,6 @@ def _verdict(suspects: tuple[Suspect, ...], p_value: float | None) -> str:
         return f"no observation stands out{rest}"
     described = []
     for one in suspects:
-        also = f", not told apart from {', '.join(one.alternatives)}" if one.alternatives else ""
+        also = f", not told apart from {listed(one.alternatives)}" if one.alternatives else ""
         described.append(f"{one.row} (off by {one.bias:+.3f} m2 s-2{also})")
     return f"suspected: {'; '.join(described)}{rest}"

@@ -28,6 +28,8 @@ __all__ = ["Component", "ComponentEstimate", "scaled_model", "variance_component
 _DENSE_ROWS = 2500
 _ROUNDS = 200
 _NOTHING = 1e-9
+_AT_REST = 1e-6
+"""Relative change below which factors rest; their own u is four orders larger."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -148,7 +150,7 @@ def _reml(model: LinearModel, components: Sequence[Component]) -> tuple[Componen
         fresh[~free] = 0.0
         moved = np.max(np.abs(fresh - theta) / np.maximum(np.abs(fresh), 1e-12), initial=0.0)
         theta = fresh
-        if moved < 1e-11:
+        if moved < _AT_REST:
             break
     else:
         raise _restless()
