@@ -49,6 +49,11 @@ class Area:
     highest: float = 300.0
     levelled: bool = True
 
+    @property
+    def middle(self) -> tuple[float, float]:
+        """Where tilts are counted from, degrees."""
+        return (self.south + self.north) / 2.0, (self.west + self.east) / 2.0
+
 
 AREAS = (
     Area("coast", 46.0, 48.2, -44.8, -41.2, 120, 0.183),
@@ -135,7 +140,7 @@ def edges(truth: Truth, rng: np.random.Generator) -> Iterator[tuple[int, int]]:
             yield int(here[a]), int(there[b])
 
 
-def line_rows(truth: Truth, rng: np.random.Generator) -> Iterator[list[object]]:
+def line_rows(truth: Truth, rng: np.random.Generator, blunder: float) -> Iterator[list[object]]:
     """Levelled height differences; 1 mm for the root of a kilometre, and one blunder."""
     for number, (a, b) in enumerate(edges(truth, rng)):
         north, east = ways_from(
@@ -145,7 +150,7 @@ def line_rows(truth: Truth, rng: np.random.Generator) -> Iterator[list[object]]:
         gravity = (truth.gravity[a] + truth.gravity[b]) / 2.0
         rise = (truth.number[b] - truth.number[a]) / gravity
         rise += 1e-3 * np.sqrt(length / 1000.0) * rng.standard_normal()
-        rise += BLUNDER if number == 97 else 0.0
+        rise += blunder if number == 97 else 0.0
         yield [truth.ids[a], truth.ids[b], f"{rise:.5f}", f"{length:.0f}"]
 
 
@@ -153,7 +158,7 @@ def published_rows(truth: Truth, one: Area, rng: np.random.Generator) -> Iterato
     """Heights as a datum publishes them: too low by its offset and tilts."""
     members = np.flatnonzero(truth.area == AREAS.index(one))
     north, east = ways_from(
-        ((one.south + one.north) / 2.0, (one.west + one.east) / 2.0),
+        one.middle,
         truth.latitude[members],
         truth.longitude[members],
     )
@@ -191,10 +196,10 @@ def write(path: Path, header: list[str], rows: Iterable[list[object]]) -> None:
         writer.writerows(rows)
 
 
-def make(folder: Path) -> None:
-    """Write all tables into `folder`, and say what is true."""
-    rng = np.random.default_rng(SEED)
-    truth = drawn_truth(rng)
+def write_tables(
+    folder: Path, truth: Truth, rng: np.random.Generator, *, blunder: float = BLUNDER
+) -> None:
+    """Draw what is observed of a truth, and write all tables into `folder`."""
     write(
         folder / "points.csv",
         ["id", "latitude", "longitude", "gravity"],
@@ -205,13 +210,19 @@ def make(folder: Path) -> None:
             )
         ),
     )
-    write(
-        folder / "lines.csv", ["from", "to", "height_difference", "length"], line_rows(truth, rng)
-    )
+    lines = line_rows(truth, rng, blunder)
+    write(folder / "lines.csv", ["from", "to", "height_difference", "length"], lines)
     for one in AREAS:
         write(folder / f"{one.id}.csv", ["point", "height"], published_rows(truth, one, rng))
     rows = gnss_rows(truth, folder / "quasigeoid.nc", rng)
     write(folder / "gnss.csv", ["point", "ellipsoidal_height"], rows)
+
+
+def make(folder: Path) -> None:
+    """Write all tables of the example, and say what is true of its sites."""
+    rng = np.random.default_rng(SEED)
+    truth = drawn_truth(rng)
+    write_tables(folder, truth, rng)
     for name in SITES:
         print(f"{name} = {truth.number[truth.ids.index(name)]:.4f}")  # noqa: T201
 

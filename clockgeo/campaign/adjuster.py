@@ -2,10 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Collection, Sequence
+from collections.abc import Collection
 from dataclasses import dataclass
-
-import numpy as np
 
 from clockgeo import __version__
 from clockgeo.campaign.adjust_results import AdjustResult
@@ -18,14 +16,12 @@ from clockgeo.campaign.adjust_tables import (
     observation_results,
     robust_result,
 )
+from clockgeo.campaign.assembling import Assembled, SessionSide, assemble
 from clockgeo.campaign.datum_tables import datum_results, geoid_results, pair_results, point_results
 from clockgeo.campaign.document import Document
 from clockgeo.campaign.leveller import session_results
-from clockgeo.campaign.measuring import Measured, measure
-from clockgeo.campaign.networking import NetworkRows, add_network
-from clockgeo.campaign.plausibility import record_problems
+from clockgeo.campaign.networking import NetworkRows
 from clockgeo.campaign.results import Conventions, FitResult, Input, Provenance
-from clockgeo.campaign.statistics import SessionStatistics, session_statistics
 from clockgeo.campaign.tabulating import (
     budget,
     covariance_of,
@@ -33,23 +29,14 @@ from clockgeo.campaign.tabulating import (
     site_pairs,
     site_results,
 )
-from clockgeo.errors import CampaignError, DataError
 from clockgeo.files import sha256_of
 from clockgeo.gravity import CAUTION, zero_level
-from clockgeo.levelling.linear_model import LinearModel, ModelBuilder
 from clockgeo.levelling.session_rows import (
     NumberOf,
-    RatioError,
-    RatioPrior,
-    SessionMean,
-    add_known_number,
-    add_session_rows,
 )
 from clockgeo.network.adjustment import Adjustment, adjust_network
 from clockgeo.network.blunders import find_blunders
 from clockgeo.network.reliability import Reliability, reliability_of
-from clockgeo.network.zero_definition import ZeroRule
-from clockgeo.progress import track
 
 __all__ = ["Adjusted", "adjust"]
 
@@ -70,151 +57,29 @@ class Adjusted:
     rows: NetworkRows
 
 
-@dataclass(frozen=True, eq=False)
-class _Sessions:
-    """The clock side: what was measured and its statistics; empty without sessions."""
-
-    measured: tuple[Measured, ...]
-    means: tuple[SessionMean, ...]
-    statistics: SessionStatistics | None
-    systematic: np.ndarray
-
-
 def adjust(
     document: Document, *, without: Collection[str] = (), skip_bad_rows: bool = False
 ) -> Adjusted:
     """Adjust clock sessions, levelling, published heights, GNSS heights and gauges together.
 
-    Parameters
-    ----------
-    document : Document
-        A campaign with network tables; sessions with records take part.
-    without : collection of str
-        Observations to leave out beside those the document names; stated in the result's notes.
-    skip_bad_rows : bool
-        Whether rows of records that cannot be read are left out with a note.
+    Parameters and errors are those of `assemble`.
 
     Returns
     -------
     Adjusted
-
-    Raises
-    ------
-    DataError
-        If a record or table cannot be used, or there is nothing to adjust.
-    ConventionError
-        If zero levels or tide systems do not fit together.
     """
-    campaign = document.campaign
-    builder = ModelBuilder()
-    rule = _zero_rule(document)
-    if rule is None:
-        reference = campaign.site(campaign.head.reference_site)
-        assert reference.geopotential_number is not None  # the document is refused without it
-        add_known_number(
-            builder, reference.id, reference.geopotential_number, reference.u_geopotential_number
-        )
-    left_out = sorted({*campaign.network.without, *without})
-    sessions = _add_sessions(builder, document, left_out, skip_bad_rows=skip_bad_rows)
-    rows = add_network(builder, document)
-    of_sessions = {session.id for session in campaign.sessions}
-    model = _without(builder.build(), [name for name in left_out if name not in of_sessions])
-    notes = [f"observation {name} was left out on request" for name in left_out]
-    if not sessions.measured and not rows.groups:
-        raise DataError(
-            "there is nothing to adjust",
-            where=str(document.path),
-            advice="Add sessions with records, [[levelling]], [[datum]] or [[gnss]]",
-        )
-    adjustment = adjust_network(model, zero=rule)
-    reliability = reliability_of(
-        adjustment, alpha=campaign.network.alpha, power=campaign.network.power
-    )
-    notes += _session_notes(document, sessions)
-    result = _result(document, sessions, rows, adjustment, reliability, notes)
-    return Adjusted(result, adjustment, reliability, rows)
-
-
-def _zero_rule(document: Document) -> ZeroRule | None:
+    assembled = assemble(document, without=without, skip_bad_rows=skip_bad_rows)
     settings = document.campaign.network
-    if settings.zero == "known":
-        return None
-    sites = None if settings.zero == "free" else tuple(settings.zero)
-    return ZeroRule(sites, settings.zero_mean)
+    adjustment = adjust_network(assembled.model, zero=assembled.zero)
+    reliability = reliability_of(adjustment, alpha=settings.alpha, power=settings.power)
+    result = _result(assembled, adjustment, reliability)
+    return Adjusted(result, adjustment, reliability, assembled.rows)
 
 
-def _add_sessions(
-    builder: ModelBuilder, document: Document, left_out: Collection[str], *, skip_bad_rows: bool
-) -> _Sessions:
-    campaign = document.campaign
-    chosen = [
-        session
-        for session in campaign.sessions
-        if session.record is not None and session.id not in left_out
-    ]
-    measured = tuple(
-        measure(campaign, session, document.folder, skip_bad_rows=skip_bad_rows)
-        for session in track(chosen, "reading records")
-    )
-    if not measured:
-        return _Sessions((), (), None, np.zeros(0))
-    problems = record_problems(measured)
-    if problems:
-        raise CampaignError(problems, where=str(document.path))
-    means = tuple(one.mean(campaign) for one in measured)
-    statistics = session_statistics(campaign, measured, means)
-    ratios = {
-        RatioError.between(one.numerator, one.denominator): RatioPrior(one.u)
-        for one in campaign.nominal_ratios
-    }
-    systematic = add_session_rows(
-        builder,
-        means,
-        statistics.covariance,
-        tide_system=campaign.head.tide_system,
-        ratios=ratios,
-    )
-    return _Sessions(measured, means, statistics, systematic)
-
-
-def _without(model: LinearModel, names: Sequence[str]) -> LinearModel:
-    """Leave out rows by their ids."""
-    unknown = sorted(set(names) - set(model.rows))
-    if unknown:
-        raise DataError(
-            "an observation to be left out is not there",
-            value=", ".join(unknown),
-            where="[network], without, or --without",
-            advice="Use the ids of the result's observations",
-        )
-    return model.without(names)
-
-
-def _session_notes(document: Document, sessions: _Sessions) -> list[str]:
-    planned = [one.id for one in document.campaign.sessions if one.record is None]
-    notes = [f"session {name} has no record yet and was left out" for name in planned]
-    known = [
-        site.id
-        for site in document.campaign.sites
-        if site.geopotential_number is not None and site.id != document.campaign.head.reference_site
-    ]
-    if known:
-        notes.append(
-            f"stated numbers of {', '.join(known)} are not part of the adjustment; "
-            "only that of the reference site is"
-        )
-    return notes + (list(sessions.statistics.notes) if sessions.statistics else [])
-
-
-def _result(
-    document: Document,
-    sessions: _Sessions,
-    rows: NetworkRows,
-    adjustment: Adjustment,
-    reliability: Reliability,
-    notes: list[str],
-) -> AdjustResult:
+def _result(assembled: Assembled, adjustment: Adjustment, reliability: Reliability) -> AdjustResult:
+    document, sessions, rows = assembled.document, assembled.sessions, assembled.rows
     campaign, statistics = document.campaign, sessions.statistics
+    notes = list(assembled.notes)
     level = zero_level(campaign.head.zero_level)
     solved = [
         site.id
@@ -281,13 +146,13 @@ def _result(
         identifiability=identifiability_result(adjustment, reliability),
         blunders=blunder_result(search),
         loops=tuple(loop_results(adjustment.model)),
-        robust=robust_result(adjustment, campaign.network.robust, _zero_rule(document)),
+        robust=robust_result(adjustment, campaign.network.robust, assembled.zero),
         notes=(*notes, *more),
         provenance=_provenance(document, sessions, rows),
     )
 
 
-def _provenance(document: Document, sessions: _Sessions, rows: NetworkRows) -> Provenance:
+def _provenance(document: Document, sessions: SessionSide, rows: NetworkRows) -> Provenance:
     records = {source for one in sessions.measured for source in one.record.sources}
     inputs = [Input(path=source.path, sha256=source.sha256) for source in records]
     inputs += [*rows.inputs, Input(path=document.path.name, sha256=sha256_of(document.path))]
