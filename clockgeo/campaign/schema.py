@@ -7,10 +7,17 @@ Lists have the singular name of TOML's arrays of tables (``[[site]]``) and a plu
 from __future__ import annotations
 
 from datetime import UTC, date, datetime
-from typing import Annotated, Literal
+from typing import Literal
 
-from pydantic import AfterValidator, Field, model_validator
+from pydantic import Field, model_validator
 
+from clockgeo.campaign.plan_schema import (
+    Candidate,
+    Difference,
+    Placed,
+    Plan,
+    Target,
+)
 from clockgeo.frequency.layout import RecordLayout
 from clockgeo.frequency.noise import NoiseModel
 from clockgeo.frequency.screening import ScreeningRules
@@ -23,27 +30,21 @@ from clockgeo.network.tables import (
     NetworkSettings,
     TideGauge,
 )
-from clockgeo.tables import Identifier, NonNegative, Positive, Table, Uncertainty
+from clockgeo.tables import Identifier, Instant, NonNegative, Positive, Table, Uncertainty
 
 __all__ = [
     "Campaign",
+    "Candidate",
     "Difference",
     "GeoidSource",
     "Head",
     "NominalRatio",
     "Placed",
+    "Plan",
     "Session",
     "Target",
     "Truth",
 ]
-
-
-def _with_zone(instant: datetime) -> datetime:
-    return instant.replace(tzinfo=UTC) if instant.tzinfo is None else instant.astimezone(UTC)
-
-
-Instant = Annotated[datetime, AfterValidator(_with_zone)]
-"""A date and time of ISO 8601; UTC where no zone is given."""
 
 
 class Head(Table):
@@ -69,13 +70,6 @@ class Head(Table):
     """Whether excess scatter between sessions is estimated and added to u."""
     screening: ScreeningRules = ScreeningRules()
     """How epochs of all records are flagged."""
-
-
-class Placed(Table):
-    """A clock at a site."""
-
-    clock: Identifier
-    site: Identifier
 
 
 class Session(Table):
@@ -157,23 +151,6 @@ class GeoidSource(Table):
     """Levelling datum that a hybrid model was fitted to; such a model is no check of it."""
 
 
-class Difference(Table):
-    """A pair of sites and the standard uncertainty wanted for it."""
-
-    from_site: Identifier = Field(alias="from")
-    to_site: Identifier = Field(alias="to")
-    u_height: Positive
-    """Wanted standard uncertainty of the height difference in m."""
-
-
-class Target(Table):
-    """`[target]`: what a plan must reach."""
-
-    differences: tuple[Difference, ...] = Field(default=(), alias="difference")
-    deadline: Instant | None = None
-    """When the last session must end."""
-
-
 class Truth(Table):
     """`[truth]`: what `simulate` draws from."""
 
@@ -215,6 +192,8 @@ class Campaign(Table):
     gnss: tuple[GnssHeights, ...] = ()
     tide_gauges: tuple[TideGauge, ...] = Field(default=(), alias="tide_gauge")
     target: Target | None = None
+    plan: Plan = Plan()
+    candidates: tuple[Candidate, ...] = Field(default=(), alias="candidate")
     truth: Truth | None = None
 
     def site(self, name: str) -> Site:
