@@ -85,6 +85,7 @@ class _State:
     def __init__(self, reliability: Reliability) -> None:
         self.base = reliability
         self.rows: list[int] = []
+        self.twins: dict[int, set[int]] = {}
         self.columns = np.zeros((reliability.pull.size, 0))
 
     def choose(self, rows: list[int]) -> None:
@@ -181,7 +182,10 @@ def _next_rows(state: _State, limit: float, chi_squared: float, freedom: int) ->
 
 
 def _best_pair(state: _State, w: NDArray[np.float64], sharpness: NDArray[np.float64]) -> list[int]:
-    """Pair of rows that together explain most, if that is more than chance among all pairs."""
+    """Pair of rows that together explain most, if that is more than chance among all pairs.
+
+    Rows of other pairs that explain nearly as much are remembered as twins of the chosen ones.
+    """
     rows = np.flatnonzero(sharpness > 0.0)
     rows = rows[np.argsort(-np.abs(w[rows]), kind="stable")[:_PAIR_ROWS]]
     if rows.size < 2:
@@ -201,7 +205,11 @@ def _best_pair(state: _State, w: NDArray[np.float64], sharpness: NDArray[np.floa
     first, second = np.unravel_index(int(np.argmax(gain)), gain.shape)
     if gain[first, second] <= stats.chi2.isf(_FAMILY_ALPHA / pairs, 2):
         return []
-    return [int(rows[first]), int(rows[second])]
+    chosen = [int(rows[first]), int(rows[second])]
+    near = np.unique(np.argwhere(gain > gain[first, second] - _ODDS))
+    for row in chosen:
+        state.twins[row] = {int(rows[place]) for place in near}
+    return chosen
 
 
 def _clear(state: _State, limit: float) -> None:
@@ -221,7 +229,8 @@ def _alternatives(state: _State, suspect: int) -> list[int]:
     others.columns = state.columns[:, [state.rows.index(row) for row in others.rows]]
     w, _ = others.residuals()
     near = np.flatnonzero((w[suspect] ** 2 - w**2 < _ODDS) & (w != 0.0))
-    return [int(row) for row in near if row != suspect and row not in state.rows]
+    named = sorted({*near.tolist(), *state.twins.get(suspect, ())})
+    return [row for row in named if row != suspect and row not in state.rows]
 
 
 def _result(state: _State, limit: float) -> BlunderSearch:
