@@ -31,9 +31,12 @@ def grid_net(rng, size=4, *, u=0.01, blunders=None) -> tuple[LinearModel, list[s
     for row in range(size):
         for column in range(size):
             here = f"p{row}.{column}"
-            for other in ((row, column + 1), (row + 1, column)):
-                if max(other) < size:
-                    lines.append((here, f"p{other[0]}.{other[1]}", u * rng.standard_normal(), u))
+            ends = [(row, column + 1), (row + 1, column)]
+            lines += [
+                (here, f"p{end[0]}.{end[1]}", u * rng.standard_normal(), u)
+                for end in ends
+                if max(end) < size
+            ]
     for place, bias in (blunders or {}).items():
         start, end, value, spread = lines[place]
         lines[place] = (start, end, value + bias, spread)

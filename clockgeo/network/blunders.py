@@ -10,6 +10,7 @@ that explain the misfit as well as the suspect are named with it.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import combinations
 
 import numpy as np
 from numpy.typing import NDArray
@@ -27,6 +28,8 @@ _SEPARABLE = 1e-6
 """Share of its sharpness that a row must keep beside the suspects to be tested at all."""
 _PAIR_ROWS = 1200
 """Rows whose pairs are tested; in larger nets those with the largest residuals."""
+_TWINS = 10
+"""Pairs of suspects for which other pairs are looked up."""
 _GLOBAL_ALPHA = 0.001
 _FAMILY_ALPHA = 0.05
 
@@ -85,7 +88,6 @@ class _State:
     def __init__(self, reliability: Reliability) -> None:
         self.base = reliability
         self.rows: list[int] = []
-        self.twins: dict[int, set[int]] = {}
         self.columns = np.zeros((reliability.pull.size, 0))
 
     def choose(self, rows: list[int]) -> None:
@@ -182,14 +184,23 @@ def _next_rows(state: _State, limit: float, chi_squared: float, freedom: int) ->
 
 
 def _best_pair(state: _State, w: NDArray[np.float64], sharpness: NDArray[np.float64]) -> list[int]:
-    """Pair of rows that together explain most, if that is more than chance among all pairs.
-
-    Rows of other pairs that explain nearly as much are remembered as twins of the chosen ones.
-    """
-    rows = np.flatnonzero(sharpness > 0.0)
-    rows = rows[np.argsort(-np.abs(w[rows]), kind="stable")[:_PAIR_ROWS]]
+    """Pair of rows that together explain most, if that is more than chance among all pairs."""
+    rows, gain = _pair_gains(state, w, sharpness)
     if rows.size < 2:
         return []
+    pairs = rows.size * (rows.size - 1) / 2.0
+    first, second = np.unravel_index(int(np.argmax(gain)), gain.shape)
+    if gain[first, second] <= stats.chi2.isf(_FAMILY_ALPHA / pairs, 2):
+        return []
+    return [int(rows[first]), int(rows[second])]
+
+
+def _pair_gains(
+    state: _State, w: NDArray[np.float64], sharpness: NDArray[np.float64]
+) -> tuple[NDArray[np.int64], NDArray[np.float64]]:
+    """Rows whose pairs are tested, shape (m,), and χ² that each pair explains, shape (m, m)."""
+    rows = np.flatnonzero(sharpness > 0.0)
+    rows = rows[np.argsort(-np.abs(w[rows]), kind="stable")[:_PAIR_ROWS]]
     block = state.base.columns(rows)[rows]
     if state.rows:
         across = state.columns[rows]
@@ -201,15 +212,7 @@ def _best_pair(state: _State, w: NDArray[np.float64], sharpness: NDArray[np.floa
     joint = own[:, None] ** 2 + own[None, :] ** 2 - 2.0 * alike * np.outer(own, own)
     gain = np.where(apart > 1e-4, joint / np.maximum(apart, 1e-4), 0.0)
     np.fill_diagonal(gain, 0.0)
-    pairs = rows.size * (rows.size - 1) / 2.0
-    first, second = np.unravel_index(int(np.argmax(gain)), gain.shape)
-    if gain[first, second] <= stats.chi2.isf(_FAMILY_ALPHA / pairs, 2):
-        return []
-    chosen = [int(rows[first]), int(rows[second])]
-    near = np.unique(np.argwhere(gain > gain[first, second] - _ODDS))
-    for row in chosen:
-        state.twins[row] = {int(rows[place]) for place in near}
-    return chosen
+    return rows, gain
 
 
 def _clear(state: _State, limit: float) -> None:
@@ -222,27 +225,44 @@ def _clear(state: _State, limit: float) -> None:
         state.choose([row for row in state.rows if row != state.rows[weakest]])
 
 
-def _alternatives(state: _State, suspect: int) -> list[int]:
-    """Rows that explain the misfit nearly as well as one of the suspects, beside the others."""
+def _alternatives(state: _State) -> dict[int, list[int]]:
+    """Suspect -> rows that explain the misfit nearly as well, alone or in place of two suspects."""
+    found: dict[int, set[int]] = {suspect: set() for suspect in state.rows}
+    for suspect in state.rows:
+        w, _ = _beside(state, [suspect]).residuals()
+        near = np.flatnonzero((w[suspect] ** 2 - w**2 < _ODDS) & (w != 0.0))
+        found[suspect].update(near.tolist())
+    for first, second in list(combinations(state.rows, 2))[:_TWINS]:
+        others = _beside(state, [first, second])
+        rows, gain = _pair_gains(others, *others.residuals())
+        place = {int(row): i for i, row in enumerate(rows)}
+        if first not in place or second not in place:
+            continue
+        near = rows[np.unique(np.argwhere(gain > gain[place[first], place[second]] - _ODDS))]
+        found[first].update(near.tolist())
+        found[second].update(near.tolist())
+    return {one: sorted(rows.difference(state.rows)) for one, rows in found.items()}
+
+
+def _beside(state: _State, left_out: list[int]) -> _State:
+    """State in which some suspects have no bias of their own."""
     others = _State(state.base)
-    others.rows = [row for row in state.rows if row != suspect]
+    others.rows = [row for row in state.rows if row not in left_out]
     others.columns = state.columns[:, [state.rows.index(row) for row in others.rows]]
-    w, _ = others.residuals()
-    near = np.flatnonzero((w[suspect] ** 2 - w**2 < _ODDS) & (w != 0.0))
-    named = sorted({*near.tolist(), *state.twins.get(suspect, ())})
-    return [row for row in named if row != suspect and row not in state.rows]
+    return others
 
 
 def _result(state: _State, limit: float) -> BlunderSearch:
     adjustment = state.base.adjustment
     names = adjustment.model.rows
+    also = _alternatives(state)
     suspects = tuple(
         Suspect(
             row=names[row],
             bias=float(bias),
             u_bias=float(u),
             standardised=float(bias / u),
-            alternatives=tuple(names[other] for other in _alternatives(state, row)),
+            alternatives=tuple(names[other] for other in also[row]),
         )
         for row, bias, u in (
             zip(state.rows, state.biases, state.u_biases, strict=True) if state.rows else ()

@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 import pytest
-from checks import assert_published
 
+from checks import assert_published
 from clockgeo.errors import DataError
 from clockgeo.network.critical_values import (
     critical_residual,

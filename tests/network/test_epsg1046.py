@@ -4,11 +4,11 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
-from checks import assert_published
 from hypothesis import given
 from hypothesis import strategies as st
 from pyproj import Transformer
 
+from checks import assert_published
 from clockgeo.errors import DataError
 from clockgeo.network.epsg1046 import OffsetAndSlope, read_wkt, write_wkt
 
@@ -63,7 +63,7 @@ def test_text_that_is_no_such_operation_is_refused():
                 'METHOD["Vertical Offset",ID["EPSG",9616]]',
             )
         )
-    with pytest.raises(DataError, match="parameters are missing.*Vertical Offset"):
+    with pytest.raises(DataError, match=r"parameters are missing.*Vertical Offset"):
         read_wkt(
             wkt.replace('PARAMETER["Vertical Offset",', 'PARAMETER["Horizontal Offset",').replace(
                 'ID["EPSG",8603]', 'ID["EPSG",8699]'

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
-from small_nets import grid_net, level_net
 
 from clockgeo.levelling.session_rows import NumberOf
 from clockgeo.network.adjustment import adjust_network
@@ -13,6 +12,7 @@ from clockgeo.network.critical_values import critical_residual
 from clockgeo.network.loops import loop_misclosures
 from clockgeo.network.reliability import reliability_of
 from clockgeo.network.robust import adjust_robustly
+from small_nets import grid_net, level_net
 
 RUNS = 3000
 
@@ -24,7 +24,7 @@ def test_a_bias_of_the_detectable_size_is_found_as_often_as_stated():
     row = 5
     bias = reliability.minimal_detectable_bias[row]
     rng = np.random.default_rng(1)
-    # The residual test is linear in the observations: w = (P v)/sqrt(M), with v from the columns of M.
+    # The test is linear in the observations: w = (P v)/sqrt(M), and P v are the columns of M.
     columns = reliability.columns(np.arange(len(model.rows)))
     noise = np.sqrt(model.noise.diagonal())
     draws = rng.standard_normal((RUNS, noise.size)) * noise

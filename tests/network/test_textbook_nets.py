@@ -4,12 +4,12 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
-from checks import assert_published
-from small_nets import level_net
 
+from checks import assert_published
 from clockgeo.levelling.session_rows import NumberOf
 from clockgeo.network.adjustment import adjust_network
 from clockgeo.network.reliability import reliability_of
+from small_nets import level_net
 
 # Ghilani, Adjustment Computations, ch. 12, level net between the benchmarks X = 100.00 ft and
 # Y = 107.50 ft; data and printed heights from memory, further digits recomputed from the data.
