@@ -1,7 +1,49 @@
-"""Before the survey: prediction, optimal use of days, simulation."""
+"""Before the survey: prediction, optimal use of days, simulation.
+
+Names are imported when first used, so that a command pays only for what it needs.
+"""
 
 from __future__ import annotations
 
-from clockgeo.planning.simulation import SimulatedSession, simulate_records, simulate_sessions
+import importlib
+from typing import TYPE_CHECKING, Any
 
-__all__ = ["SimulatedSession", "simulate_records", "simulate_sessions"]
+if TYPE_CHECKING:
+    from clockgeo.planning.output import PLAN_FILES, write_plan
+    from clockgeo.planning.planner import Planned, plan
+    from clockgeo.planning.results import PlanResult
+    from clockgeo.planning.simulation import SimulatedSession, simulate_records, simulate_sessions
+
+_HOMES = {
+    "PLAN_FILES": "output",
+    "PlanResult": "results",
+    "Planned": "planner",
+    "SimulatedSession": "simulation",
+    "plan": "planner",
+    "simulate_records": "simulation",
+    "simulate_sessions": "simulation",
+    "write_plan": "output",
+}
+"""Public name -> module of this package that holds it."""
+
+__all__ = [
+    "PLAN_FILES",
+    "PlanResult",
+    "Planned",
+    "SimulatedSession",
+    "plan",
+    "simulate_records",
+    "simulate_sessions",
+    "write_plan",
+]
+
+
+def __getattr__(name: str) -> Any:
+    if name not in _HOMES:
+        message = f"module {__name__!r} has no attribute {name!r}"
+        raise AttributeError(message)
+    return getattr(importlib.import_module(f"{__name__}.{_HOMES[name]}"), name)
+
+
+def __dir__() -> list[str]:
+    return sorted([*globals(), *_HOMES])

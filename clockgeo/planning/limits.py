@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from clockgeo.planning.prediction import STAYS, Prediction
-from clockgeo.planning.requirement import EffectNeed, Need
+from clockgeo.planning.requirement import Need
 
 __all__ = ["words_of"]
 
@@ -46,7 +46,7 @@ def _with_time(need: Need, prediction: Prediction) -> str:
     if need.stability_factor is not None:
         ways.append(f"white noise of clocks and links times {need.stability_factor:.2f}")
     ways += [
-        f"u of {_effect(one)} times {one.factor:.2f}"
+        f"u of {one.label} times {one.factor:.2f}"
         for one in need.effects[:1]
         if one.factor is not None and one.factor < 1.0
     ]
@@ -62,7 +62,7 @@ def _without_time(need: Need) -> str:
     one = need.effects[0]
     common = "reproducibility of each stay" if one.term == STAYS else "common effect"
     answer = f"Even with endless time u stays at {_length(need.floor_u)}, because the {common} "
-    answer += f"{_effect(one)} of {one.u:.2g} does not average: "
+    answer += f"{one.label} of {one.u:.2g} does not average: "
     if one.factor is None:
         return answer + (
             "even without it the target is missed, so several effects or the flicker floor must "
@@ -71,10 +71,6 @@ def _without_time(need: Need) -> str:
     advice = "halve it" if one.factor >= 0.5 else f"multiply it by {one.factor:.2f}"
     more = "stay twice" if one.term == STAYS else "calibrate twice"
     return f"{answer}{advice} or {more}."
-
-
-def _effect(one: EffectNeed) -> str:
-    return f"{one.owner} · {one.name}" if one.owner else one.name
 
 
 def _length(metres: float) -> str:

@@ -73,6 +73,11 @@ class EffectNeed:
     part: float
     factor: float | None
 
+    @property
+    def label(self) -> str:
+        """Owner and name."""
+        return f"{self.owner} · {self.name}" if self.owner else self.name
+
 
 @dataclass(frozen=True)
 class Need:

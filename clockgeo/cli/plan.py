@@ -1,0 +1,153 @@
+"""`clockgeo plan`: what a campaign will reach, what limits it and what to change."""
+
+from __future__ import annotations
+
+from pathlib import Path
+from typing import TYPE_CHECKING, Annotated
+
+import typer
+
+from clockgeo.cli.options import Force, Json, OutFolder, Quiet, Verbose
+
+if TYPE_CHECKING:
+    from clockgeo.planning.results import PlanResult
+
+Campaign = Annotated[Path, typer.Argument(help="Campaign document (TOML) with a [target].")]
+
+
+def command(
+    campaign: Campaign,
+    out: OutFolder,
+    force: Force = False,
+    json: Json = False,
+    quiet: Quiet = False,
+    verbose: Verbose = False,
+) -> None:
+    """Predict what a planned campaign will reach, and how to reach more.
+
+    Runs the model of level and adjust without data. Writes plan.json and sessions.toml into the folder given with --out.
+
+    Example: clockgeo plan examples/saddle/campaign.toml --out results/saddle-plan
+    """
+    from clockgeo.campaign import prepare_folder, read_document
+    from clockgeo.cli.terminal import print_json, progress_shown, say
+    from clockgeo.planning import PLAN_FILES, plan, write_plan
+
+    document = read_document(campaign)
+    folder = prepare_folder(out, PLAN_FILES, replace=force)
+    with progress_shown(quiet=quiet or json):
+        planned = plan(document)
+        written = write_plan(planned.result, planned.sessions, folder, replace=force)
+    if json:
+        print_json(planned.result)
+    elif not quiet:
+        _tell(planned.result, verbose=verbose)
+        for path in written:
+            say(f"written: {path}")
+
+
+_GAINS = 6
+
+
+def _tell(result: PlanResult, *, verbose: bool) -> None:
+    """Print targets, limits, sessions, the best changes and the alternatives."""
+    from clockgeo.cli.terminal import say, show_table
+
+    say(result.name + "\n")
+    show_table(
+        "Targets (standard uncertainty, mm of height)",
+        ["from", "to", "wanted", "predicted", "endless time", "reached"],
+        [
+            (
+                one.from_end,
+                one.to_end,
+                f"{1e3 * one.required_u:.1f}",
+                f"{1e3 * one.predicted_u:.1f}",
+                f"{1e3 * one.floor_u:.1f}",
+                "yes" if one.reached else "no",
+            )
+            for one in result.targets
+        ],
+        left=2,
+    )
+    for limit in result.limits:
+        say(f"{limit.from_end} to {limit.to_end}: {limit.text}")
+    say()
+    show_table(
+        "Sessions (u in 1e-18)",
+        ["session", "start", "days", "uptime", "u stat.", "u syst."],
+        [
+            (
+                one.id,
+                one.start[:16],
+                f"{one.days:.2f}",
+                f"{100 * one.uptime:.0f} %",
+                f"{one.u_statistical * 1e18:.2f}",
+                f"{one.u_systematic * 1e18:.2f}",
+            )
+            for one in result.sessions
+        ],
+        left=2,
+    )
+    _tell_terms(result)
+    _tell_changes(result, most=None if verbose else _GAINS)
+    _tell_alternatives(result)
+    costs = result.costs
+    cost = f", {costs.total:g} {costs.unit}" if costs.total else ""
+    say(f"{costs.days:.1f} d, {costs.moves} moves, {costs.distance / 1e3:.0f} km{cost}")
+    for note in result.notes:
+        say(f"note: {note}")
+    say(result.conventions.caution)
+
+
+def _tell_terms(result: PlanResult) -> None:
+    from clockgeo.cli.terminal import show_table
+
+    show_table(
+        "What makes up u",
+        ["from", "to", "term", "y / 1e-18", "mm"],
+        [
+            (one.from_end, one.to_end, one.effect, f"{one.y * 1e18:.2f}", f"{one.height_mm:.1f}")
+            for one in result.terms
+        ],
+        left=3,
+    )
+
+
+def _tell_changes(result: PlanResult, *, most: int | None) -> None:
+    from clockgeo.cli.terminal import show_table
+
+    rows = []
+    for target in result.targets:
+        ends = target.from_end, target.to_end
+        lines = [one for one in result.sensitivity if (one.from_end, one.to_end) == ends]
+        rows += [
+            (*ends, one.change, f"{1e3 * one.u:.1f}", f"{1e3 * one.gain:.2f}")
+            for one in lines[:most]
+        ]
+    show_table("What helps most", ["from", "to", "change", "u / mm", "gain / mm"], rows, left=3)
+
+
+def _tell_alternatives(result: PlanResult) -> None:
+    from clockgeo.cli.terminal import show_table
+
+    if result.alternatives:
+        show_table(
+            "Other techniques (u in mm)",
+            ["from", "to", "km", "clocks", "levelling", "GNSS/geoid", "break-even / km"],
+            [
+                (
+                    one.from_end,
+                    one.to_end,
+                    f"{one.distance / 1e3:.0f}",
+                    f"{1e3 * one.u_clock:.1f}",
+                    f"{1e3 * one.u_levelling:.1f}",
+                    f"{1e3 * one.u_gnss_geoid:.1f}",
+                    "none"
+                    if one.break_even_distance is None
+                    else f"{one.break_even_distance / 1e3:.0f}",
+                )
+                for one in result.alternatives
+            ],
+            left=2,
+        )

@@ -1,0 +1,62 @@
+"""A plan on disk: `plan.json`, tables as CSV, and the sessions as they go into the document."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from pathlib import Path
+
+from clockgeo.campaign.schema import Placed, Session
+from clockgeo.files import json_text, write_text
+from clockgeo.planning.results import PlanResult
+
+__all__ = ["PLAN_FILES", "sessions_toml", "write_plan"]
+
+PLAN_FILES = ("plan.json", "sessions.toml")
+
+
+def write_plan(
+    result: PlanResult, sessions: Sequence[Session], folder: Path, *, replace: bool = False
+) -> list[Path]:
+    """Write `plan.json` and `sessions.toml` into `folder`; return their paths.
+
+    Raises
+    ------
+    OutputError
+        If a file exists and `replace` is false, or cannot be written.
+    """
+    texts = (json_text(result), sessions_toml(sessions))
+    paths = [folder / name for name in PLAN_FILES]
+    for path, text in zip(paths, texts, strict=True):
+        write_text(path, text, replace=replace)
+    return paths
+
+
+def sessions_toml(sessions: Sequence[Session]) -> str:
+    """Return planned sessions as `[[session]]` tables, ready for the campaign document."""
+    return "\n".join(_session(one) for one in sessions)
+
+
+def _session(session: Session) -> str:
+    lines = ["[[session]]", f"id = {_text(session.id)}"]
+    for role, placed in zip(("numerator", "denominator"), session.places, strict=True):
+        lines.append(f"{role} = {_placed(placed)}")
+    if session.links:
+        lines.append(f"links = [{', '.join(map(_text, session.links))}]")
+    if session.start is not None:
+        lines.append(f"start = {session.start:%Y-%m-%dT%H:%M:%SZ}")
+    if session.planned_seconds is not None:
+        lines.append(f"hours = {session.planned_seconds / 3600.0!r}")
+    lines.append(f"uptime = {session.uptime!r}")
+    return "\n".join(lines) + "\n"
+
+
+def _placed(placed: Placed) -> str:
+    return f"{{ clock = {_text(placed.clock)}, site = {_text(placed.site)} }}"
+
+
+def _text(text: str) -> str:
+    """Basic string of TOML."""
+    import json
+
+    # JSON escapes are escapes of TOML too; only DEL must be escaped there and is not here.
+    return json.dumps(text, ensure_ascii=False).replace("\x7f", "\\u007f")

@@ -1,0 +1,118 @@
+"""The command's work: from a document with a target to everything that is said about the plan."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+
+from clockgeo import __version__
+from clockgeo.campaign.document import Document
+from clockgeo.campaign.results import Conventions, Input, Provenance
+from clockgeo.campaign.schema import Session
+from clockgeo.files import sha256_of
+from clockgeo.gravity import CAUTION, zero_level
+from clockgeo.planning.checking import refuse_what_cannot_be_planned
+from clockgeo.planning.prediction import Prediction, goals_of, plan_model
+from clockgeo.planning.requirement import need_of
+from clockgeo.planning.results import CostResult, PlanResult
+from clockgeo.planning.tabulating import (
+    alternative_results,
+    cost_result,
+    limit_result,
+    reach_curve,
+    sensitivity_lines,
+    session_results,
+    site_places,
+    stay_results,
+    target_result,
+    term_lines,
+)
+from clockgeo.progress import track
+
+__all__ = ["Planned", "plan"]
+
+_SIGN = "Differences are second minus first; C = W0 - W grows with height."
+
+
+@dataclass(frozen=True, eq=False)
+class Planned:
+    """A plan's result, and the prediction that it was read from.
+
+    Attributes
+    ----------
+    result : PlanResult
+    prediction : Prediction
+    sessions : tuple of Session
+        All sessions of the plan, as they would stand in the document.
+    """
+
+    result: PlanResult
+    prediction: Prediction
+    sessions: tuple[Session, ...]
+
+
+def plan(document: Document) -> Planned:
+    """Plan a campaign.
+
+    Parameters
+    ----------
+    document : Document
+        With `[target]`, and planned sessions, candidates or both.
+
+    Raises
+    ------
+    CampaignError
+        If the document cannot be planned; with all problems.
+    DataError
+        If the sessions do not determine what is wanted.
+    """
+    refuse_what_cannot_be_planned(document)
+    campaign = document.campaign
+    sessions = tuple(campaign.sessions)
+    model = plan_model(document, sessions)
+    prediction = model.solve()
+    goals = goals_of(model)
+    needs = [need_of(prediction, goal) for goal in track(goals, "finding what it takes")]
+    level = zero_level(campaign.head.zero_level)
+    costs = cost_result(prediction)
+    result = PlanResult(
+        name=campaign.head.name,
+        conventions=Conventions(
+            sign=_SIGN,
+            zero_level=level.name,
+            w0=level.w0 or 0.0,
+            tide_system=campaign.head.tide_system,
+            reference_site=campaign.head.reference_site,
+            tide=campaign.head.tide,
+            ellipsoid="grs80",
+            caution=CAUTION,
+        ),
+        targets=tuple(target_result(need) for need in needs),
+        sessions=tuple(session_results(prediction, set())),
+        limits=tuple(limit_result(need, prediction) for need in needs),
+        terms=tuple(line for goal in goals for line in term_lines(prediction, goal)),
+        alternatives=tuple(alternative_results(campaign, prediction, goals)),
+        sensitivity=tuple(sensitivity_lines(prediction, goals)),
+        reach=tuple(reach_curve(prediction, goals)),
+        sites=tuple(site_places(prediction)),
+        stays=tuple(stay_results(prediction)),
+        costs=costs,
+        optimum=None,
+        confirmation=None,
+        notes=tuple(_notes(costs, sessions)),
+        provenance=Provenance(
+            version=__version__,
+            inputs=(Input(path=document.path.name, sha256=sha256_of(document.path)),),
+        ),
+    )
+    return Planned(result, prediction, sessions)
+
+
+def _notes(costs: CostResult, sessions: Sequence[Session]) -> Iterator[str]:
+    if costs.within_deadline is False:
+        yield f"the last session ends at {costs.last_stop}, after the deadline {costs.deadline}"
+    if costs.within_budget is False:
+        yield f"the plan costs {costs.total:g} {costs.unit}, more than the {costs.budget:g} allowed"
+    measured = [one.id for one in sessions if one.record is not None]
+    if measured:
+        yield f"planned without their records: {', '.join(measured)}"
