@@ -238,9 +238,13 @@ def _alternatives(state: _State) -> dict[int, list[int]]:
         place = {int(row): i for i, row in enumerate(rows)}
         if first not in place or second not in place:
             continue
-        near = rows[np.unique(np.argwhere(gain > gain[place[first], place[second]] - _ODDS))]
-        found[first].update(near.tolist())
-        found[second].update(near.tolist())
+        near = gain > gain[place[first], place[second]] - _ODDS
+        # A pair with one of the suspects in it is another reading of the other one only.
+        near[[place[first], place[second]], :] = False
+        near[:, [place[first], place[second]]] = False
+        instead = set(rows[np.unique(np.argwhere(near))].tolist())
+        found[first] |= instead
+        found[second] |= instead
     return {one: sorted(rows.difference(state.rows)) for one, rows in found.items()}
 
 
