@@ -11,6 +11,7 @@ from clockgeo.campaign.measuring import Measured, measure
 from clockgeo.campaign.plausibility import record_problems
 from clockgeo.campaign.schema import Session
 from clockgeo.errors import CampaignError, ClockgeoError
+from clockgeo.levelling.linear_model import ModelBuilder
 from clockgeo.progress import track
 
 __all__ = ["CheckReport", "SessionState", "check_campaign"]
@@ -72,7 +73,24 @@ def check_campaign(path: str | Path) -> CheckReport:
         geodetic_numbers(document.campaign, document.folder, _sites(document))
     except ClockgeoError as error:
         report.problems.append(f"[geoid]: {error}")
+    _check_network(document, report)
     return report
+
+
+def _check_network(document: Document, report: CheckReport) -> None:
+    """Read the tables of the height network, if there are any, as `adjust` will."""
+    campaign = document.campaign
+    if not (campaign.levellings or campaign.datums or campaign.gnss or campaign.tide_gauges):
+        return
+    from clockgeo.campaign.networking import add_network  # heavy: only for a network
+
+    try:
+        rows = add_network(ModelBuilder(), document)
+    except ClockgeoError as error:
+        report.problems.append(str(error))
+        return
+    counted = ", ".join(f"{len(ids)} of {name}" for name, ids in rows.groups.items())
+    report.notes.append(f"height network: {len(rows.points.ids)} points; observations: {counted}")
 
 
 def _sites(document: Document) -> list[str]:

@@ -89,6 +89,18 @@ def test_a_clock_whose_records_overlap_at_two_sites_is_told(saddle):
     assert "clock 'wanderer' is at 'kesselin' while the record of 'local 1'" in result.stdout
 
 
+def test_network_tables_are_checked_too(project, tmp_path):
+    folder = shutil.copytree(project / "examples" / "four-datums", tmp_path / "example")
+    result = run(folder / "campaign.toml")
+    assert result.exit_code == 0
+    assert "height network: 400 points; observations: 595 of lines" in result.stdout
+    with (folder / "lines.csv").open("a", encoding="utf-8") as stream:
+        stream.write("coast-001,nowhere,1.0,1000\n")
+    result = run(folder / "campaign.toml")
+    assert result.exit_code == 1
+    assert "to is not a point of the net" in result.stdout
+
+
 def test_the_schema_is_a_json_schema_of_the_document():
     schema = json.loads(run("--schema").stdout)
     assert schema["$schema"].startswith("https://json-schema.org/")
