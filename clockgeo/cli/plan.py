@@ -25,7 +25,8 @@ def command(
 ) -> None:
     """Predict what a planned campaign will reach, and how to reach more.
 
-    Runs the model of level and adjust without data. Writes plan.json and sessions.toml into the folder given with --out.
+    Runs the model of level and adjust without data. Writes plan.json and sessions.toml into
+    the folder given with --out.
 
     Example: clockgeo plan examples/saddle/campaign.toml --out results/saddle-plan
     """
