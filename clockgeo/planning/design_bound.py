@@ -33,7 +33,7 @@ def lower_bound(
     """
     name = problem.criterion
     if name == "D":
-        value, slope = state.value, state.weighted_slope(np.linalg.inv(state.v))
+        value, slope = state.value, state.weighted_slope(np.asarray(np.linalg.inv(state.v)))
     elif name == "A":
         value, slope = state.value, state.weighted_slope(np.eye(len(state.v)))
     else:

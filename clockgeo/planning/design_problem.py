@@ -146,4 +146,6 @@ class State:
 
     def weighted_slope(self, weights: Array) -> Array:
         """Derivative of tr(W V) with respect to w, shape (n,)."""
-        return -self.problem.rate * np.einsum("ik,ij,jk->k", self.seen, weights, self.seen)
+        return np.asarray(
+            -self.problem.rate * np.einsum("ik,ij,jk->k", self.seen, weights, self.seen)
+        )

@@ -50,7 +50,7 @@ def _most_central(problem: DesignProblem) -> Array:
         b_ub=limit,
         bounds=[(None, None)] * n + [(None, 1.0)],
     )
-    if found.status != 0 or found.x[-1] <= 1e-9:
+    if found.status != 0 or found.x is None or found.x[-1] <= 1e-9:
         raise DataError(
             "the candidates' bounds, the days and the wish for control leave no room",
             advice="Give more days, lower least_days, or add candidates",

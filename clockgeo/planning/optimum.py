@@ -1,9 +1,9 @@
 """The best allocation of time, by a primal-dual interior-point method, with a bound that proves it.
 
 The problem is to minimise φ(w) = tr V or ln det V, or t with V <= t I (E) or diag V <= t (worst),
-under linear constraints Z w <= z. With slacks f = z - Z w and F, multipliers λ and W, each step solves
-the linearised conditions of optimality, F = t I - V, λ f = μ and W F = μ I, for a falling μ. F is a
-variable of its own, so that the curvature of V does not shorten the steps.
+under linear constraints Z w <= z. With slacks f = z - Z w and F, multipliers λ and W, each step
+solves the linearised conditions of optimality, F = t I - V, λ f = μ and W F = μ I, for a falling μ.
+F is a variable of its own, so that the curvature of V does not shorten the steps.
 """
 
 from __future__ import annotations

@@ -11,6 +11,7 @@ from clockgeo.campaign.results import Conventions, Input, Provenance
 from clockgeo.campaign.schema import Session
 from clockgeo.files import sha256_of
 from clockgeo.gravity import CAUTION, zero_level
+from clockgeo.planning.best_use import best_use
 from clockgeo.planning.checking import refuse_what_cannot_be_planned
 from clockgeo.planning.prediction import Prediction, goals_of, plan_model
 from clockgeo.planning.requirement import need_of
@@ -68,7 +69,8 @@ def plan(document: Document) -> Planned:
     """
     refuse_what_cannot_be_planned(document)
     campaign = document.campaign
-    sessions = tuple(campaign.sessions)
+    best = best_use(document) if campaign.candidates else None
+    sessions = (*campaign.sessions, *(best.sessions if best else ()))
     model = plan_model(document, sessions)
     prediction = model.solve()
     goals = goals_of(model)
@@ -88,7 +90,7 @@ def plan(document: Document) -> Planned:
             caution=CAUTION,
         ),
         targets=tuple(target_result(need) for need in needs),
-        sessions=tuple(session_results(prediction, set())),
+        sessions=tuple(session_results(prediction, {one.id for one in campaign.candidates})),
         limits=tuple(limit_result(need, prediction) for need in needs),
         terms=tuple(line for goal in goals for line in term_lines(prediction, goal)),
         alternatives=tuple(alternative_results(campaign, prediction, goals)),
@@ -97,7 +99,7 @@ def plan(document: Document) -> Planned:
         sites=tuple(site_places(prediction)),
         stays=tuple(stay_results(prediction)),
         costs=costs,
-        optimum=None,
+        optimum=best.result if best else None,
         confirmation=None,
         notes=tuple(_notes(costs, sessions)),
         provenance=Provenance(

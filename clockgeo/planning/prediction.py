@@ -128,13 +128,17 @@ class PlanModel:
         return replace(self, others=replace(self.others, loading=loading))
 
     def whole(self) -> LinearModel:
-        """Return the model with all its noise, as it is solved."""
+        """Return the model with all its noise, as it is solved: values are zero, u is the answer."""
         total = np.sum(list(self.parts.values()), axis=0)
         size = len(self.others.rows)
         rows = self.clock_rows
         i, j = np.meshgrid(rows, rows, indexing="ij")
         block = sparse.coo_array((total.ravel(), (i.ravel(), j.ravel())), shape=(size, size))
-        return replace(self.others, noise=sparse.csr_array(self.others.noise + block))
+        return replace(
+            self.others,
+            values=np.zeros(size),
+            noise=sparse.csr_array(self.others.noise + block),
+        )
 
     def solve(self) -> Prediction:
         """Solve it.
@@ -155,7 +159,7 @@ class Prediction:
     ----------
     model : PlanModel
     solution : Solution
-        Its estimates are the stated numbers or zero and mean nothing; its covariance is the answer.
+        Its estimates are zero and mean nothing; its covariance is the answer.
     """
 
     model: PlanModel

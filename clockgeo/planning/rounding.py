@@ -1,0 +1,139 @@
+"""Whole days from a continuous optimum: fill up step by step, then exchange."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+
+import numpy as np
+
+from clockgeo.planning.design_problem import Array, DesignProblem, State
+
+__all__ = ["round_to_steps"]
+
+_TRIED = 12
+"""Candidates on each side that an exchange looks at, by their slopes."""
+_EXCHANGES = 500
+_TRIMS = 2000
+_NOTHING = 0.02
+"""Share of a step below which a continuous time counts as none."""
+
+Allowed = Callable[[Array], bool]
+
+
+def round_to_steps(
+    problem: DesignProblem, w: Array, step: float, *, allowed: Allowed | None = None
+) -> Array:
+    """Round an allocation to whole steps.
+
+    Parameters
+    ----------
+    problem : DesignProblem
+    w : float array, shape (n,)
+        Continuous optimum.
+    step : float
+        Times become multiples of it.
+    allowed : callable, optional
+        Says of an allocation whether it may be the answer (a budget with fixed costs, control).
+
+    Returns
+    -------
+    float array, shape (n,)
+
+    Notes
+    -----
+    Rounded down, then filled up where a step helps most, then exchanged one step for another while
+    that helps (in the manner of Fedorov 1972, Theory of Optimal Experiments). A local optimum; how
+    far it can be from the best is told by the bound of the continuous problem.
+    """
+    may = allowed or (lambda _: True)
+    least = np.ceil(problem.least / step - 1e-9) * step
+    whole = np.floor(w / step + 1e-6) * step
+    if allowed is not None:
+        # Short sessions may be what controls the others: they get a step rather than none.
+        whole = np.where(w > _NOTHING * step, np.ceil(w / step - 1e-6) * step, 0.0)
+    whole = _trimmed(problem, np.maximum(whole, least), step, least, may)
+    whole = _filled(problem, whole, step, may)
+    for _ in range(_EXCHANGES):
+        better = _exchange(problem, whole, step, least, may)
+        if better is None:
+            break
+        whole = better
+    return whole + 0.0  # no minus zero
+
+
+def _room(problem: DesignProblem, w: Array, step: float) -> Array:
+    """Where one more step fits."""
+    left = problem.budget - float(problem.cost @ w)
+    fits = (w + step <= problem.most + 1e-9) & (problem.cost * step <= left + 1e-9)
+    return np.asarray(fits)
+
+
+def _filled(problem: DesignProblem, w: Array, step: float, may: Allowed) -> Array:
+    while np.any(fits := _room(problem, w, step)):
+        more = [w + step * _unit(w, k) for k in _promising(problem, w, fits)]
+        kept = [one for one in more if may(one)]
+        if not kept:
+            break
+        w = min(kept, key=problem.value)
+    return w
+
+
+def _promising(problem: DesignProblem, w: Array, fits: Array) -> list[int]:
+    """Candidates that fit, those with the steepest slopes first."""
+    gain = -_slope(problem, w)
+    order = np.argsort(-np.where(fits, gain, -np.inf), kind="stable")
+    return [k for k in order.tolist() if fits[k]][:_TRIED]
+
+
+def _slope(problem: DesignProblem, w: Array) -> Array:
+    """Slope of the criterion; of the worst of the variances where there are several."""
+    state = State(problem, w)
+    weights = np.eye(len(state.v))
+    if problem.criterion == "D":
+        weights = np.asarray(np.linalg.inv(state.v))
+    elif problem.criterion == "E":
+        vector = np.linalg.eigh(state.v)[1][:, -1]
+        weights = np.outer(vector, vector)
+    elif problem.criterion == "worst":
+        variance = np.diag(state.v)
+        weights = np.diag((variance / variance.max()) ** 8)
+    return state.weighted_slope(weights)
+
+
+def _unit(w: Array, k: int) -> Array:
+    unit = np.zeros_like(w)
+    unit[k] = 1.0
+    return unit
+
+
+def _trimmed(problem: DesignProblem, w: Array, step: float, least: Array, may: Allowed) -> Array:
+    """Take steps away until the budget is kept and the allocation is allowed, if it can be."""
+    for _ in range(_TRIMS):
+        over = float(problem.cost @ w) > problem.budget + 1e-9
+        if not over and may(w):
+            break
+        fewer = [w - step * _unit(w, k) for k in range(len(w)) if w[k] - step >= least[k] - 1e-9]
+        kept = [one for one in fewer if may(one)] or fewer
+        if not kept:
+            break
+        w = min(kept, key=problem.value)
+    return w
+
+
+def _exchange(
+    problem: DesignProblem, w: Array, step: float, least: Array, may: Allowed
+) -> Array | None:
+    here = problem.value(w)
+    slope = _slope(problem, w)
+    takers = [k for k in np.argsort(slope).tolist() if w[k] + step <= problem.most[k] + 1e-9]
+    givers = [k for k in np.argsort(-slope).tolist() if w[k] - step >= least[k] - 1e-9]
+    best, value = None, here * (1.0 - 1e-12) if here > 0.0 else here - 1e-12
+    for k in givers[:_TRIED]:
+        for j in takers[:_TRIED]:
+            moved = w + step * (_unit(w, j) - _unit(w, k))
+            if j == k or float(problem.cost @ moved) > problem.budget + 1e-9:
+                continue
+            found = problem.value(moved)
+            if found < value and may(moved):
+                best, value = moved, found
+    return best
