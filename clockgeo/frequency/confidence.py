@@ -26,7 +26,13 @@ LAW_OF_ALPHA = {
 ALPHA_OF_LAW = {law: alpha for alpha, law in LAW_OF_ALPHA.items()}
 
 _TOTAL = {0: (1.50, 0.0), -1: (1.17, 0.22), -2: (0.93, 0.36)}
-_MODIFIED_TOTAL = {2: (1.90, 2.10), 1: (1.20, 1.40), 0: (1.10, 1.20), -1: (0.85, 0.50), -2: (0.75, 0.31)}
+_MODIFIED_TOTAL = {
+    2: (1.90, 2.10),
+    1: (1.20, 1.40),
+    0: (1.10, 1.20),
+    -1: (0.85, 0.50),
+    -2: (0.75, 0.31),
+}
 _HADAMARD_TOTAL = {
     0: (0.559, 1.004),
     -1: (0.868, 1.140),
@@ -66,10 +72,12 @@ def freedom_of(statistic: Statistic, alpha: int, m: int, samples: int) -> float:
     """
     if statistic.total:
         return max(_total_freedom(statistic, alpha, m, samples), 1.0)
-    modified = statistic.kind == "modified"
+    modified = statistic.kind == "modified" and m > 1  # with m = 1 it is the plain one
     filter_factor = 1.0 if modified else (np.inf if alpha <= 0 else float(m))
     stride = 1 if statistic.kind == "plain" else min(m, _OVERLAP)
-    return max(_difference_freedom(alpha, statistic.order, m, samples + 1, filter_factor, stride), 1.0)
+    return max(
+        _difference_freedom(alpha, statistic.order, m, samples + 1, filter_factor, stride), 1.0
+    )
 
 
 def _total_freedom(statistic: Statistic, alpha: int, m: int, samples: int) -> float:
@@ -87,7 +95,8 @@ def _total_freedom(statistic: Statistic, alpha: int, m: int, samples: int) -> fl
 def _difference_freedom(
     alpha: int, order: int, m: int, phases: int, filter_factor: float, stride: int
 ) -> float:
-    length = m / filter_factor + m * order
+    # One phase more than the reach of a difference, and m for the average of the modified kind.
+    length = m * order + max(m / filter_factor, 1.0)
     number = 1 + int(np.floor(stride * (phases - length) / m))
     if number < 1:
         raise DataError(

@@ -45,7 +45,9 @@ def expected_allan_variance(alpha, m):
     σ² = 2 ∫ S_y sin⁴(π m f) / (m sin(π f))² df over 0 to 1/2: the transfer function of differences
     of sums of m samples. The integral is a sum over midpoints on a grid that is fine near zero.
     """
-    edges = np.concatenate(([0.0], np.geomspace(1e-9, 1e-3, 20_001), np.linspace(1e-3, 0.5, 400_001)[1:]))
+    edges = np.concatenate(
+        ([0.0], np.geomspace(1e-9, 1e-3, 20_001), np.linspace(1e-3, 0.5, 400_001)[1:])
+    )
     f = (edges[1:] + edges[:-1]) / 2.0
     density = 2.0 * np.abs(2.0 * np.sin(np.pi * f)) ** alpha
     transfer = 2.0 * np.sin(np.pi * m * f) ** 4 / (m * np.sin(np.pi * f)) ** 2
