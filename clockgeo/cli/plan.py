@@ -7,17 +7,26 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from clockgeo.cli.options import Force, Json, OutFolder, Quiet, Verbose
+from clockgeo.cli.options import FigureKind, Figures, Force, Json, OutFolder, Quiet, Verbose
 
 if TYPE_CHECKING:
     from clockgeo.planning.results import PlanResult
 
 Campaign = Annotated[Path, typer.Argument(help="Campaign document (TOML) with a [target].")]
 
+Confirm = Annotated[
+    int, typer.Option("--confirm", min=0, help="Simulate so many campaigns and compare.")
+]
+Seed = Annotated[int, typer.Option("--seed", min=0, help="Of the simulated campaigns.")]
+
 
 def command(
     campaign: Campaign,
     out: OutFolder,
+    confirm: Confirm = 0,
+    seed: Seed = 1,
+    figures: Figures = None,
+    figure_kind: FigureKind = "png",
     force: Force = False,
     json: Json = False,
     quiet: Quiet = False,
@@ -25,20 +34,29 @@ def command(
 ) -> None:
     """Predict what a planned campaign will reach, and how to reach more.
 
-    Runs the model of level and adjust without data. Writes plan.json and sessions.toml into
-    the folder given with --out.
+    Runs the model of level and adjust without data. Writes plan.json, sessions.toml and
+    report.html into the folder given with --out, and the page's pictures as files into the folder
+    given with --figures. With --confirm, simulated campaigns show the scatter beside the u.
 
     Example: clockgeo plan examples/saddle/campaign.toml --out results/saddle-plan
     """
     from clockgeo.campaign import prepare_folder, read_document
     from clockgeo.cli.terminal import print_json, progress_shown, say
     from clockgeo.planning import PLAN_FILES, plan, write_plan
+    from clockgeo.report import PAGE, plan_page, prepare_figures, write_figures, write_page
 
     document = read_document(campaign)
-    folder = prepare_folder(out, PLAN_FILES, replace=force)
+    folder = prepare_folder(out, (*PLAN_FILES, PAGE), replace=force)
+    suffix = f".{figure_kind}"
+    if figures is not None:
+        prepare_figures(figures, suffix=suffix, replace=force)
     with progress_shown(quiet=quiet or json):
-        planned = plan(document)
+        planned = plan(document, confirm_runs=confirm, seed=seed)
+        page = plan_page(planned.result)
         written = write_plan(planned.result, planned.sessions, folder, replace=force)
+        written.append(write_page(folder / PAGE, page, replace=force))
+        if figures is not None:
+            written += write_figures(page, figures, suffix=suffix, replace=force)
     if json:
         print_json(planned.result)
     elif not quiet:
@@ -93,6 +111,8 @@ def _tell(result: PlanResult, *, verbose: bool) -> None:
     _tell_terms(result)
     _tell_changes(result, most=None if verbose else _GAINS)
     _tell_alternatives(result)
+    _tell_optimum(result)
+    _tell_confirmation(result)
     costs = result.costs
     cost = f", {costs.total:g} {costs.unit}" if costs.total else ""
     say(f"{costs.days:.1f} d, {costs.moves} moves, {costs.distance / 1e3:.0f} km{cost}")
@@ -152,3 +172,41 @@ def _tell_alternatives(result: PlanResult) -> None:
             ],
             left=2,
         )
+
+
+def _tell_optimum(result: PlanResult) -> None:
+    from clockgeo.cli.terminal import say, show_table
+
+    if result.optimum is None:
+        return
+    show_table(
+        "How the days are shared out",
+        ["candidate", "optimal days", "whole steps"],
+        [(one.id, f"{one.optimal_days:.2f}", f"{one.days:g}") for one in result.optimum.shares],
+    )
+    say(result.optimum.text)
+    if not result.optimum.controlled:
+        say(f"nothing else checks these sessions: {', '.join(result.optimum.uncontrolled)}")
+
+
+def _tell_confirmation(result: PlanResult) -> None:
+    from clockgeo.cli.terminal import show_table
+
+    if result.confirmation is None:
+        return
+    show_table(
+        f"{result.confirmation.runs} simulated campaigns (mm)",
+        ["from", "to", "predicted", "realised", "expected", "agrees"],
+        [
+            (
+                one.from_end,
+                one.to_end,
+                f"{1e3 * one.predicted_u:.1f}",
+                f"{1e3 * one.realised_u:.1f}",
+                f"{1e3 * one.lower:.1f} to {1e3 * one.upper:.1f}",
+                "yes" if one.agrees else "no",
+            )
+            for one in result.confirmation.targets
+        ],
+        left=2,
+    )

@@ -9,8 +9,11 @@ import importlib
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
+    from clockgeo.planning.confirmation import confirm
     from clockgeo.planning.output import PLAN_FILES, write_plan
     from clockgeo.planning.planner import Planned, plan
+    from clockgeo.planning.prediction import goals_of, plan_model
+    from clockgeo.planning.requirement import averaging_time
     from clockgeo.planning.results import PlanResult
     from clockgeo.planning.simulation import SimulatedSession, simulate_records, simulate_sessions
 
@@ -19,7 +22,11 @@ _HOMES = {
     "PlanResult": "results",
     "Planned": "planner",
     "SimulatedSession": "simulation",
+    "averaging_time": "requirement",
+    "confirm": "confirmation",
+    "goals_of": "prediction",
     "plan": "planner",
+    "plan_model": "prediction",
     "simulate_records": "simulation",
     "simulate_sessions": "simulation",
     "write_plan": "output",
@@ -31,7 +38,11 @@ __all__ = [
     "PlanResult",
     "Planned",
     "SimulatedSession",
+    "averaging_time",
+    "confirm",
+    "goals_of",
     "plan",
+    "plan_model",
     "simulate_records",
     "simulate_sessions",
     "write_plan",

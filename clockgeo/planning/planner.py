@@ -13,6 +13,7 @@ from clockgeo.files import sha256_of
 from clockgeo.gravity import CAUTION, zero_level
 from clockgeo.planning.best_use import best_use
 from clockgeo.planning.checking import refuse_what_cannot_be_planned
+from clockgeo.planning.confirmation import confirm
 from clockgeo.planning.prediction import Prediction, goals_of, plan_model
 from clockgeo.planning.requirement import need_of
 from clockgeo.planning.results import CostResult, PlanResult
@@ -26,6 +27,7 @@ from clockgeo.planning.tabulating import (
     site_places,
     stay_results,
     target_result,
+    technique_curves,
     term_lines,
 )
 from clockgeo.progress import track
@@ -52,13 +54,17 @@ class Planned:
     sessions: tuple[Session, ...]
 
 
-def plan(document: Document) -> Planned:
+def plan(document: Document, *, confirm_runs: int = 0, seed: int = 1) -> Planned:
     """Plan a campaign.
 
     Parameters
     ----------
     document : Document
         With `[target]`, and planned sessions, candidates or both.
+    confirm_runs : int
+        Campaigns to simulate, see `confirmation.confirm`; 0 for none.
+    seed : int
+        Of the simulations.
 
     Raises
     ------
@@ -75,8 +81,12 @@ def plan(document: Document) -> Planned:
     prediction = model.solve()
     goals = goals_of(model)
     needs = [need_of(prediction, goal) for goal in track(goals, "finding what it takes")]
+    confirmation = None
+    if confirm_runs:
+        confirmation = confirm(document, prediction, goals, runs=confirm_runs, seed=seed).result
     level = zero_level(campaign.head.zero_level)
     costs = cost_result(prediction)
+    alternatives = tuple(alternative_results(campaign, prediction, goals))
     result = PlanResult(
         name=campaign.head.name,
         conventions=Conventions(
@@ -93,14 +103,15 @@ def plan(document: Document) -> Planned:
         sessions=tuple(session_results(prediction, {one.id for one in campaign.candidates})),
         limits=tuple(limit_result(need, prediction) for need in needs),
         terms=tuple(line for goal in goals for line in term_lines(prediction, goal)),
-        alternatives=tuple(alternative_results(campaign, prediction, goals)),
+        alternatives=alternatives,
+        techniques=technique_curves(campaign, alternatives),
         sensitivity=tuple(sensitivity_lines(prediction, goals)),
         reach=tuple(reach_curve(prediction, goals)),
         sites=tuple(site_places(prediction)),
         stays=tuple(stay_results(prediction)),
         costs=costs,
         optimum=best.result if best else None,
-        confirmation=None,
+        confirmation=confirmation,
         notes=tuple(_notes(costs, sessions)),
         provenance=Provenance(
             version=__version__,

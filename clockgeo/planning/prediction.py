@@ -128,7 +128,7 @@ class PlanModel:
         return replace(self, others=replace(self.others, loading=loading))
 
     def whole(self) -> LinearModel:
-        """Return the model with all its noise, as it is solved: values are zero, u is the answer."""
+        """Return the model with all its noise, as it is solved; all values are zero."""
         total = np.sum(list(self.parts.values()), axis=0)
         size = len(self.others.rows)
         rows = self.clock_rows

@@ -22,6 +22,7 @@ __all__ = [
     "SitePlace",
     "StayResult",
     "TargetResult",
+    "TechniqueCurves",
     "TermLine",
 ]
 
@@ -117,6 +118,16 @@ class AlternativeResult(_Pair):
     u_gnss_geoid: float
     break_even_distance: float | None
     """Beyond it levelling is less certain than the clocks; null where it never is."""
+
+
+class TechniqueCurves(Table):
+    """Standard uncertainty of a height difference against distance, m."""
+
+    distance: tuple[float, ...]
+    levelling: tuple[float, ...]
+    gnss_geoid: tuple[float, ...]
+    clocks: tuple[float, ...]
+    """Largest predicted u of the targets between sites; the same at every distance."""
 
 
 class SensitivityLine(_Pair):
@@ -243,6 +254,8 @@ class PlanResult(Table):
     limits: tuple[LimitResult, ...]
     terms: tuple[TermLine, ...]
     alternatives: tuple[AlternativeResult, ...]
+    techniques: TechniqueCurves | None
+    """Null where no target is a difference between sites."""
     sensitivity: tuple[SensitivityLine, ...]
     reach: tuple[ReachCurve, ...]
     sites: tuple[SitePlace, ...]

@@ -29,6 +29,7 @@ from clockgeo.planning.results import (
     SitePlace,
     StayResult,
     TargetResult,
+    TechniqueCurves,
     TermLine,
 )
 from clockgeo.planning.schedule import stays_in, total_cost
@@ -45,6 +46,7 @@ __all__ = [
     "site_places",
     "stay_results",
     "target_result",
+    "technique_curves",
     "term_lines",
 ]
 
@@ -155,6 +157,26 @@ def alternative_results(
             u_gnss_geoid=float(u_of_gnss_geoid(techniques, distance)),
             break_even_distance=break_even_distance(techniques, u),
         )
+
+
+def technique_curves(
+    campaign: Campaign, alternatives: Sequence[AlternativeResult]
+) -> TechniqueCurves | None:
+    """Curves of all techniques around the distances of the targets."""
+    if not alternatives:
+        return None
+    techniques = campaign.plan.alternatives
+    ends = [one.distance for one in alternatives]
+    ends += [d for one in alternatives if (d := one.break_even_distance) is not None]
+    low, high = max(min(ends) / 3.0, 1e3), min(max(ends) * 3.0, 2e7)
+    distance = np.geomspace(min(low, high / 10.0), high, 60)
+    worst = max(one.u_clock for one in alternatives)
+    return TechniqueCurves(
+        distance=tuple(distance.tolist()),
+        levelling=tuple(u_of_levelling(techniques, distance).tolist()),
+        gnss_geoid=tuple(u_of_gnss_geoid(techniques, distance).tolist()),
+        clocks=(worst,) * distance.size,
+    )
 
 
 def sensitivity_lines(prediction: Prediction, goals: Sequence[Goal]) -> Iterator[SensitivityLine]:

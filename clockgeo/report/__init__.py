@@ -33,6 +33,7 @@ if TYPE_CHECKING:
     from clockgeo.report.pictures.stability import stability_picture
     from clockgeo.report.pictures.tide import tide_picture
     from clockgeo.report.pictures.timeline import TimelineSession, timeline_picture
+    from clockgeo.report.planning_page import plan_page, write_plan_page
 
 PAGE = "report.html"
 """File name of the page in a folder of results."""
@@ -55,6 +56,7 @@ _HOMES = {
     "map_extent": "pictures.places",
     "net_picture": "pictures.net",
     "observation_picture": "pictures.adjustment",
+    "plan_page": "planning_page",
     "plane_picture": "pictures.adjustment",
     "prepare_figures": "page",
     "reach_picture": "pictures.planning",
@@ -69,6 +71,7 @@ _HOMES = {
     "write_figures": "page",
     "write_level_page": "levelling_page",
     "write_page": "page",
+    "write_plan_page": "planning_page",
 }
 """Public name -> module of this package that holds it."""
 
@@ -91,6 +94,7 @@ __all__ = [
     "map_extent",
     "net_picture",
     "observation_picture",
+    "plan_page",
     "plane_picture",
     "prepare_figures",
     "reach_picture",
@@ -105,6 +109,7 @@ __all__ = [
     "write_figures",
     "write_level_page",
     "write_page",
+    "write_plan_page",
 ]
 
 

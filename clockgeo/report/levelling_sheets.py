@@ -6,6 +6,7 @@ from collections.abc import Iterator
 
 from clockgeo.campaign.adjust_results import AdjustResult
 from clockgeo.campaign.results import LevelResult, Quantity
+from clockgeo.planning.results import PlanResult
 from clockgeo.report.numbers import duration, percentage, rounded, with_uncertainty
 from clockgeo.report.pictures.stability import in_words
 from clockgeo.report.sheets import Cell, Sheet, count, measured, plain, words
@@ -264,7 +265,7 @@ def comparison_sheet(result: LevelResult) -> Sheet:
     return Sheet.of("comparison", "Clocks against geodesy", columns, rows, heads=2)
 
 
-def convention_sheet(result: Solved) -> Sheet:
+def convention_sheet(result: Solved | PlanResult) -> Sheet:
     """Conventions and constants."""
     from clockgeo.constants import SPEED_OF_LIGHT
 
@@ -285,7 +286,7 @@ def convention_sheet(result: Solved) -> Sheet:
     return _two_columns("conventions", "Conventions and constants", "convention", entries)
 
 
-def input_sheet(result: Solved) -> Sheet:
+def input_sheet(result: Solved | PlanResult) -> Sheet:
     """Inputs with checksums."""
     entries = [(one.path, one.sha256) for one in result.provenance.inputs]
     return _two_columns("inputs", "Files that were read", "file", entries, second="SHA-256")
