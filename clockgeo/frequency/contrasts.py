@@ -86,7 +86,9 @@ def contrast_variances(
     places = np.arange(starts.size, dtype=np.int64)
     span = weights.size * interval
     slow = [
-        float(coarse @ block_kernel(NoiseModel(**{law: 1.0}), places, width * interval, span) @ coarse)
+        float(
+            coarse @ block_kernel(NoiseModel(**{law: 1.0}), places, width * interval, span) @ coarse
+        )
         for law in ("flicker_fm", "random_walk_fm")
     ]
     return np.array([phase, flicker_phase, white / interval, *slow])

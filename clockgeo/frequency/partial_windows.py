@@ -22,7 +22,6 @@ from clockgeo.frequency.contrasts import (
     contrast_weights,
     equivalent_freedom,
 )
-from clockgeo.frequency.confidence import ALPHA_OF_LAW, freedom_of
 from clockgeo.frequency.mean import block_kernel
 from clockgeo.frequency.noise import NoiseModel
 from clockgeo.frequency.stability_statistics import Statistic
@@ -35,8 +34,8 @@ _PRICE = 6.0
 _PROBES = 40
 """Windows whose expectation stands for all."""
 _TRIES = 1200
-_LONG = 60.0
-"""Averaging times in a record up to which the freedom is that of the whole quadratic form."""
+_STRETCH, _SHORTEST, _STRETCHES = 40, 200, 4
+"""Stretches whose freedom stands for a long record: averaging times, ticks, and how many."""
 _STEPS = 4
 _BLOCKS = 16
 """Blocks of an averaging time in that form, and steps at which its windows are placed."""
@@ -104,8 +103,8 @@ class PartialWindows:
         shares = whole * levels
         ruling = [LAWS[int(place)] for place in np.argmax(shares, axis=1)]
         edf = [
-            self._freedom(m, levels, law, int(number), least if partly else 1.0)
-            for m, law, number, partly in zip(factors, ruling, count, partial, strict=True)
+            self._freedom(m, levels, least if partly else 1.0)
+            for m, partly in zip(factors, partial, strict=True)
         ]
         return Corrected(variance, np.array(edf), tuple(ruling))
 
@@ -160,48 +159,63 @@ class PartialWindows:
                 break
         return total / weight if weight else self._complete(m)
 
-    def _freedom(
-        self, m: int, levels: NDArray[np.float64], law: str, number: int, least: float
+    def _freedom(self, m: int, levels: NDArray[np.float64], least: float) -> float:
+        """Equivalent degrees of freedom of the windows that took part.
+
+        The whole quadratic form where the record holds few averaging times; else the forms of some
+        stretches, of which the record holds so many.
+        """
+        stretch = max(_STRETCH * m, _SHORTEST)
+        if self.size <= 2 * stretch:
+            return max(self._freedom_within(0, self.size, m, levels, least), 1.0)
+        starts = np.linspace(0, self.size - stretch, _STRETCHES).astype(np.int64)
+        each = [self._freedom_within(int(one), stretch, m, levels, least) for one in starts]
+        return max(float(np.mean(each)) * self.size / stretch, 1.0)
+
+    def _freedom_within(
+        self, first: int, ticks: int, m: int, levels: NDArray[np.float64], least: float
     ) -> float:
-        """Equivalent degrees of freedom of the windows that took part."""
         length = self._span(m)
-        if self.size / m > _LONG:
-            whole = freedom_of(self.statistic, ALPHA_OF_LAW[law], m, self.size)
-            stride = m if self.statistic.kind == "plain" else 1
-            return max(whole * number / len(range(0, self.size - length + 1, stride)), 1.0)
-        step = max(1, m // _STEPS)
+        step = m if self.statistic.kind == "plain" else max(1, m // _STEPS)
         width = max(1, m // _BLOCKS)
-        blocks = -(-self.size // width)
+        blocks = -(-ticks // width)
         rows, weights = [], []
-        for start in range(0, self.size - length + 1, step):
-            mask = self._mask(start, length)
+        for start in range(0, ticks - length + 1, step):
+            mask = self._mask(first + start, length)
             filled = self._filled(mask, m, least)
             if filled == 0.0:
                 continue
-            ticks = contrast_weights(mask, m, order=self.statistic.order, modified=self.modified)
+            shape = contrast_weights(mask, m, order=self.statistic.order, modified=self.modified)
             places = (start + np.arange(length)) // width
-            rows.append(np.bincount(places, weights=ticks, minlength=blocks))
+            rows.append(np.bincount(places, weights=shape, minlength=blocks))
             weights.append(filled)
         if not rows:
-            return 1.0
-        covariance = self._block_covariance(levels, blocks, width)
-        return max(equivalent_freedom(np.array(rows), covariance, np.array(weights)), 1.0)
+            return 0.0
+        low, high = np.searchsorted(self.tick, [first, first + ticks])
+        filling = np.bincount((self.tick[low:high] - first) // width, minlength=blocks)
+        covariance = self._block_covariance(levels, filling, width)
+        return equivalent_freedom(np.array(rows), covariance, np.array(weights))
 
     def _block_covariance(
-        self, levels: NDArray[np.float64], blocks: int, width: int
+        self, levels: NDArray[np.float64], filling: NDArray[np.int64], width: int
     ) -> NDArray[np.float64]:
-        """Covariance for weights summed over blocks, under the mixture."""
+        """Covariance for weights summed over blocks of `filling` samples, under the mixture."""
         names = dict(zip(LAWS, np.sqrt(levels), strict=True))
         model = NoiseModel(**{law: float(names[law]) for law in ("flicker_fm", "random_walk_fm")})
-        places = np.arange(blocks, dtype=np.int64)
-        span = blocks * width * self.interval
+        places = np.arange(filling.size, dtype=np.int64)
+        span = filling.size * width * self.interval
         covariance = block_kernel(model, places, width * self.interval, span)
-        filling = np.bincount(self.tick // width, minlength=blocks)
         white = levels[LAWS.index("white_fm")] / self.interval
         phase = (levels[0] + levels[1]) * 2.0 / 3.0 / self.interval**2
-        # Sums of n sample weights w/n: white noise of a block falls with the samples it holds.
-        noise = (white + phase / width) / np.maximum(filling, 1)
-        return np.asarray(covariance + np.diag(noise))
+        # Sums of n weights w/n: independent noise of a block falls with the samples it holds, phase
+        # noise with their square, and neighbours share a phase.
+        held = np.maximum(filling, 1).astype(np.float64)
+        covariance += np.diag(white / held + phase / held**2)
+        if width == 1 and phase:
+            both = (filling[1:] > 0) & (filling[:-1] > 0)
+            shared = np.where(both, -phase / 2.0, 0.0)
+            covariance += np.diag(shared, 1) + np.diag(shared, -1)
+        return np.asarray(covariance)
 
 
 def _mixture(

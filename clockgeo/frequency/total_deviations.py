@@ -8,7 +8,6 @@ al. 2000 (32nd PTTI) for Hadamard total; NIST SP 1065 (2008).
 
 from __future__ import annotations
 
-import numba
 import numpy as np
 from numpy.typing import NDArray
 

@@ -35,9 +35,7 @@ def running_sums(
 
 
 @numba.njit(cache=True)
-def two_windows(
-    total: NDArray[np.float64], m: int, stride: int
-) -> tuple[float, int]:
+def two_windows(total: NDArray[np.float64], m: int, stride: int) -> tuple[float, int]:
     """Sum of squared differences of neighbouring complete averages, and their number."""
     acc = 0.0
     places = total.size - 2 * m
