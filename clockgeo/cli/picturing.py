@@ -10,10 +10,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 if TYPE_CHECKING:
-    from clockgeo.frequency import Screening
+    from clockgeo.frequency import RecordStability, Screening
     from clockgeo.gravity import GeoidModel, TideSeries
 
-__all__ = ["draw_geoid", "draw_screenings", "draw_tide", "numbered_pictures"]
+__all__ = ["draw_geoid", "draw_screenings", "draw_stability", "draw_tide", "numbered_pictures"]
 
 _LATTICE = 120, 80
 """Longitudes and latitudes at which a grid is sampled for its contour lines."""
@@ -58,6 +58,19 @@ def draw_screenings(
             interval=record.interval,
             title=record.name,
         )
+        save_picture(figure, path, replace=replace)
+
+
+def draw_stability(
+    results: Sequence[RecordStability], paths: Sequence[Path], *, replace: bool
+) -> None:
+    """Draw the curves of every record with its noise model; nothing where there are no paths."""
+    if not paths:
+        return
+    from clockgeo.report import save_picture, stability_picture
+
+    for result, path in zip(results, paths, strict=True):
+        figure = stability_picture(result.curves, model=result.model, title=result.record.name)
         save_picture(figure, path, replace=replace)
 
 

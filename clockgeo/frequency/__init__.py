@@ -9,6 +9,7 @@ import importlib
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
+    from clockgeo.frequency.deviations import StabilityCurve, stability_curve
     from clockgeo.frequency.diagnosis import Finding, diagnose
     from clockgeo.frequency.generator import draw_noise
     from clockgeo.frequency.layout import RecordLayout
@@ -21,6 +22,7 @@ if TYPE_CHECKING:
     from clockgeo.frequency.sampling import Sampling, estimate_interval, sample_ticks
     from clockgeo.frequency.scatter import ExcessScatter, excess_scatter
     from clockgeo.frequency.screening import Mask, Reason, Screening, ScreeningRules, screen
+    from clockgeo.frequency.stability import RecordStability, assess_stability
     from clockgeo.frequency.transitions import RECOMMENDED_FREQUENCIES, Transition, find_transition
     from clockgeo.frequency.writing import write_record
 
@@ -28,6 +30,10 @@ _HOMES = {
     # noise
     "ExcessScatter": "scatter",
     "excess_scatter": "scatter",
+    "RecordStability": "stability",
+    "StabilityCurve": "deviations",
+    "stability_curve": "deviations",
+    "assess_stability": "stability",
     "NoiseFit": "noise_fit",
     "NoiseModel": "noise",
     "TickSeries": "mean",
@@ -62,6 +68,10 @@ _HOMES = {
 __all__ = [
     "ExcessScatter",
     "excess_scatter",
+    "RecordStability",
+    "StabilityCurve",
+    "stability_curve",
+    "assess_stability",
     "NoiseFit",
     "NoiseModel",
     "TickSeries",
