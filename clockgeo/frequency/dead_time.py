@@ -14,7 +14,7 @@ __all__ = ["dead_time_variance", "uptime_windows"]
 
 
 def dead_time_variance(
-    model: NoiseModel, windows: Sequence[tuple[float, float]], *, start: float, stop: float
+    model: NoiseModel, windows: Sequence[tuple[float, float]], total: float
 ) -> float:
     """Variance of the mean of a flywheel over its uptime as its mean over a whole interval.
 
@@ -24,9 +24,9 @@ def dead_time_variance(
         Noise of the flywheel, the oscillator that runs through while the clock is down. White,
         flicker and random-walk FM count; phase noise averages down faster than any of them.
     windows : sequence of (float, float)
-        Start and stop of each stretch of uptime in s; apart from each other, within the interval.
-    start, stop : float
-        The whole interval in s.
+        Start and stop of each stretch of uptime in s, from the start of the whole interval.
+    total : float
+        Length of the whole interval in s.
 
     Returns
     -------
@@ -48,20 +48,19 @@ def dead_time_variance(
     Examples
     --------
     >>> white = NoiseModel(white_fm=(1 / 2) ** 0.5)  # h0 = 1
-    >>> round(dead_time_variance(white, [(0.0, 1.5), (4.0, 5.5)], start=0.0, stop=10.0), 7)
+    >>> round(dead_time_variance(white, [(0.0, 1.5), (4.0, 5.5)], 10.0), 7)
     0.1166667
     """
-    up = _checked(windows, start, stop)
-    whole = stop - start
+    up = _checked(windows, total)
     lengths = up[:, 1] - up[:, 0]
     uptime = float(lengths.sum())
-    white = model.h0 / 2.0 * (1.0 / uptime - 1.0 / whole)
+    white = model.h0 / 2.0 * (1.0 / uptime - 1.0 / total)
     # The contrast: the whole interval with weight 1, the windows with -length/uptime.
-    starts = np.concatenate(([start], up[:, 0]))
-    stops = np.concatenate(([stop], up[:, 1]))
+    starts = np.concatenate(([0.0], up[:, 0]))
+    stops = np.concatenate(([total], up[:, 1]))
     weights = np.concatenate(([1.0], -lengths / uptime))
     scaled = weights / (stops - starts)
-    slow = scaled @ _overlap_integrals(model, starts, stops, whole) @ scaled
+    slow = scaled @ _overlap_integrals(model, starts, stops, total) @ scaled
     return max(white, 0.0) + max(float(slow), 0.0)
 
 
@@ -82,11 +81,9 @@ def _overlap_integrals(
     return second(b - c) + second(a - d) - second(a - c) - second(b - d)
 
 
-def _checked(
-    windows: Sequence[tuple[float, float]], start: float, stop: float
-) -> NDArray[np.float64]:
-    if not stop > start:
-        raise DataError("the interval is empty", value=f"{start} s to {stop} s")
+def _checked(windows: Sequence[tuple[float, float]], total: float) -> NDArray[np.float64]:
+    if not total > 0.0:
+        raise DataError("the interval is empty", value=f"{total} s")
     up = np.array(sorted(windows), dtype=np.float64).reshape(-1, 2)
     if not up.size or np.any(up[:, 1] <= up[:, 0]):
         raise DataError(
@@ -94,11 +91,11 @@ def _checked(
         )
     if np.any(up[1:, 0] < up[:-1, 1]):
         raise DataError("windows of uptime overlap", advice="Join them")
-    if up[0, 0] < start or up[-1, 1] > stop:
+    if up[0, 0] < 0.0 or up[-1, 1] > total * (1.0 + 1e-12):
         raise DataError(
             "uptime reaches beyond the interval",
             value=f"{up[0, 0]} s to {up[-1, 1]} s",
-            allowed=f"{start} s to {stop} s",
+            allowed=f"0 s to {total} s",
         )
     return up
 
