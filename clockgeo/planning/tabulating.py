@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 
 import numpy as np
 
@@ -53,6 +53,8 @@ __all__ = [
 _DAY_S = 86_400.0
 _STATISTICS = (*AVERAGING, FLICKER, LINK_FLOOR)
 _EFFECTS = (EFFECTS, STAYS, RENEWED, RATIO, "effects of links", "site transfer", "tide residual")
+_SHOWN = 4
+"""So many of the plan's largest terms have a curve of their own."""
 _FACTORS = np.geomspace(0.02, 50.0, 35)
 
 
@@ -198,8 +200,12 @@ def reach_curve(prediction: Prediction, goals: Sequence[Goal]) -> Iterator[Reach
     """Predicted u and its terms against the length of all sessions, their shares kept."""
     days = sum(one.planned_seconds or 0.0 for one in prediction.model.sessions) / _DAY_S
     solved = [longer(prediction.model, float(factor)).solve() for factor in _FACTORS]
+    planned = {goal.name: prediction.terms(goal) for goal in goals}
+    shown = {
+        name: sorted(terms, key=lambda one: -terms[one])[:_SHOWN] for name, terms in planned.items()
+    }
     for goal in goals:
-        split = [one.terms(goal) for one in solved]
+        split = [_largest_terms(one.terms(goal), shown[goal.name]) for one in solved]
         names = list(dict.fromkeys(name for terms in split for name in terms))
         yield ReachCurve(
             from_end=goal.start,
@@ -208,6 +214,12 @@ def reach_curve(prediction: Prediction, goals: Sequence[Goal]) -> Iterator[Reach
             u=tuple(one.u(goal) for one in solved),
             terms={name: tuple(terms.get(name, 0.0) for terms in split) for name in names},
         )
+
+
+def _largest_terms(terms: Mapping[str, float], shown: Sequence[str]) -> dict[str, float]:
+    """The shown terms, and the rest as one."""
+    rest = sum(part**2 for name, part in terms.items() if name not in shown) ** 0.5
+    return {name: terms.get(name, 0.0) for name in shown} | {"other terms": rest}
 
 
 def site_places(prediction: Prediction) -> Iterator[SitePlace]:

@@ -67,7 +67,7 @@ def plan_timeline(result: PlanResult) -> Picture:
         id="timeline",
         figure=timeline_picture(sessions),
         caption="One lane a clock. Blocks are sessions, filled as high as their expected uptime; "
-        "lines under them are stays at a site, and the gaps between stays are moves.",
+        "lines under them are stays at a site, dotted ones are moves.",
         alt="Timeline: "
         + "; ".join(
             f"{s.id} from {s.start[:16]} for {s.days:.1f} d, uptime {percentage(s.uptime)}"

@@ -22,6 +22,8 @@ _KM_PER_DEGREE = 111.2
 _SMALLEST_SPAN = 0.02
 _SHAPE = 1.9
 """Width over height of the map."""
+_CROWDED = 4
+"""Beyond so many pairs of sites, lines of one session carry no label."""
 
 
 @dataclass(frozen=True)
@@ -187,6 +189,8 @@ def _connections(
             axes.plot(x1, y1, "o", markersize=16, markerfacecolor="none", color=LIGHT["slate"])
             continue
         axes.plot([x1, x2], [y1, y2], color=LIGHT["slate"], linewidth=1.5, zorder=2)
+        if count == 1 and len(counts) > _CROWDED:
+            continue  # A star of single sessions would be all labels.
         axes.annotate(
             _sessions(count),
             ((x1 + x2) / 2.0, (y1 + y2) / 2.0),

@@ -28,6 +28,9 @@ __all__ = ["TimelineSession", "timeline_picture"]
 
 _LABELLED = 16
 """Up to so many sessions carry their names."""
+_NAME_LEVELS = 2
+_CHARACTER = 0.0105
+"""Width of a letter of a name, as a share of the axis."""
 
 
 @dataclass(frozen=True)
@@ -57,7 +60,8 @@ class TimelineSession:
 def timeline_picture(sessions: Sequence[TimelineSession], *, title: str = "") -> Figure:
     """Draw one lane a clock: a thin line for each stay at a site, a block for each session.
 
-    The filled height of a block is the uptime. Sites differ by colour, hatch and label.
+    Dotted lines are moves. The filled height of a block is the uptime. Sites differ by colour,
+    hatch and label.
 
     Parameters
     ----------
@@ -74,10 +78,10 @@ def timeline_picture(sessions: Sequence[TimelineSession], *, title: str = "") ->
             if clock in one.clocks:
                 _draw_session(axes, one, lane, sites.index(one.sites[one.clocks.index(clock)]))
     if len(ordered) <= _LABELLED:
-        for one in ordered:
-            _name(axes, one)
+        for one, level in zip(ordered, _levels(axes, ordered), strict=True):
+            _name(axes, one, level)
     axes.set_yticks(range(len(clocks)), [shortened(clock) for clock in clocks])
-    axes.set_ylim(len(clocks) - 0.45, -0.95 if len(ordered) <= _LABELLED else -0.6)
+    axes.set_ylim(len(clocks) - 0.45, -1.05 if len(ordered) <= _LABELLED else -0.6)
     axes.grid(visible=True, axis="x")
     axes.grid(visible=False, axis="y")
     time_axis(axes)
@@ -87,9 +91,10 @@ def timeline_picture(sessions: Sequence[TimelineSession], *, title: str = "") ->
 
 
 def _look(site: int) -> dict[str, str]:
+    """Colour and hatch; with each round of the colours the hatches shift by one."""
     return {
         "facecolor": LIGHT[SERIES[site % len(SERIES)]],
-        "hatch": HATCHES[site % len(HATCHES)],
+        "hatch": HATCHES[(site + site // len(SERIES)) % len(HATCHES)],
         "edgecolor": LIGHT[SERIES[site % len(SERIES)]],
     }
 
@@ -108,6 +113,8 @@ def _draw_stays(
         if next_site == site:
             stop = max(stop, next_stop)
             continue
+        if next_site >= 0:
+            _draw_move(axes, stop, next_start, lane)
         axes.plot(
             days_utc(np.array([start, stop])),
             [lane + 0.32, lane + 0.32],
@@ -116,6 +123,17 @@ def _draw_stays(
             solid_capstyle="butt",
         )
         start, stop, site = next_start, next_stop, next_site
+
+
+def _draw_move(axes: Axes, start: int, stop: int, lane: int) -> None:
+    """A dotted line where the clock is on its way."""
+    axes.plot(
+        days_utc(np.array([start, stop])),
+        [lane + 0.32, lane + 0.32],
+        color=LIGHT["quiet"],
+        linewidth=1.2,
+        linestyle=(0, (1, 1.5)),
+    )
 
 
 def _draw_session(axes: Axes, one: TimelineSession, lane: int, site: int) -> None:
@@ -145,10 +163,29 @@ def _draw_session(axes: Axes, one: TimelineSession, lane: int, site: int) -> Non
     )
 
 
-def _name(axes: Axes, one: TimelineSession) -> None:
+def _levels(axes: Axes, ordered: Sequence[TimelineSession]) -> list[int]:
+    """Heights of the names, so that neighbours do not cover each other where there is room."""
+    low, high = axes.get_xlim()
+    free_from = [low] * _NAME_LEVELS
+    levels: list[int] = []
+    for one in ordered:
+        middle = float(days_utc(np.array([one.start, one.stop])).mean())
+        half = 0.5 * _CHARACTER * (high - low) * len(shortened(one.name, 16))
+        level = next((n for n, free in enumerate(free_from) if free <= middle - half), 0)
+        free_from[level] = middle + half
+        levels.append(level)
+    return levels
+
+
+def _name(axes: Axes, one: TimelineSession, level: int) -> None:
     middle = float(days_utc(np.array([one.start, one.stop])).mean())
     axes.annotate(
-        shortened(one.name, 16), (middle, -0.32), ha="center", va="bottom", fontsize=7.0, rotation=0
+        shortened(one.name, 16),
+        (middle, -0.32 - 0.24 * level),
+        ha="center",
+        va="bottom",
+        fontsize=7.0,
+        rotation=0,
     )
 
 
