@@ -20,9 +20,39 @@ Confirm = Annotated[
 Seed = Annotated[int, typer.Option("--seed", min=0, help="Of the simulated campaigns.")]
 
 
+def _show_presets(name: str | None) -> None:
+    """Print one preset as a table of the document, or the list of all, and stop."""
+    if name is None:
+        return
+    from clockgeo.cli.terminal import say, show_table
+    from clockgeo.planning.presets import PRESETS, find_preset, preset_toml
+
+    if name == "list":
+        rows = [
+            (one.name, one.kind, one.text, f"{one.u * 1e18:g}", one.source)
+            for one in PRESETS.values()
+        ]
+        show_table("Presets", ["name", "kind", "what it is", "u / 1e-18", "source"], rows, left=3)
+    else:
+        say(preset_toml(find_preset(name)))
+    raise typer.Exit
+
+
+Preset = Annotated[
+    str | None,
+    typer.Option(
+        "--preset",
+        callback=_show_presets,
+        is_eager=True,
+        help='Print a published class of clock or link as TOML, or "list" them, and stop.',
+    ),
+]
+
+
 def command(
     campaign: Campaign,
     out: OutFolder,
+    preset: Preset = None,
     confirm: Confirm = 0,
     seed: Seed = 1,
     figures: Figures = None,
@@ -40,6 +70,7 @@ def command(
 
     Example: clockgeo plan examples/saddle/campaign.toml --out results/saddle-plan
     """
+    del preset  # acted upon before anything else
     from clockgeo.campaign import prepare_folder, read_document
     from clockgeo.cli.terminal import print_json, progress_shown, say
     from clockgeo.planning import PLAN_FILES, plan, write_plan
