@@ -38,6 +38,9 @@ Flywheel = Annotated[
 ]
 Out = Annotated[Path | None, typer.Option("--out", help="File for the curves: .csv, .json or .nc.")]
 
+_MOST_WINDOWS = 2_000
+"""Stretches of uptime that are told apart; their number squared is worked on."""
+
 
 @with_record_options
 def command(
@@ -137,12 +140,21 @@ def _counting(record: Record, screened: bool) -> Any:
 
 def _dead_time(model: NoiseModel, result: RecordStability) -> dict[str, Any]:
     """What a flywheel adds when the mean stands for the whole span of the record."""
-    from clockgeo.frequency import dead_time_variance
+    from clockgeo.frequency import dead_time_variance, uptime_windows
 
-    variance = dead_time_variance(model, result.uptime_windows, result.mean.span_seconds)
+    interval, bridge = result.record.interval, 1
+    windows = uptime_windows(result.tick, interval)
+    while len(windows) > _MOST_WINDOWS:  # short gaps beside many others are of no account
+        bridge *= 2
+        windows = uptime_windows(result.tick, interval, bridge=bridge)
+    before = float(result.tick[0] - result.record.tick[0]) * interval
+    shifted = [(start + before, stop + before) for start, stop in windows]
+    variance = dead_time_variance(model, shifted, result.mean.span_seconds)
     return {
-        "u": float(variance) ** 0.5,
+        "u": variance**0.5,
         "span_seconds": result.mean.span_seconds,
+        "windows": len(windows),
+        "bridged_seconds": (bridge - 1) * interval,
         "flywheel": model,
     }
 

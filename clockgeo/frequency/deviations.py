@@ -1,8 +1,8 @@
 """Stability of a record with gaps: ten statistics with their intervals.
 
 Gaps are never closed up. Where complete windows are few, partly filled ones count too, weighted by
-what they hold; what that does to their expectation follows from the power laws that the curve itself
-shows, and is taken off.
+what they hold; what that does to their expectation follows from the power laws that the curve
+itself shows, and is taken off.
 """
 
 from __future__ import annotations
@@ -36,7 +36,6 @@ _ENOUGH = 0.3
 """Share of all windows that must be complete for partly filled ones to be left aside."""
 _FILL = 0.5
 """Least filling of a window, in units of the mean filling of the record."""
-_GAPLESS_MEMORY = 3
 
 
 @dataclass(frozen=True, eq=False)
@@ -95,8 +94,8 @@ def stability_curve(
     interval : float
         Length of a tick in s.
     tau : str or sequence of float
-        See `averaging_factors`; where windows may be partly filled the longest time is a quarter of
-        the record (a third for the Hadamard and modified families, half of it if there are no gaps).
+        See `averaging_factors`. The longest is a quarter of a record with gaps; of a complete one
+        half of it, a third for the modified and Hadamard kinds.
     level : float
         Confidence level of the intervals.
 
@@ -274,8 +273,8 @@ def _window_points(
     partial = PartialWindows(statistic, record.tick, record.size, interval)
     raw, count, filled = [], [], []
     for m in track(factors, statistic.name):
-        variance, number, partly = _raw_variance(statistic, record, m)
-        raw.append(variance)
+        one, number, partly = _raw_variance(statistic, record, m)
+        raw.append(one)
         count.append(number)
         filled.append(partly)
     chosen = np.array(filled, dtype=bool)
@@ -317,7 +316,8 @@ def _raw_variance(statistic: Statistic, record: _Line, m: int) -> tuple[float, i
     if statistic.kind == "overlapping" and statistic.order == 2 and record.gapless:
         acc, number = two_windows(record.total, m, 1)
         return acc / (2.0 * number), number, False
-    total, count = record.total, record.count
+    total = record.total
+    count: NDArray[np.int32] | NDArray[np.float64] = record.count
     full = float(m)
     if statistic.kind == "modified":
         total, count = second_sums(record.total, record.count, m)

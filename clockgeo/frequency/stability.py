@@ -1,4 +1,4 @@
-"""All that is told of the stability of one record: curves, noise model, its mean and their limits."""
+"""All that is told of the stability of one record: curves, noise model, mean and what limits it."""
 
 from __future__ import annotations
 
@@ -19,8 +19,8 @@ from clockgeo.frequency.record import Record
 __all__ = ["RecordMean", "RecordStability", "assess_stability"]
 
 _SHORT = 8
-"""Averaging factors up to which the weighting of a counter shapes an Allan deviation: above, the
-overlap of neighbouring triangles is below 2 % in deviation (2/3 to 1 in variance, as 1 - 1/(3m))."""
+"""Averaging factors up to which the weighting of a counter shapes an Allan deviation: a mean of m
+rows weighted by triangles has 1 - 1/(3m) of the white variance, 2 % in deviation at m = 8."""
 
 
 @dataclass(frozen=True)
@@ -58,8 +58,8 @@ class RecordStability:
     fit : NoiseFit or None
         Fitted noise; None where there are too few valid rows.
     mean : RecordMean
-    uptime_windows : float array, shape (W, 2)
-        Stretches without a gap, start and stop in s from the first row.
+    tick : int64 array, shape (V,)
+        Places of the rows that counted.
     findings : tuple of Finding
         What makes naive figures wrong, see `diagnose`.
     notes : tuple of str
@@ -70,7 +70,7 @@ class RecordStability:
     curves: tuple[StabilityCurve, ...]
     fit: NoiseFit | None
     mean: RecordMean
-    uptime_windows: NDArray[np.float64]
+    tick: NDArray[np.int64]
     findings: tuple[Finding, ...]
     notes: tuple[str, ...]
 
@@ -139,7 +139,7 @@ def assess_stability(
         curves=curves,
         fit=fit,
         mean=mean,
-        uptime_windows=_uptime_windows(series.tick - record.tick[0], record.interval),
+        tick=series.tick,
         findings=findings,
         notes=tuple(notes),
     )
@@ -179,11 +179,3 @@ def _weighting_note(record: Record) -> str | None:
         f"{_SHORT * record.interval:g} s plain deviations lie below those of unweighted averages "
         "and fall like the modified one; the noise model rests on longer averages"
     )
-
-
-def _uptime_windows(tick: NDArray[np.int64], interval: float) -> NDArray[np.float64]:
-    """Stretches without a gap: start and stop in s, shape (W, 2)."""
-    edges = np.flatnonzero(np.diff(tick) > 1)
-    starts = np.concatenate((tick[:1], tick[edges + 1]))
-    stops = np.concatenate((tick[edges], tick[-1:])) + 1
-    return np.stack([starts, stops], axis=1) * interval

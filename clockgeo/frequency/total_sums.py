@@ -2,14 +2,15 @@
 
 from __future__ import annotations
 
-import numba
 import numpy as np
 from numpy.typing import NDArray
+
+from clockgeo.frequency.compiling import compiled
 
 __all__ = ["odd_reflection_squares", "segment_squares"]
 
 
-@numba.njit(cache=True)
+@compiled
 def odd_reflection_squares(phase: NDArray[np.float64], m: int) -> float:
     """Sum of squared second differences at every inner point of phase reflected at both ends.
 
@@ -30,7 +31,7 @@ def odd_reflection_squares(phase: NDArray[np.float64], m: int) -> float:
     return squares
 
 
-@numba.njit(cache=True)
+@compiled
 def segment_squares(values: NDArray[np.float64], m: int, stride: int) -> tuple[float, int]:
     """Mean squared second difference of m-averages in segments of 3m values, summed over them.
 

@@ -7,14 +7,15 @@ samples; with `least` = m only complete windows do.
 
 from __future__ import annotations
 
-import numba
 import numpy as np
 from numpy.typing import NDArray
+
+from clockgeo.frequency.compiling import compiled
 
 __all__ = ["running_sums", "second_sums", "three_windows", "two_windows", "window_pairs"]
 
 
-@numba.njit(cache=True)
+@compiled
 def running_sums(
     tick: NDArray[np.int64], y: NDArray[np.float64], size: int, mean: float
 ) -> tuple[NDArray[np.float64], NDArray[np.int32]]:
@@ -34,7 +35,7 @@ def running_sums(
     return total, count
 
 
-@numba.njit(cache=True)
+@compiled
 def two_windows(total: NDArray[np.float64], m: int, stride: int) -> tuple[float, int]:
     """Sum of squared differences of neighbouring complete averages, and their number."""
     acc = 0.0
@@ -48,10 +49,10 @@ def two_windows(total: NDArray[np.float64], m: int, stride: int) -> tuple[float,
     return acc, number
 
 
-@numba.njit(cache=True)
+@compiled
 def window_pairs(
     total: NDArray[np.float64],
-    count: NDArray[np.float64] | NDArray[np.int32],
+    count: NDArray[np.int32] | NDArray[np.float64],
     m: int,
     stride: int,
     least: float,
@@ -75,10 +76,10 @@ def window_pairs(
     return acc, weights, number
 
 
-@numba.njit(cache=True)
+@compiled
 def three_windows(
     total: NDArray[np.float64],
-    count: NDArray[np.int32],
+    count: NDArray[np.int32] | NDArray[np.float64],
     m: int,
     stride: int,
     least: float,
@@ -104,7 +105,7 @@ def three_windows(
     return acc, weights, number
 
 
-@numba.njit(cache=True)
+@compiled
 def second_sums(
     total: NDArray[np.float64], count: NDArray[np.int32], m: int
 ) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
