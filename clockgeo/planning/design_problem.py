@@ -109,6 +109,8 @@ class DesignProblem:
 class State:
     """Everything that the criteria need at one w.
 
+    Raises LinAlgError where M(w) is singular.
+
     Attributes
     ----------
     v : float array, shape (t, t)
@@ -120,7 +122,11 @@ class State:
     def __init__(self, problem: DesignProblem, w: Array) -> None:
         self.problem = problem
         information = problem.known + (problem.rows.T * (w * problem.rate)) @ problem.rows
-        scale = 1.0 / np.sqrt(np.diag(information))
+        diagonal = np.diag(information)
+        if not np.all(diagonal > 0.0):
+            message = "an unknown is not seen at all"
+            raise linalg.LinAlgError(message)
+        scale = 1.0 / np.sqrt(diagonal)
         factor = linalg.cho_factor(information * np.outer(scale, scale), lower=True)
         lower = np.tril(factor[0])
         self._rows = linalg.solve_triangular(lower, (problem.rows * scale).T, lower=True)

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable
 
 import numpy as np
+from scipy import linalg
 
 from clockgeo.planning.design_problem import Array, DesignProblem, State
 
@@ -14,6 +15,8 @@ _TRIED = 12
 """Candidates on each side that an exchange looks at, by their slopes."""
 _EXCHANGES = 500
 _TRIMS = 2000
+_TRACE = 1e-9
+_MEAN_SHARE = 0.03
 _NOTHING = 0.02
 """Share of a step below which a continuous time counts as none."""
 
@@ -53,12 +56,33 @@ def round_to_steps(
         whole = np.where(w > _NOTHING * step, np.ceil(w / step - 1e-6) * step, 0.0)
     whole = _trimmed(problem, np.maximum(whole, least), step, least, may)
     whole = _filled(problem, whole, step, may)
+    found = [_exchanged(problem, whole, step, least, may)]
+    if allowed is None:
+        nearest = _filled(problem, _nearest(problem, w, step, least), step, may)
+        found.append(_exchanged(problem, nearest, step, least, may))
+    return min(found, key=problem.value) + 0.0  # no minus zero
+
+
+def _nearest(problem: DesignProblem, w: Array, step: float, least: Array) -> Array:
+    """Rounded to the nearest step, from the largest down, while the budget lasts."""
+    whole = least.copy()
+    for k in np.argsort(-w, kind="stable").tolist():
+        wanted = max(round(float(w[k]) / step) * step, float(least[k]))
+        left = problem.budget - float(problem.cost @ whole)
+        extra = (wanted - float(least[k])) * float(problem.cost[k])
+        if extra <= left + 1e-9 and wanted <= problem.most[k] + 1e-9:
+            whole[k] = wanted
+    return whole
+
+
+def _exchanged(problem: DesignProblem, w: Array, step: float, least: Array, may: Allowed) -> Array:
+    """Exchange steps while that helps."""
     for _ in range(_EXCHANGES):
-        better = _exchange(problem, whole, step, least, may)
+        better = _exchange(problem, w, step, least, may)
         if better is None:
             break
-        whole = better
-    return whole + 0.0  # no minus zero
+        w = better
+    return w
 
 
 def _room(problem: DesignProblem, w: Array, step: float) -> Array:
@@ -74,7 +98,7 @@ def _filled(problem: DesignProblem, w: Array, step: float, may: Allowed) -> Arra
         kept = [one for one in more if may(one)]
         if not kept:
             break
-        w = min(kept, key=problem.value)
+        w = min(kept, key=lambda one: _merit(problem, one))
     return w
 
 
@@ -87,7 +111,8 @@ def _promising(problem: DesignProblem, w: Array, fits: Array) -> list[int]:
 
 def _slope(problem: DesignProblem, w: Array) -> Array:
     """Slope of the criterion; of the worst of the variances where there are several."""
-    state = State(problem, w)
+    # A trace of time everywhere: rounded down, an allocation may leave something undetermined.
+    state = State(problem, w + _TRACE * problem.budget / problem.cost.clip(min=1e-12))
     weights = np.eye(len(state.v))
     if problem.criterion == "D":
         weights = np.asarray(np.linalg.inv(state.v))
@@ -98,6 +123,17 @@ def _slope(problem: DesignProblem, w: Array) -> Array:
         variance = np.diag(state.v)
         weights = np.diag((variance / variance.max()) ** 8)
     return state.weighted_slope(weights)
+
+
+def _merit(problem: DesignProblem, w: Array) -> float:
+    """The criterion; for maxima with a little of the mean, which leads off plateaus."""
+    try:
+        state = State(problem, w)
+    except linalg.LinAlgError:
+        return float("inf")
+    if problem.criterion in ("A", "D"):
+        return state.value
+    return state.value + _MEAN_SHARE * float(np.mean(np.diag(state.v)))
 
 
 def _unit(w: Array, k: int) -> Array:
@@ -123,7 +159,7 @@ def _trimmed(problem: DesignProblem, w: Array, step: float, least: Array, may: A
 def _exchange(
     problem: DesignProblem, w: Array, step: float, least: Array, may: Allowed
 ) -> Array | None:
-    here = problem.value(w)
+    here = _merit(problem, w)
     slope = _slope(problem, w)
     takers = [k for k in np.argsort(slope).tolist() if w[k] + step <= problem.most[k] + 1e-9]
     givers = [k for k in np.argsort(-slope).tolist() if w[k] - step >= least[k] - 1e-9]
@@ -133,7 +169,7 @@ def _exchange(
             moved = w + step * (_unit(w, j) - _unit(w, k))
             if j == k or float(problem.cost @ moved) > problem.budget + 1e-9:
                 continue
-            found = problem.value(moved)
+            found = _merit(problem, moved)
             if found < value and may(moved):
                 best, value = moved, found
     return best
