@@ -65,16 +65,15 @@ class SessionStatistics:
         Statistical covariance of the means, excess scatter included, fractional squared.
     scatter_u : float
         Excess scatter that is included, fractional.
-    noise_freedom, scatter_freedom : float
-        Degrees of freedom of the fitted noise and of the excess scatter.
+    freedom : float
+        Degrees of freedom of the statistical u of the means, excess scatter included.
     """
 
     covariance: NDArray[np.float64]
     groups: tuple[Group, ...]
     scatter: ScatterResult | None
     scatter_u: float
-    noise_freedom: float
-    scatter_freedom: float
+    freedom: float
     findings: tuple[tuple[str, ...], ...]
     notes: tuple[str, ...]
 
@@ -143,8 +142,10 @@ def session_statistics(
         groups=groups,
         scatter=_scatter_result(excess, applied=applied),
         scatter_u=scatter_u,
-        noise_freedom=min(group.degrees_of_freedom for group in groups),
-        scatter_freedom=float(excess.degrees_of_freedom) if excess else float("inf"),
+        freedom=min(
+            *(group.degrees_of_freedom for group in groups),
+            excess.effective_freedom if excess else float("inf"),
+        ),
         findings=tuple(
             tuple(finding.words for finding in diagnose(one.record, valid=one.screening.valid))
             for one in measured

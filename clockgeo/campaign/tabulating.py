@@ -126,8 +126,8 @@ def differences(
         effective = float("inf")
         if statistics is not None:
             scatter, noise = statistical_parts(solution, combination, statistics.scatter_u)
-            estimated = [(noise, statistics.noise_freedom), (scatter, statistics.scatter_freedom)]
-            effective = effective_freedom(u, estimated)
+            statistical = float(np.hypot(noise, scatter))
+            effective = effective_freedom(u, [(statistical, statistics.freedom)])
         finite = effective if np.isfinite(effective) else 1e9
         results.append(
             DifferenceResult(

@@ -11,7 +11,10 @@ from scipy import linalg, optimize, stats
 
 from clockgeo.errors import DataError
 
-__all__ = ["ExcessScatter", "excess_scatter"]
+__all__ = ["HIDDEN", "ExcessScatter", "excess_scatter"]
+
+HIDDEN = 3.0
+"""Factor on the freedom where no excess is found."""
 
 
 @dataclass(frozen=True)
@@ -38,6 +41,19 @@ class ExcessScatter:
     birge_ratio: float | None
     degrees_of_freedom: int
     p_value: float | None
+
+    @property
+    def effective_freedom(self) -> float:
+        """Degrees of freedom of the statistical u of a mean of the values, excess included.
+
+        With an excess found, the values' own scatter carries u, and its freedom is theirs. Where
+        none shows, a small one may hide: `HIDDEN` times that freedom. Without any freedom nothing
+        is known of it, and u is taken as stated. By simulation of 4, 5 and 8 values with excess 0,
+        1, 1.5 and 3 times their u the 95 % interval so made holds the truth in 93.5 to 99 %.
+        """
+        if self.degrees_of_freedom == 0:
+            return float("inf")
+        return self.degrees_of_freedom * (1.0 if self.standard_deviation > 0.0 else HIDDEN)
 
 
 def excess_scatter(
