@@ -16,17 +16,20 @@ from numpy.typing import NDArray
 from clockgeo.errors import DataError
 from clockgeo.frequency.averaging import averaging_factors
 from clockgeo.frequency.confidence import LAW_OF_ALPHA, chi_squared_interval, freedom_of
+from clockgeo.frequency.contrasts import LAWS
 from clockgeo.frequency.identification import dominant_exponent
 from clockgeo.frequency.mean import TickSeries
-from clockgeo.frequency.partial_windows import PartialWindows
+from clockgeo.frequency.partial_windows import WindowExpectations, noise_mixture
 from clockgeo.frequency.stability_statistics import Statistic, find_statistic
 from clockgeo.frequency.total_deviations import total_bias, total_variance
+from clockgeo.frequency.window_freedom import freedom_with_gaps
 from clockgeo.frequency.window_sums import (
+    complete_modified,
+    complete_squares,
+    partial_modified,
+    partial_squares,
     running_sums,
-    second_sums,
-    three_windows,
-    two_windows,
-    window_pairs,
+    runs_of,
 )
 from clockgeo.progress import track
 
@@ -34,6 +37,8 @@ __all__ = ["StabilityCurve", "stability_curve"]
 
 _ENOUGH = 0.3
 """Share of all windows that must be complete for partly filled ones to be left aside."""
+_PLACES = 16
+"""Partly filled windows in an averaging time."""
 _FILL = 0.5
 """Least filling of a window, in units of the mean filling of the record."""
 
@@ -155,16 +160,16 @@ class _Line:
 
     size: int
     y: NDArray[np.float64]
-    tick: NDArray[np.int64]
     total: NDArray[np.float64]
     count: NDArray[np.int32]
+    starts: NDArray[np.int64]
+    stops: NDArray[np.int64]
 
     @classmethod
     def of(cls, series: TickSeries) -> _Line:
-        tick = series.tick - series.tick[0]
-        size = int(tick[-1]) + 1
-        total, count = running_sums(tick, series.y, size, float(series.y.mean()))
-        return cls(size, series.y, tick, total, count)
+        size = int(series.tick[-1] - series.tick[0]) + 1
+        total, count = running_sums(series.tick, series.y, size, float(series.y.mean()))
+        return cls(size, series.y, total, count, *runs_of(series.tick))
 
     @property
     def gapless(self) -> bool:
@@ -254,54 +259,86 @@ def _total_points(
 
 def _exponent(record: _Line, m: int, otherwise: int) -> int:
     """Ruling exponent at an averaging time, of a complete record; the last one where data end."""
-    averages = (record.total[m::m] - record.total[:-m:m]) / m
+    averages = np.diff(record.total[::m]) / m
     if averages.size < 30:
         return otherwise
     ratio = None
     if m > 1:
-        plain, number = two_windows(record.total, m, 1)
-        sums, counts = second_sums(record.total, record.count, m)
-        modified, weights, _ = window_pairs(sums, counts, m, 1, float(m) ** 2)
-        if plain > 0.0 and weights > 0.0:
-            ratio = (modified / weights * m**2 / 2.0) / (plain / number)
+        runs = record.starts, record.stops
+        plain, pairs = complete_squares(record.total, *runs, m, 2, 1)
+        modified, triples = complete_modified(record.total, *runs, m)
+        if plain > 0.0 and triples:
+            ratio = (modified / triples / m**2) / (plain / pairs)
     return dominant_exponent(averages, ratio, m)
 
 
 def _window_points(
     statistic: Statistic, record: _Line, factors: Sequence[int], interval: float
 ) -> _Points:
-    partial = PartialWindows(statistic, record.tick, record.size, interval)
     raw, count, filled = [], [], []
     for m in track(factors, statistic.name):
         one, number, partly = _raw_variance(statistic, record, m)
+        if one <= 0.0:
+            raise DataError(
+                "a deviation is zero: the samples repeat themselves",
+                value=f"tau = {m * interval:g} s",
+            )
         raw.append(one)
         count.append(number)
         filled.append(partly)
-    chosen = np.array(filled, dtype=bool)
-    variance = np.array(raw)
-    if np.any(variance <= 0.0):
-        m = factors[int(np.argmax(variance <= 0.0))]
-        raise DataError(
-            "a deviation is zero: the samples repeat themselves", value=f"tau = {m * interval:g} s"
+    variance, partial = np.array(raw), np.array(filled, dtype=bool)
+    counts = np.array(count, dtype=np.int64)
+    if not record.gapless:
+        return _with_gaps(statistic, record, factors, interval, variance, counts, partial)
+    exponents, exponent = [], 0
+    for m in factors:
+        exponent = _exponent(record, m, exponent)
+        exponents.append(exponent)
+    edf = [
+        freedom_of(statistic, alpha, m, record.size)
+        for alpha, m in zip(exponents, factors, strict=True)
+    ]
+    noise = [LAW_OF_ALPHA[alpha] for alpha in exponents]
+    return _Points(variance, np.array(edf), noise, counts, partial)
+
+
+def _with_gaps(
+    statistic: Statistic,
+    record: _Line,
+    factors: Sequence[int],
+    interval: float,
+    raw: NDArray[np.float64],
+    count: NDArray[np.int64],
+    partial: NDArray[np.bool_],
+) -> _Points:
+    """Put the expectation of partly filled windows right; noise and freedom from the mixture."""
+    windows = WindowExpectations(statistic, record.count, record.starts, record.stops, interval)
+    whole = np.array([windows.complete(m) for m in factors])
+    expected = whole.copy()
+    for place in np.flatnonzero(partial):
+        m = factors[place]
+        expected[place] = windows.partial(m, _stride(statistic, m), _least(record))
+    independent = record.y.size / np.array(factors)
+    levels = noise_mixture(raw, expected, np.maximum(np.minimum(count, independent), 1.0))
+    edf = [
+        freedom_with_gaps(
+            record.count,
+            m,
+            levels,
+            order=statistic.order,
+            modified=statistic.kind == "modified",
+            plain=statistic.kind == "plain",
+            least=_least(record) if partly else 1.0,
+            interval=interval,
         )
-    if record.gapless:
-        exponents, exponent = [], 0
-        for m in factors:
-            exponent = _exponent(record, m, exponent)
-            exponents.append(exponent)
-        edf = [
-            freedom_of(statistic, alpha, m, record.size)
-            for alpha, m in zip(exponents, factors, strict=True)
-        ]
-        noise = [LAW_OF_ALPHA[alpha] for alpha in exponents]
-        return _Points(variance, np.array(edf), noise, np.array(count, dtype=np.int64), chosen)
-    corrected = partial.corrected(factors, variance, chosen, np.array(count), _least(record))
+        for m, partly in zip(factors, partial, strict=True)
+    ]
     return _Points(
-        corrected.variance,
-        corrected.edf,
-        list(corrected.noise),
-        np.array(count, dtype=np.int64),
-        chosen,
+        raw * (whole @ levels) / (expected @ levels),
+        np.array(edf),
+        [LAWS[int(place)] for place in np.argmax(whole * levels, axis=1)],
+        count,
+        partial,
     )
 
 
@@ -310,29 +347,41 @@ def _least(record: _Line) -> float:
     return _FILL * record.uptime
 
 
+def _stride(statistic: Statistic, m: int) -> int:
+    """Distance of partly filled windows: sixteen to a length hold all that more would tell."""
+    return m if statistic.kind == "plain" else max(m // _PLACES, 1)
+
+
 def _raw_variance(statistic: Statistic, record: _Line, m: int) -> tuple[float, int, bool]:
     """Variance from complete windows, or from partly filled ones where those are few."""
-    stride = m if statistic.kind == "plain" else 1
-    if statistic.kind == "overlapping" and statistic.order == 2 and record.gapless:
-        acc, number = two_windows(record.total, m, 1)
-        return acc / (2.0 * number), number, False
-    total = record.total
-    count: NDArray[np.int32] | NDArray[np.float64] = record.count
-    full = float(m)
-    if statistic.kind == "modified":
-        total, count = second_sums(record.total, record.count, m)
-        full = float(m) ** 2
-    sums = window_pairs if statistic.order == 2 else three_windows
-    divisor = 2.0 if statistic.order == 2 else 6.0
-    possible = len(range(0, total.size - (2 if statistic.order == 2 else 3) * m, stride))
-    acc, weights, number = sums(total, count, m, stride, full)
-    partly = number < _ENOUGH * possible
-    if partly:
-        acc, weights, number = sums(total, count, m, stride, max(_least(record) * full, 1.0))
+    order, modified = statistic.order, statistic.kind == "modified"
+    runs = record.starts, record.stops
+    if modified:
+        squares, number = complete_modified(record.total, *runs, m)
+        squares /= float(m) ** 4
+    else:
+        stride = m if statistic.kind == "plain" else 1
+        squares, number = complete_squares(record.total, *runs, m, order, stride)
+        squares /= float(m) ** 2
+    possible = record.size - statistic.span * m + 1 + modified
+    if statistic.kind == "plain":
+        possible = -(-possible // m)
+    scale = 2.0 if order == 2 else 6.0
+    if number >= _ENOUGH * possible:
+        return squares / number / scale, number, False
+    stride, least = _stride(statistic, m), _least(record)
+    if modified:
+        squares, weights, number = partial_modified(
+            record.total, record.count, m, stride, max(least * float(m) ** 2, 1.0)
+        )
+    else:
+        squares, weights, number = partial_squares(
+            record.total, record.count, m, order, stride, max(least * m, 1.0)
+        )
     if number == 0:
         raise DataError(
             "no window of the record is filled well enough",
             value=f"averaging factor {m}",
             advice="Choose shorter averaging times",
         )
-    return acc / weights / divisor, number, partly
+    return squares / weights / scale, number, True

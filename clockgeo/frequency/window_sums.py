@@ -1,8 +1,8 @@
 """Compiled sums over windows of a record, with or without gaps.
 
-All work on running sums of y (zero where there is no sample) and of the number of samples, so that
-one pass over memory serves any averaging time. A window counts if it holds at least `least`
-samples; with `least` = m only complete windows do.
+All work on running sums of y (which stand still where there is no sample) and of the number of
+samples, so that one pass over memory serves any averaging time. Complete windows are looked for
+within runs of samples without a gap; partly filled ones anywhere, at least so well filled.
 """
 
 from __future__ import annotations
@@ -12,7 +12,14 @@ from numpy.typing import NDArray
 
 from clockgeo.frequency.compiling import compiled
 
-__all__ = ["running_sums", "second_sums", "three_windows", "two_windows", "window_pairs"]
+__all__ = [
+    "complete_modified",
+    "complete_squares",
+    "partial_modified",
+    "partial_squares",
+    "running_sums",
+    "runs_of",
+]
 
 
 @compiled
@@ -20,100 +27,192 @@ def running_sums(
     tick: NDArray[np.int64], y: NDArray[np.float64], size: int, mean: float
 ) -> tuple[NDArray[np.float64], NDArray[np.int32]]:
     """Running sums of y - mean and of the samples on a line of `size` ticks, shapes (size + 1,)."""
-    total = np.zeros(size + 1)
-    count = np.zeros(size + 1, dtype=np.int32)
-    place = 0
-    number = np.int32(0)
+    total = np.empty(size + 1)
+    count = np.empty(size + 1, dtype=np.int32)
     acc = 0.0
-    for row in range(size):
-        if place < tick.size and tick[place] == row:
-            acc += y[place] - mean
-            number += np.int32(1)
-            place += 1
-        total[row + 1] = acc
-        count[row + 1] = number
+    row = 0
+    for place in range(tick.size):
+        here = tick[place] - tick[0]
+        while row <= here:
+            total[row] = acc
+            count[row] = place
+            row += 1
+        acc += y[place] - mean
+    while row <= size:
+        total[row] = acc
+        count[row] = tick.size
+        row += 1
     return total, count
 
 
 @compiled
-def two_windows(total: NDArray[np.float64], m: int, stride: int) -> tuple[float, int]:
-    """Sum of squared differences of neighbouring complete averages, and their number."""
-    acc = 0.0
-    places = total.size - 2 * m
-    scale = 1.0 / m
-    number = 0
-    for i in range(0, places, stride):
-        d = (total[i + 2 * m] - 2.0 * total[i + m] + total[i]) * scale
-        acc += d * d
-        number += 1
-    return acc, number
+def runs_of(tick: NDArray[np.int64]) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+    """First tick of each run without a gap, and the one behind its last, from the first sample."""
+    number = 1
+    for place in range(1, tick.size):
+        if tick[place] != tick[place - 1] + 1:
+            number += 1
+    starts = np.empty(number, dtype=np.int64)
+    stops = np.empty(number, dtype=np.int64)
+    starts[0] = 0
+    run = 0
+    for place in range(1, tick.size):
+        if tick[place] != tick[place - 1] + 1:
+            stops[run] = tick[place - 1] + 1 - tick[0]
+            run += 1
+            starts[run] = tick[place] - tick[0]
+    stops[run] = tick[-1] + 1 - tick[0]
+    return starts, stops
 
 
 @compiled
-def window_pairs(
+def complete_squares(
     total: NDArray[np.float64],
-    count: NDArray[np.int32] | NDArray[np.float64],
+    starts: NDArray[np.int64],
+    stops: NDArray[np.int64],
     m: int,
+    order: int,
     stride: int,
-    least: float,
-) -> tuple[float, float, int]:
-    """Weighted sum of squared differences of neighbouring averages, sum of weights, number.
+) -> tuple[float, int]:
+    """Sum of squared differences of sums of m samples, of order 1 or 2 (`order` 2 or 3).
 
-    The weight n1 n2/(n1 + n2) is the inverse of the white variance of the difference.
+    Returns
+    -------
+    squares : float
+        In units of y² m².
+    number : int
+        Windows that were found.
     """
-    acc = 0.0
-    weights = 0.0
+    squares = 0.0
     number = 0
-    for i in range(0, total.size - 2 * m, stride):
-        first = float(count[i + m] - count[i])
-        second = float(count[i + 2 * m] - count[i + m])
-        if first >= least and second >= least:
-            d = (total[i + 2 * m] - total[i + m]) / second - (total[i + m] - total[i]) / first
-            w = first * second / (first + second)
-            acc += w * d * d
-            weights += w
-            number += 1
-    return acc, weights, number
+    for run in range(starts.size):
+        first = (starts[run] + stride - 1) // stride * stride
+        behind = stops[run] - order * m + 1
+        if behind <= first:
+            continue
+        acc = 0.0
+        if order == 2:
+            for i in range(first, behind, stride):
+                d = total[i + 2 * m] - 2.0 * total[i + m] + total[i]
+                acc += d * d
+        else:
+            for i in range(first, behind, stride):
+                d = total[i + 3 * m] - 3.0 * (total[i + 2 * m] - total[i + m]) - total[i]
+                acc += d * d
+        squares += acc
+        number += (behind - first + stride - 1) // stride
+    return squares, number
 
 
 @compiled
-def three_windows(
+def complete_modified(
+    total: NDArray[np.float64], starts: NDArray[np.int64], stops: NDArray[np.int64], m: int
+) -> tuple[float, int]:
+    """As `complete_squares`, of sums of m neighbouring second differences; in units of y² m⁴."""
+    squares = 0.0
+    number = 0
+    for run in range(starts.size):
+        first = starts[run]
+        places = stops[run] - first - 3 * m + 2
+        if places <= 0:
+            continue
+        acc = 0.0
+        for j in range(first, first + m):
+            acc += total[j + 2 * m] - 2.0 * total[j + m] + total[j]
+        squares += acc * acc
+        for i in range(first, first + places - 1):
+            acc += total[i + 3 * m] - 3.0 * (total[i + 2 * m] - total[i + m]) - total[i]
+            squares += acc * acc
+        number += places
+    return squares, number
+
+
+@compiled
+def partial_squares(
     total: NDArray[np.float64],
-    count: NDArray[np.int32] | NDArray[np.float64],
+    count: NDArray[np.int32],
     m: int,
+    order: int,
     stride: int,
     least: float,
 ) -> tuple[float, float, int]:
-    """As `window_pairs`, for second differences of three neighbouring averages."""
-    acc = 0.0
+    """Weighted sum of squared differences of means of partly filled windows.
+
+    Parameters
+    ----------
+    total, count : arrays, shape (size + 1,)
+        Of `running_sums`.
+    m, order, stride : int
+    least : float
+        Samples that each window must hold.
+
+    Returns
+    -------
+    squares, weights : float
+        The weight 1/(1/n1 + 1/n2), or 1/(1/n1 + 4/n2 + 1/n3), is inverse to the white variance.
+    number : int
+    """
+    squares = 0.0
     weights = 0.0
     number = 0
-    for i in range(0, total.size - 3 * m, stride):
-        first = float(count[i + m] - count[i])
-        second = float(count[i + 2 * m] - count[i + m])
-        third = float(count[i + 3 * m] - count[i + 2 * m])
-        if first >= least and second >= least and third >= least:
-            d = (
-                (total[i + 3 * m] - total[i + 2 * m]) / third
-                - 2.0 * (total[i + 2 * m] - total[i + m]) / second
-                + (total[i + m] - total[i]) / first
-            )
-            w = 1.0 / (1.0 / first + 4.0 / second + 1.0 / third)
-            acc += w * d * d
-            weights += w
-            number += 1
-    return acc, weights, number
+    for i in range(0, total.size - order * m, stride):
+        n1 = float(count[i + m] - count[i])
+        n2 = float(count[i + 2 * m] - count[i + m])
+        if n1 < least or n2 < least:
+            continue
+        first = (total[i + m] - total[i]) / n1
+        second = (total[i + 2 * m] - total[i + m]) / n2
+        d = second - first
+        spread = 1.0 / n1 + 1.0 / n2
+        if order == 3:
+            n3 = float(count[i + 3 * m] - count[i + 2 * m])
+            if n3 < least:
+                continue
+            d = (total[i + 3 * m] - total[i + 2 * m]) / n3 - second - d
+            spread += 3.0 / n2 + 1.0 / n3
+        squares += d * d / spread
+        weights += 1.0 / spread
+        number += 1
+    return squares, weights, number
 
 
 @compiled
-def second_sums(
-    total: NDArray[np.float64], count: NDArray[np.int32], m: int
-) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
-    """Running sums of windows of m samples: their differences weight samples by a triangle."""
-    size = total.size - m
-    sums = np.zeros(size + 1)
-    counts = np.zeros(size + 1)
-    for i in range(size):
-        sums[i + 1] = sums[i] + (total[i + m] - total[i])
-        counts[i + 1] = counts[i] + float(count[i + m] - count[i])
-    return sums, counts
+def partial_modified(
+    total: NDArray[np.float64], count: NDArray[np.int32], m: int, stride: int, least: float
+) -> tuple[float, float, int]:
+    """As `partial_squares`, of differences of means weighted by triangles of base 2m.
+
+    `least` is a sum of weights: m² for a complete triangle.
+    """
+    squares = 0.0
+    weights = 0.0
+    number = 0
+    places = total.size - 3 * m + 1
+    # Sums of m neighbouring running sums, at distances of m.
+    a, b, c = 0.0, 0.0, 0.0
+    p, q, r = 0, 0, 0
+    for j in range(m if places > 0 else 0):
+        a += total[j]
+        b += total[j + m]
+        c += total[j + 2 * m]
+        p += np.int64(count[j])
+        q += np.int64(count[j + m])
+        r += np.int64(count[j + 2 * m])
+    for i in range(places):
+        if i % stride == 0:
+            n1 = float(q - p)
+            n2 = float(r - q)
+            if n1 >= least and n2 >= least:
+                d = (c - b) / n2 - (b - a) / n1
+                spread = 1.0 / n1 + 1.0 / n2
+                squares += d * d / spread
+                weights += 1.0 / spread
+                number += 1
+        if i + 1 < places:
+            a += total[i + m] - total[i]
+            b += total[i + 2 * m] - total[i + m]
+            c += total[i + 3 * m] - total[i + 2 * m]
+            p += np.int64(count[i + m]) - np.int64(count[i])
+            q += np.int64(count[i + 2 * m]) - np.int64(count[i + m])
+            r += np.int64(count[i + 3 * m]) - np.int64(count[i + 2 * m])
+    return squares, weights, number
