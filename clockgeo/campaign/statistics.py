@@ -42,6 +42,9 @@ class Group:
     members : tuple of int
         Places in the list of sessions.
     model : NoiseModel
+        What uncertainties follow: averaged over what the data allow, no less than stated.
+    likeliest : NoiseModel
+        What is reported as the noise of the pair.
     fitted : bool
         False where the records are too short and the document's model is used.
     degrees_of_freedom : float
@@ -51,6 +54,7 @@ class Group:
     name: str
     members: tuple[int, ...]
     model: NoiseModel
+    likeliest: NoiseModel
     fitted: bool
     degrees_of_freedom: float
 
@@ -84,7 +88,7 @@ class SessionStatistics:
                 pair=group.name,
                 sessions=tuple(measured[place].session.id for place in group.members),
                 source="fitted" if group.fitted else "stated in the document",
-                **{name: level or None for name, level in group.model.model_dump().items()},
+                **{name: level or None for name, level in group.likeliest.model_dump().items()},
             )
             for group in self.groups
         )
@@ -196,9 +200,17 @@ def _fitted(
         stated = _stated_model(campaign, measured[places[0]])
         if not np.any(stated.allan_variance([1.0, 1e4]) > 0.0):
             raise
-        return Group(name, tuple(places), stated, fitted=False, degrees_of_freedom=float("inf"))
-    model = _no_less_than_stated(fit.model, _stated_model(campaign, measured[places[0]]))
-    return Group(name, tuple(places), model, fitted=True, degrees_of_freedom=fit.degrees_of_freedom)
+        return Group(
+            name, tuple(places), stated, stated, fitted=False, degrees_of_freedom=float("inf")
+        )
+    return Group(
+        name,
+        tuple(places),
+        _no_less_than_stated(fit.averaged, _stated_model(campaign, measured[places[0]])),
+        fit.model,
+        fitted=True,
+        degrees_of_freedom=fit.degrees_of_freedom,
+    )
 
 
 def _no_less_than_stated(fitted: NoiseModel, stated: NoiseModel) -> NoiseModel:

@@ -9,6 +9,7 @@ import importlib
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
+    from clockgeo.frequency.dead_time import dead_time_variance, uptime_windows
     from clockgeo.frequency.deviations import StabilityCurve, stability_curve
     from clockgeo.frequency.diagnosis import Finding, diagnose
     from clockgeo.frequency.generator import draw_noise
@@ -31,6 +32,8 @@ _HOMES = {
     "ExcessScatter": "scatter",
     "excess_scatter": "scatter",
     "RecordStability": "stability",
+    "dead_time_variance": "dead_time",
+    "uptime_windows": "dead_time",
     "StabilityCurve": "deviations",
     "stability_curve": "deviations",
     "assess_stability": "stability",
@@ -70,6 +73,8 @@ __all__ = [
     "excess_scatter",
     "RecordStability",
     "StabilityCurve",
+    "dead_time_variance",
+    "uptime_windows",
     "stability_curve",
     "assess_stability",
     "NoiseFit",

@@ -18,6 +18,8 @@ __all__ = ["NoiseFit", "fit_noise"]
 _BLOCKS = 320
 _FEWEST_CONTRASTS = 12
 _LAWS = ("flicker_fm", "random_walk_fm")
+_RATIOS = np.geomspace(3e-3, 1e6, 69)
+"""Slow over white noise, in units of where the slow law begins to show; even in the logarithm."""
 
 
 @dataclass(frozen=True)
@@ -27,9 +29,14 @@ class NoiseFit:
     Attributes
     ----------
     model : NoiseModel
-        White FM, and flicker or random-walk FM if the data call for it.
+        The likeliest: white FM, and flicker or random-walk FM if the data call for it.
+    averaged : NoiseModel
+        Squared levels averaged over all models the data allow, each by its probability; the one to
+        take uncertainties from, because a floor that does not show may still be there. Scaled for
+        intervals by Student's t with `degrees_of_freedom`.
     degrees_of_freedom : float
-        Number of contrasts the fit rests on.
+        How well the variance of a difference of session means (of the halves of a single session)
+        is known: that of a chi-squared with the same relative spread.
     information : dict of str to float
         Corrected Akaike criterion of each candidate, smaller is better: `white_fm` alone, and
         white with each of the slower laws.
@@ -40,6 +47,7 @@ class NoiseFit:
     """
 
     model: NoiseModel
+    averaged: NoiseModel
     degrees_of_freedom: float
     information: dict[str, float]
     flicker_limit: float
@@ -71,8 +79,9 @@ def fit_noise(series: Sequence[TickSeries], *, interval: float) -> NoiseFit:
     has correlated fall into one block. On contrasts of the block means (which see no session mean)
     the covariance is w D + s K, with D the white part and K the kernel of the slower law; one
     generalised eigen-decomposition makes both diagonal, so that the restricted likelihood
-    (Patterson and Thompson 1971, Biometrika 58:545) is a sum of scalars. The candidate with the
-    smallest corrected Akaike criterion wins.
+    (Patterson and Thompson 1971, Biometrika 58:545) is a sum of scalars. For the average, the white
+    level is integrated out with the prior 1/w and the ratio s/w is summed over an even grid in its
+    logarithm, from nothing to everything; both slow laws are equally likely beforehand.
     """
     blocks = _block_means(series, interval)
     contrasts = _session_contrasts(blocks, len(series))
@@ -94,9 +103,14 @@ def fit_noise(series: Sequence[TickSeries], *, interval: float) -> NoiseFit:
     levels = {"white_fm": float(np.sqrt(chosen.white * interval))}
     if winner != "white_fm":
         levels[winner] = float(np.sqrt(chosen.slow))
+    averaged, doubt = _average(fits, blocks, freedom)
     return NoiseFit(
         model=NoiseModel(**levels),
-        degrees_of_freedom=float(freedom),
+        averaged=NoiseModel(
+            white_fm=float(np.sqrt(averaged["white_fm"] * interval)),
+            **{law: float(np.sqrt(averaged[law])) for law in _LAWS},
+        ),
+        degrees_of_freedom=doubt,
         information=information,
         flicker_limit=float(np.sqrt(fits["flicker_fm"].upper_slow)),
         block_seconds=blocks.width,
@@ -112,11 +126,15 @@ class _Levels:
     minus_two_log: float
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class _Fit:
+    """White noise beside one slow law, and the kernel of that law between blocks."""
+
     best: _Levels
     white_alone: _Levels
     upper_slow: float
+    grid: tuple[_Levels, ...]
+    kernel: NDArray[np.float64]
 
 
 @dataclass(frozen=True, eq=False)
@@ -141,32 +159,69 @@ def _two_laws(law: str, blocks: _Blocks, contrasts: NDArray[np.float64]) -> _Fit
     white = contrasts.T @ (contrasts / blocks.count[:, None])
     slow = contrasts.T @ kernel @ contrasts
     ratios, vectors = linalg.eigh(slow, white)
+    ratios = np.maximum(ratios, 0.0)
     squares = (vectors.T @ (contrasts.T @ blocks.y)) ** 2
     constant = float(np.linalg.slogdet(white)[1])
     freedom = squares.size
 
-    def profiled(log_ratio: float) -> _Levels:
+    def profiled(ratio: float) -> _Levels:
         """White level maximised for a given ratio of slow to white."""
-        relative = 1.0 + np.exp(log_ratio) * np.maximum(ratios, 0.0)
+        relative = 1.0 + ratio * ratios
         level = float(np.mean(squares / relative))
         loss = freedom * (np.log(level) + 1.0) + float(np.sum(np.log(relative))) + constant
-        return _Levels(level, level * float(np.exp(log_ratio)), loss)
+        return _Levels(level, level * ratio, loss)
 
-    alone = profiled(-np.inf)
-    largest = float(np.max(ratios))
-    grid = np.log(np.geomspace(1e-4, 1e6, 60) / largest)
-    losses = [profiled(log).minus_two_log for log in grid]
-    place = int(np.argmin(losses))
-    bounds = grid[max(place - 1, 0)], grid[min(place + 1, grid.size - 1)]
+    alone = profiled(0.0)
+    grid = [profiled(ratio) for ratio in _RATIOS / float(ratios.max())]
+    place = int(np.argmin([levels.minus_two_log for levels in grid]))
+    around = np.log(_RATIOS[[max(place - 1, 0), min(place + 1, _RATIOS.size - 1)]] / ratios.max())
     found = optimize.minimize_scalar(
-        lambda log: profiled(log).minus_two_log, bounds=bounds, method="bounded"
+        lambda log: profiled(float(np.exp(log))).minus_two_log, bounds=around, method="bounded"
     )
-    best = profiled(float(found.x))
+    best = profiled(float(np.exp(found.x)))
     best = best if best.minus_two_log < alone.minus_two_log else alone
     limit = best.minus_two_log + float(stats.chi2.ppf(0.90, 1))
-    above = [log for log, loss in zip(grid, losses, strict=True) if loss <= limit]
-    upper = profiled(max(above)).slow if above else best.slow
-    return _Fit(best, alone, upper)
+    allowed = [levels.slow for levels in grid if levels.minus_two_log <= limit]
+    return _Fit(best, alone, max(allowed, default=best.slow), tuple(grid), kernel)
+
+
+def _average(
+    fits: dict[str, _Fit], blocks: _Blocks, freedom: int
+) -> tuple[dict[str, float], float]:
+    """Squared levels averaged over models, and the freedom of the variance of a difference."""
+    points = [(law, levels) for law, fit in fits.items() for levels in fit.grid]
+    losses = np.array([levels.minus_two_log for _, levels in points])
+    weight = np.exp(-(losses - losses.min()) / 2.0)
+    weight /= weight.sum()
+    # The white level is an inverse gamma variable given the ratio: mean and variance are known.
+    mean = freedom / max(freedom - 2.0, 1.0)
+    spread = 2.0 / max(freedom - 4.0, 1.0)
+    white = np.array([levels.white for _, levels in points]) * mean
+    slow = np.array([levels.slow for _, levels in points]) * mean
+    averaged = {"white_fm": float(weight @ white)}
+    contrast = _difference(blocks)
+    variance = white * float(contrast**2 @ (1.0 / blocks.count))
+    for law, fit in fits.items():
+        of_law = np.array([name == law for name, _ in points])
+        averaged[law] = float(weight[of_law] @ slow[of_law])
+        variance[of_law] += slow[of_law] * float(contrast @ fit.kernel @ contrast)
+    total = float(weight @ variance)
+    relative = float(weight @ variance**2) * (1.0 + spread) / total**2 - 1.0
+    doubt = min(2.0 / max(relative, 1e-12) + 4.0, float(freedom))
+    # The mean of an inverse gamma variable is larger than the scale of Student's t by ν/(ν - 2).
+    return {law: level * (doubt - 2.0) / doubt for law, level in averaged.items()}, doubt
+
+
+def _difference(blocks: _Blocks) -> NDArray[np.float64]:
+    """Weights of the difference that stands for all: later sessions, or half, minus the first."""
+    sessions = np.unique(blocks.session)
+    if sessions.size > 1:
+        early = blocks.session == sessions[0]
+    else:
+        early = np.arange(blocks.y.size) < blocks.y.size // 2
+    share = np.where(early, -blocks.count, 0.0) / blocks.count[early].sum()
+    late = ~early
+    return np.asarray(share + np.where(late, blocks.count, 0.0) / blocks.count[late].sum())
 
 
 def _session_contrasts(blocks: _Blocks, sessions: int) -> NDArray[np.float64]:

@@ -4,9 +4,9 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
-from checks import assert_published
 from scipy import integrate
 
+from checks import assert_published
 from clockgeo.errors import DataError
 from clockgeo.frequency.dead_time import dead_time_variance, uptime_windows
 from clockgeo.frequency.noise import NoiseModel
