@@ -117,9 +117,9 @@ def _information(
     others, clocks = model.others, model.clock_rows
     slow = np.sum([part for name, part in model.parts.items() if name not in AVERAGING], axis=0)
     averaging = np.sum([model.parts[name] for name in AVERAGING], axis=0)
-    loading = _merged(
-        np.hstack([others.loading.toarray(), _placed(_root(slow), clocks, len(others.rows))])
-    )
+    shared = (others.loading @ others.loading.T).toarray()
+    shared[np.ix_(clocks, clocks)] += slow
+    loading = _root(shared)
     design = others.design.toarray()
     every = np.hstack([design, loading])
     known = np.diag(np.concatenate([np.full(design.shape[1], _VAGUE), np.ones(loading.shape[1])]))
@@ -134,36 +134,10 @@ def _information(
 
 
 def _root(covariance: Array) -> Array:
-    """L with L Lᵀ = covariance, for a positive semidefinite one."""
+    """L with L Lᵀ = covariance, for a positive semidefinite one, and as few columns as it takes."""
     values, vectors = np.linalg.eigh(covariance)
     kept = values > 1e-12 * max(float(values[-1]), 1e-300)
     return np.asarray(vectors[:, kept] * np.sqrt(values[kept]))
-
-
-def _placed(block: Array, rows: NDArray[np.int64], size: int) -> Array:
-    whole = np.zeros((size, block.shape[1]))
-    whole[rows] = block
-    return whole
-
-
-def _merged(loading: Array) -> Array:
-    """One column for all effects that act on the same rows in the same proportion."""
-    length = np.linalg.norm(loading, axis=0)
-    loading, length = loading[:, length > 0.0], length[length > 0.0]
-    first = np.argmax(np.abs(loading) > 1e-9 * length, axis=0)
-    sign = np.sign(loading[first, np.arange(length.size)])
-    groups: dict[bytes, list[int]] = {}
-    for column in range(length.size):
-        direction = np.round(sign[column] * loading[:, column] / length[column], 9) + 0.0
-        groups.setdefault(direction.tobytes(), []).append(column)
-    merged = [
-        sign[columns[0]]
-        * loading[:, columns[0]]
-        / length[columns[0]]
-        * np.linalg.norm(length[columns])
-        for columns in groups.values()
-    ]
-    return np.array(merged).T.reshape(len(loading), len(merged))
 
 
 def _wanted(model: PlanModel, unknowns: tuple[Hashable, ...], size: int) -> Array:

@@ -10,6 +10,7 @@ Boyd and Vandenberghe 2004, Convex Optimization, section 7.5).
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from typing import Literal
 
@@ -23,6 +24,8 @@ Criterion = Literal["worst", "A", "D", "E"]
 """Largest diagonal element, trace, ln of the determinant, or largest eigenvalue of V."""
 
 Array = NDArray[np.float64]
+_SINGULAR = 1e-9
+"""Share of the information below which nothing is left of it."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -141,14 +144,42 @@ class State:
     @property
     def value(self) -> float:
         """The criterion."""
+        return self._criterion(self.v)
+
+    def value_after(self, changes: Mapping[int, float], *, mean_share: float = 0.0) -> float:
+        """Criterion after the times of a few rows have changed; infinite where V has no bound.
+
+        Parameters
+        ----------
+        changes : mapping of int to float
+            Row -> change of its time.
+        mean_share : float
+            Share of the mean variance that is added.
+
+        Notes
+        -----
+        Sherman, Morrison and Woodbury: with S the diagonal of the changes of information and B, G
+        the columns and the block of the changed rows, V' = V - B (S⁻¹ + G)⁻¹ Bᵀ.
+        """
+        rows = [k for k, change in changes.items() if change]
+        size = np.array([changes[k] for k in rows]) * self.problem.rate[rows]
+        within = self._rows[:, rows].T @ self._rows[:, rows]
+        inner = np.eye(len(rows)) + within * size
+        if np.linalg.det(inner) <= _SINGULAR:
+            return float("inf")
+        seen = self.seen[:, rows]
+        v = self.v - (seen * size) @ np.linalg.solve(inner, seen.T)
+        return self._criterion(v) + mean_share * float(np.mean(np.diag(v)))
+
+    def _criterion(self, v: Array) -> float:
         name = self.problem.criterion
         if name == "A":
-            return float(np.trace(self.v))
+            return float(np.trace(v))
         if name == "D":
-            return float(np.linalg.slogdet(self.v)[1])
+            return float(np.linalg.slogdet(v)[1])
         if name == "E":
-            return float(np.linalg.eigvalsh(self.v)[-1])
-        return float(np.max(np.diag(self.v)))
+            return float(np.linalg.eigvalsh((v + v.T) / 2.0)[-1])
+        return float(np.max(np.diag(v)))
 
     def weighted_slope(self, weights: Array) -> Array:
         """Derivative of tr(W V) with respect to w, shape (n,)."""

@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Callable
 
 import numpy as np
-from scipy import linalg
 
 from clockgeo.planning.design_problem import Array, DesignProblem, State
 
@@ -92,27 +91,34 @@ def _room(problem: DesignProblem, w: Array, step: float) -> Array:
     return np.asarray(fits)
 
 
+def _state(problem: DesignProblem, w: Array) -> State:
+    """State with a trace of time everywhere: whole steps may leave something undetermined."""
+    return State(problem, w + _TRACE * problem.budget / problem.cost.clip(min=1e-12))
+
+
+def _mean_share(problem: DesignProblem) -> float:
+    """A little of the mean leads off the plateaus of maxima."""
+    return _MEAN_SHARE if problem.criterion in ("worst", "E") else 0.0
+
+
 def _filled(problem: DesignProblem, w: Array, step: float, may: Allowed) -> Array:
+    """Add steps where they help most, while the budget lasts."""
+    share = _mean_share(problem)
     while np.any(fits := _room(problem, w, step)):
-        more = [w + step * _unit(w, k) for k in _promising(problem, w, fits)]
-        kept = [one for one in more if may(one)]
-        if not kept:
+        state = _state(problem, w)
+        tried = [
+            (state.value_after({k: step}, mean_share=share), k)
+            for k in np.flatnonzero(fits).tolist()
+            if may(w + step * _unit(w, k))
+        ]
+        if not tried:
             break
-        w = min(kept, key=lambda one: _merit(problem, one))
+        w = w + step * _unit(w, min(tried)[1])
     return w
 
 
-def _promising(problem: DesignProblem, w: Array, fits: Array) -> list[int]:
-    """Candidates that fit, those with the steepest slopes first."""
-    gain = -_slope(problem, w)
-    order = np.argsort(-np.where(fits, gain, -np.inf), kind="stable")
-    return [k for k in order.tolist() if fits[k]][:_TRIED]
-
-
-def _slope(problem: DesignProblem, w: Array) -> Array:
-    """Slope of the criterion; of the worst of the variances where there are several."""
-    # A trace of time everywhere: rounded down, an allocation may leave something undetermined.
-    state = State(problem, w + _TRACE * problem.budget / problem.cost.clip(min=1e-12))
+def _slope(problem: DesignProblem, state: State) -> Array:
+    """Slope of the criterion; of the largest of the variances where there are several."""
     weights = np.eye(len(state.v))
     if problem.criterion == "D":
         weights = np.asarray(np.linalg.inv(state.v))
@@ -125,17 +131,6 @@ def _slope(problem: DesignProblem, w: Array) -> Array:
     return state.weighted_slope(weights)
 
 
-def _merit(problem: DesignProblem, w: Array) -> float:
-    """The criterion; for maxima with a little of the mean, which leads off plateaus."""
-    try:
-        state = State(problem, w)
-    except linalg.LinAlgError:
-        return float("inf")
-    if problem.criterion in ("A", "D"):
-        return state.value
-    return state.value + _MEAN_SHARE * float(np.mean(np.diag(state.v)))
-
-
 def _unit(w: Array, k: int) -> Array:
     unit = np.zeros_like(w)
     unit[k] = 1.0
@@ -145,31 +140,33 @@ def _unit(w: Array, k: int) -> Array:
 def _trimmed(problem: DesignProblem, w: Array, step: float, least: Array, may: Allowed) -> Array:
     """Take steps away until the budget is kept and the allocation is allowed, if it can be."""
     for _ in range(_TRIMS):
-        over = float(problem.cost @ w) > problem.budget + 1e-9
-        if not over and may(w):
+        if float(problem.cost @ w) <= problem.budget + 1e-9 and may(w):
             break
-        fewer = [w - step * _unit(w, k) for k in range(len(w)) if w[k] - step >= least[k] - 1e-9]
-        kept = [one for one in fewer if may(one)] or fewer
+        state = _state(problem, w)
+        givers = np.flatnonzero(w - step >= least - 1e-9).tolist()
+        kept = [k for k in givers if may(w - step * _unit(w, k))] or givers
         if not kept:
             break
-        w = min(kept, key=problem.value)
+        w = w - step * _unit(w, min((state.value_after({k: -step}), k) for k in kept)[1])
     return w
 
 
 def _exchange(
     problem: DesignProblem, w: Array, step: float, least: Array, may: Allowed
 ) -> Array | None:
-    here = _merit(problem, w)
-    slope = _slope(problem, w)
+    """The best exchange of a step among the most promising ones; None where none helps."""
+    share, state = _mean_share(problem), _state(problem, w)
+    slope = _slope(problem, state)
     takers = [k for k in np.argsort(slope).tolist() if w[k] + step <= problem.most[k] + 1e-9]
     givers = [k for k in np.argsort(-slope).tolist() if w[k] - step >= least[k] - 1e-9]
-    best, value = None, here * (1.0 - 1e-12) if here > 0.0 else here - 1e-12
+    here = state.value_after({}, mean_share=share)
+    best, value = None, here - 1e-12 * abs(here)
     for k in givers[:_TRIED]:
         for j in takers[:_TRIED]:
             moved = w + step * (_unit(w, j) - _unit(w, k))
             if j == k or float(problem.cost @ moved) > problem.budget + 1e-9:
                 continue
-            found = _merit(problem, moved)
+            found = state.value_after({j: step, k: -step}, mean_share=share)
             if found < value and may(moved):
                 best, value = moved, found
     return best
