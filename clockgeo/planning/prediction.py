@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Hashable, Mapping, Sequence
+from collections.abc import Hashable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 from functools import cached_property
 from itertools import pairwise
@@ -17,6 +17,7 @@ from clockgeo.campaign.measuring import tide_of
 from clockgeo.campaign.networking import NetworkRows, add_network
 from clockgeo.campaign.schema import Campaign, Session
 from clockgeo.campaign.site_tides import years_from_epoch
+from clockgeo.errors import DataError
 from clockgeo.gravity import normal_gravity
 from clockgeo.levelling.effects import EffectKey
 from clockgeo.levelling.linear_model import LinearModel, ModelBuilder
@@ -285,9 +286,28 @@ def planned_means(document: Document, sessions: Sequence[Session]) -> list[Sessi
 
 
 def goals_of(model: PlanModel) -> list[Goal]:
-    """Turn the document's targets into combinations of unknowns."""
+    """Turn the document's targets into combinations of unknowns.
+
+    Raises
+    ------
+    DataError
+        If nothing in the plan sees a site or datum of a target.
+    """
+    goals = list(_goals(model))
+    known = set(model.others.unknowns)
+    for goal in goals:
+        for name, end in zip(goal.combination, (goal.end, goal.start), strict=True):
+            if name not in known:
+                raise DataError(
+                    f"no planned session goes to {end}",
+                    where=f"target {goal.name}",
+                    advice="Add a session or a candidate there, or leave the target out",
+                )
+    return goals
+
+
+def _goals(model: PlanModel) -> Iterator[Goal]:
     campaign, target = model.campaign, model.campaign.target
-    goals: list[Goal] = []
     for one in target.differences if target else ():
         site = campaign.site(one.to_site)
         gravity = float(normal_gravity(site.latitude, site.ellipsoidal_height or 0.0))
@@ -295,9 +315,7 @@ def goals_of(model: PlanModel) -> list[Goal]:
             NumberOf(one.to_site): 1.0 / gravity,
             NumberOf(one.from_site): -1.0 / gravity,
         }
-        goals.append(
-            Goal("height_difference", one.from_site, one.to_site, one.u_height, ends, gravity)
-        )
+        yield Goal("height_difference", one.from_site, one.to_site, one.u_height, ends, gravity)
     for offset in target.offsets if target else ():
         first, second = offset.from_datum, offset.to_datum
         at_first, at_second = (model.datum_gravity[name] for name in (first, second))
@@ -305,5 +323,4 @@ def goals_of(model: PlanModel) -> list[Goal]:
             DatumTerm(second, "offset"): 1.0 / at_second,
             DatumTerm(first, "offset"): -1.0 / at_first,
         }
-        goals.append(Goal("datum_offset", first, second, offset.u, terms, at_second))
-    return goals
+        yield Goal("datum_offset", first, second, offset.u, terms, at_second)

@@ -18,6 +18,8 @@ __all__ = ["Change", "changes", "visited_again", "with_more_time"]
 _DAY_S = 86_400.0
 _HALVED = 8
 """So many of the largest effects are tried."""
+_HARMLESS = 1e-6
+"""Share of the variance below which an effect is not worth a try."""
 _SESSIONS = 40
 """Up to so many sessions are tried one by one; beyond, those that weigh most."""
 
@@ -46,8 +48,9 @@ def changes(prediction: Prediction, goals: Sequence[Goal]) -> Iterator[Change]:
         for effect, contributions in _by_effect(prediction, goals).items()
     }
     weight = {line: sum(parts[effect] for effect in lines[line]) for line in lines}
+    whole = sum((prediction.u(goal) / goal.required_u) ** 2 for goal in goals)
     for line in sorted(lines, key=lambda one: -weight[one])[:_HALVED]:
-        if weight[line] > 0.0:
+        if weight[line] > _HARMLESS * whole:
             halved = model.with_effects(dict.fromkeys(lines[line], 0.5))
             name = " · ".join(part for part in line if part)
             yield _change(f"halve u of {name}", halved, goals)
