@@ -1,0 +1,228 @@
+"""Reading and writing the open exchange format of fibre-link comparisons.
+
+A folder holds headers (`*.yml`, one or several, the same after concatenation) and, for each
+comparator, a folder of its name with data files whose names sort by time. Columns: MJD (UTC),
+output Δ, flag 0, 1 or 2, perhaps a systematic uncertainty, then anything. Headers are read as text
+throughout, so that no nominal value passes through a float; what is not changed is written back
+byte by byte.
+"""
+
+from __future__ import annotations
+
+import shutil
+from dataclasses import dataclass
+from pathlib import Path
+
+import numpy as np
+
+from clockgeo.errors import DataError
+from clockgeo.files import whole_file, write_text
+from clockgeo.frequency.comparator import Comparator, comparator_from, refuse_contradictions
+from clockgeo.frequency.layout import RecordLayout
+from clockgeo.frequency.reading import read_record
+from clockgeo.frequency.record import Record
+from clockgeo.times import SECOND_NS
+
+__all__ = ["ExchangeFolder", "read_exchange", "read_output", "write_exchange"]
+
+HEADERS = "*.yml"
+MJD_COLUMN, OUTPUT_COLUMN, FLAG_COLUMN, U_COLUMN = 1, 2, 3, 4
+VALID_FLAG, EXPERIMENTAL_FLAG = 2, 1
+
+
+@dataclass(frozen=True)
+class ExchangeFolder:
+    """What a folder of the exchange format holds.
+
+    Attributes
+    ----------
+    path : Path
+    headers : tuple of (str, str)
+        Name and text of each header file.
+    comparators : dict of str to Comparator
+    """
+
+    path: Path
+    headers: tuple[tuple[str, str], ...]
+    comparators: dict[str, Comparator]
+
+    def data_files(self, comparator: str) -> list[Path]:
+        """Data files of a comparator in the order of time; empty if it has none."""
+        folder = self.path / comparator
+        if not folder.is_dir():
+            return []
+        return sorted(
+            path for path in folder.iterdir() if path.is_file() and not path.name.startswith(".")
+        )
+
+
+def read_exchange(path: str | Path) -> ExchangeFolder:
+    """Read the headers of a folder; data are read by `read_output`.
+
+    Raises
+    ------
+    DataError
+        If there is no header, one is not YAML, an entry is wrong, or two contradict each other.
+    """
+    folder = Path(path)
+    files = sorted(folder.glob(HEADERS))
+    if not files:
+        raise DataError(
+            "no header of the exchange format",
+            value=folder,
+            allowed=f"Files {HEADERS} in the folder",
+        )
+    headers, comparators = [], []
+    for file in files:
+        try:
+            text = file.read_bytes().decode("utf-8")
+        except UnicodeDecodeError:
+            raise DataError("the header is not text in UTF-8", where=file.name) from None
+        headers.append((file.name, text))
+        comparators += [
+            comparator_from(entry, where=file.name) for entry in _entries(text, file.name)
+        ]
+    refuse_contradictions(comparators)
+    return ExchangeFolder(folder, tuple(headers), {one.name: one for one in comparators})
+
+
+def _entries(text: str, where: str) -> list[dict[str, str]]:
+    """Entries of a header with every value as text, quoted or bare."""
+    import yaml
+
+    try:
+        found = yaml.load(text, Loader=yaml.BaseLoader)
+    except yaml.YAMLError as error:
+        raise DataError(
+            "the header is not YAML", value=str(error).split("\n")[0], where=where
+        ) from None
+    if not isinstance(found, list) or not all(isinstance(entry, dict) for entry in found):
+        raise DataError("the header is not a list of comparators", where=where)
+    for entry in found:
+        for key, value in entry.items():
+            if not isinstance(value, str):
+                raise DataError("a key holds more than one value", value=key, where=where)
+    return found
+
+
+def read_output(
+    folder: ExchangeFolder, name: str, *, experimental: bool = False, skip_bad_rows: bool = False
+) -> Record:
+    """Read all data files of a comparator as one record of its output.
+
+    Parameters
+    ----------
+    folder : ExchangeFolder
+    name : str
+        Of the comparator.
+    experimental : bool
+        Whether rows flagged 1, valid but experimental, count; those flagged 2 do, those flagged 0
+        never.
+    skip_bad_rows : bool
+        See `read_record`.
+
+    Returns
+    -------
+    Record
+        `y` is the output Δ, epochs are starts of gates.
+
+    Raises
+    ------
+    DataError
+        If the comparator is unknown or has no data, or as `read_record`.
+    """
+    comparator = folder.comparators.get(name)
+    if comparator is None:
+        raise DataError(
+            "there is no such comparator", value=name, allowed=f"{', '.join(folder.comparators)}"
+        )
+    files = folder.data_files(name)
+    if not files:
+        raise DataError("a comparator has no data", value=name, where=str(folder.path))
+    flags = (EXPERIMENTAL_FLAG, VALID_FLAG) if experimental else (VALID_FLAG,)
+    layout = RecordLayout(
+        file=tuple(f"{name}/{file.name}" for file in files),
+        format="text",
+        time_column=MJD_COLUMN,
+        value_column=OUTPUT_COLUMN,
+        flag_column=FLAG_COLUMN,
+        valid_flags=flags,
+        interval=comparator.interval,
+    )
+    record = read_record(layout, base=folder.path, name=name, skip_bad_rows=skip_bad_rows)
+    lag_ns = round(comparator.lag * record.interval * SECOND_NS)
+    return Record(
+        name=record.name,
+        tai_ns=record.tai_ns - lag_ns,
+        y=record.y,
+        usable=record.usable,
+        interval=record.interval,
+        tick=record.tick,
+        sources=record.sources,
+        notes=record.notes,
+        weighting=comparator.weighting,  # type: ignore[arg-type]
+    )
+
+
+def write_exchange(
+    folder: ExchangeFolder,
+    target: str | Path,
+    *,
+    outputs: dict[str, Record] | None = None,
+    replace: bool = False,
+) -> list[Path]:
+    """Write a folder of the exchange format.
+
+    Parameters
+    ----------
+    folder : ExchangeFolder
+        Headers are written as they are, data files of comparators without a new output copied.
+    target : path
+        Folder to write to.
+    outputs : dict of str to Record, optional
+        New outputs of comparators, one file each.
+    replace : bool
+        Whether existing files may be replaced.
+
+    Returns
+    -------
+    list of Path
+    """
+    target, written = Path(target), []
+    target.mkdir(parents=True, exist_ok=True)
+    for name, text in folder.headers:
+        write_text(target / name, text, replace=replace)
+        written.append(target / name)
+    for name in folder.comparators:
+        (target / name).mkdir(exist_ok=True)
+        if outputs and name in outputs:
+            record = outputs[name]
+            path = target / name / f"{_first_day(record)}.dat"
+            write_text(path, output_text(folder.comparators[name], record), replace=replace)
+            written.append(path)
+            continue
+        for file in folder.data_files(name):
+            path = target / name / file.name
+            with whole_file(path, replace=replace) as partial:
+                shutil.copyfile(file, partial)
+            written.append(path)
+    return written
+
+
+def _first_day(record: Record) -> int:
+    from clockgeo.times import mjd_utc
+
+    return int(np.floor(mjd_utc(np.array([record.start]))[0]))
+
+
+def output_text(comparator: Comparator, record: Record) -> str:
+    """Text of a data file: MJD with six decimals, output, flag."""
+    from clockgeo.times import mjd_utc
+
+    lag_ns = round(comparator.lag * record.interval * SECOND_NS)
+    mjd = mjd_utc(record.tai_ns + lag_ns)
+    lines = ["# MJD (UTC)\toutput\tflag"]
+    for day, value, usable in zip(mjd, record.y, record.usable, strict=True):
+        shown = f"{value:.12e}" if np.isfinite(value) else "nan"
+        lines.append(f"{day:.6f}\t{shown}\t{VALID_FLAG if usable else 0}")
+    return "\n".join(lines) + "\n"
