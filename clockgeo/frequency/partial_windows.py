@@ -15,17 +15,21 @@ from numpy.typing import NDArray
 from scipy import optimize
 
 from clockgeo.frequency.contrasts import LAWS
-from clockgeo.frequency.mean import block_kernel
 from clockgeo.frequency.noise import NoiseModel
 from clockgeo.frequency.stability_statistics import Statistic
-from clockgeo.frequency.window_expectations import BLOCKS, expected_modified, expected_squares
+from clockgeo.frequency.window_expectations import (
+    BLOCKS,
+    expected_modified,
+    expected_squares,
+    kernel_by_lag,
+)
 
 __all__ = ["WindowExpectations", "noise_mixture"]
 
 _MOST_LAWS = 3
 _PRICE = 6.0
 """What a further law must take off the misfit (χ²)."""
-_PROBES = 300
+_PROBES = 200
 """Windows whose expectation stands for all, where there are more."""
 _GOLDEN = 0.6180339887498949
 _LONGEST_TABLE = 1_024
@@ -107,23 +111,18 @@ class WindowExpectations:
         number = 3 * blocks if self._modified else order * blocks
         width = m / blocks * self.interval
         slow = [
-            block_kernel(
-                NoiseModel(**{law: 1.0}),
-                np.arange(number, dtype=np.int64),
-                width,
-                number * width,
-            )[0]
+            kernel_by_lag(NoiseModel(**{law: 1.0}), number, width, number * width)
             for law in ("flicker_fm", "random_walk_fm")
         ]
         if self._modified:
             # White PM: 2/m³; flicker PM: 3 ln(256/27)/8 of its level, twice for the difference.
             whole = np.array([2.0 / m**3, 0.75 * np.log(256.0 / 27.0) * 0.75 / m**2])
             weights, found = expected_modified(
-                count, starts, stops, probes, m, least * m**2, *slow, whole
+                count, starts, stops, probes, m, least * m**2, slow[0], slow[1], whole
             )
         else:
             weights, found = expected_squares(
-                count, starts, stops, probes, m, order, max(least * m, 1.0), *slow
+                count, starts, stops, probes, m, order, max(least * m, 1.0), slow[0], slow[1]
             )
         if weights <= 0.0:
             return self.complete(m)

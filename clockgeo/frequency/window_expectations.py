@@ -7,20 +7,41 @@ a difference of phase. Everything is exact for windows of up to `BLOCKS` samples
 
 from __future__ import annotations
 
+import math
+
 import numpy as np
 from numpy.typing import NDArray
 
 from clockgeo.frequency.compiling import compiled
+from clockgeo.frequency.mean import block_kernel
+from clockgeo.frequency.noise import NoiseModel
 
-__all__ = ["BLOCKS", "expected_modified", "expected_squares", "flicker_phase_structure"]
+__all__ = [
+    "BLOCKS",
+    "expected_modified",
+    "expected_squares",
+    "flicker_phase_structure",
+    "kernel_by_lag",
+]
 
 BLOCKS = 32
 """Blocks of a window within which its filling is told."""
-_EDGES = 4_096
-_NEIGHBOURS = 64
+_EDGES = 640
+"""Most edges of a window that are told apart; where there are more, the first of them stand for all
+in each of many windows."""
+_FIRST = 160
+_NEIGHBOURS = 24
 """Edges on one side that are told to an edge; signs alternate, so that the rest cancels."""
+_ALL = 128
+"""Number of edges up to which all are told to each other."""
 _DENSE = 512
 """Longest reach of two triangles in samples for which every phase counts as an edge."""
+
+
+def kernel_by_lag(model: NoiseModel, blocks: int, width: float, span: float) -> NDArray[np.float64]:
+    """First row of `block_kernel`: blocks by their distance, shape (blocks,)."""
+    places = np.arange(blocks, dtype=np.int64)
+    return np.asarray(block_kernel(model, places, width, span)[0])
 
 
 @compiled
@@ -30,7 +51,7 @@ def flicker_phase_structure(lag: int) -> float:
     3/4 Σ 1/(2j - 1), j = 1 to lag: the integral of 4 sin²(π f lag)/(2 sin π f) over 0 to 1/2.
     """
     if lag > 20:
-        return 0.75 * (0.5 * np.log(lag) + 0.9817550087 + 1.0 / (48.0 * lag * lag))
+        return 0.75 * (0.5 * math.log(lag) + 0.9817550087 + 1.0 / (48.0 * lag * lag))
     acc = 0.0
     for j in range(1, lag + 1):
         acc += 1.0 / (2.0 * j - 1.0)
@@ -44,7 +65,7 @@ def _of_edges(
     """Variance of Σ size x(place) for white and flicker phase; sizes add up to zero."""
     white = 0.0
     flicker = 0.0
-    reach = number if number <= 2 * _NEIGHBOURS else _NEIGHBOURS
+    reach = number if number <= _ALL else _NEIGHBOURS
     for k in range(number):
         white += size[k] * size[k]
         last = min(number, k + reach + 1)
@@ -144,8 +165,10 @@ def expected_squares(
                 size[number] = factor[w]
                 number += 1
             run += 1
+        crowded = number >= _EDGES
+        number = min(number, _FIRST) if crowded else number
         white, phase = _of_edges(place, size, number)
-        if number >= _EDGES:  # the first edges stand for all
+        if crowded:
             told = 0.0
             for k in range(number):
                 told += size[k] * size[k]
@@ -245,6 +268,7 @@ def expected_modified(
                 before = _triangles(float(high - 1 - i), m, n1, n2)
             place[number], size[number] = high, before
             number += 1
+        number = min(number, _FIRST) if number >= _EDGES else number
         white, phase = _of_edges(place, size, number)
         if not dense:
             share = total_edges / number

@@ -190,7 +190,9 @@ def partial_modified(
     places = total.size - 3 * m + 1
     # Sums of m neighbouring running sums, at distances of m.
     a, b, c = 0.0, 0.0, 0.0
-    p, q, r = 0, 0, 0
+    p = np.int64(0)
+    q = np.int64(0)
+    r = np.int64(0)
     for j in range(m if places > 0 else 0):
         a += total[j]
         b += total[j + m]
