@@ -64,11 +64,13 @@ def command(
 ) -> None:
     """Predict what a planned campaign will reach, and how to reach more.
 
-    Runs the model of level and adjust without data. Writes plan.json, sessions.toml and
-    report.html into the folder given with --out, and the page's pictures as files into the folder
-    given with --figures. With --confirm, simulated campaigns show the scatter beside the u.
+    Runs the model of level and adjust without data: predicted u by term, what limits it, the best
+    use of the days of [[candidate]] sessions, other techniques. Writes plan.json, plan.nc,
+    sessions.toml and report.html into the folder given with --out, and the page's pictures as
+    files into the folder given with --figures. With --confirm, simulated campaigns show how their
+    results scatter.
 
-    Example: clockgeo plan examples/saddle/campaign.toml --out results/saddle-plan
+    Example: clockgeo plan examples/harrow-line/campaign.toml --out results/harrow-line
     """
     del preset  # acted upon before anything else
     from clockgeo.campaign import prepare_folder, read_document

@@ -1,4 +1,4 @@
-"""A plan on disk: `plan.json`, tables as CSV, and the sessions as they go into the document."""
+"""A plan on disk: `plan.json`, CF netCDF, and the sessions as they go into the document."""
 
 from __future__ import annotations
 
@@ -6,28 +6,29 @@ from collections.abc import Sequence
 from pathlib import Path
 
 from clockgeo.campaign.schema import Placed, Session
-from clockgeo.files import json_text, write_text
+from clockgeo.files import json_text, write_dataset, write_text
+from clockgeo.planning.dataset import plan_dataset
 from clockgeo.planning.results import PlanResult
 
 __all__ = ["PLAN_FILES", "sessions_toml", "write_plan"]
 
-PLAN_FILES = ("plan.json", "sessions.toml")
+PLAN_FILES = ("plan.json", "plan.nc", "sessions.toml")
 
 
 def write_plan(
     result: PlanResult, sessions: Sequence[Session], folder: Path, *, replace: bool = False
 ) -> list[Path]:
-    """Write `plan.json` and `sessions.toml` into `folder`; return their paths.
+    """Write `plan.json`, `plan.nc` and `sessions.toml` into `folder`; return their paths.
 
     Raises
     ------
     OutputError
         If a file exists and `replace` is false, or cannot be written.
     """
-    texts = (json_text(result), sessions_toml(sessions))
     paths = [folder / name for name in PLAN_FILES]
-    for path, text in zip(paths, texts, strict=True):
-        write_text(path, text, replace=replace)
+    write_text(paths[0], json_text(result), replace=replace)
+    write_dataset(paths[1], plan_dataset(result), replace=replace, classic=True)
+    write_text(paths[2], sessions_toml(sessions), replace=replace)
     return paths
 
 

@@ -217,7 +217,7 @@ def term_of(effect: Hashable, campaign: Campaign) -> str:
 
 
 def plan_model(document: Document, sessions: Sequence[Session]) -> PlanModel:
-    """Build the model of planned sessions, with the network tables if the document has some.
+    """Build the model of planned sessions; with the network tables if a target asks for datums.
 
     Parameters
     ----------
@@ -254,10 +254,9 @@ def plan_model(document: Document, sessions: Sequence[Session]) -> PlanModel:
 
 
 def _network(builder: ModelBuilder, document: Document) -> NetworkRows | None:
-    campaign = document.campaign
-    if campaign.datums or campaign.levellings or campaign.gnss or campaign.tide_gauges:
-        return add_network(builder, document)
-    return None
+    """Rows of the network tables, where a target is an offset of datums; else it is `level`'s."""
+    target = document.campaign.target
+    return add_network(builder, document) if target is not None and target.offsets else None
 
 
 def planned_means(document: Document, sessions: Sequence[Session]) -> list[SessionMean]:

@@ -55,11 +55,9 @@ def round_to_steps(
         whole = np.where(w > _NOTHING * step, np.ceil(w / step - 1e-6) * step, 0.0)
     whole = _trimmed(problem, np.maximum(whole, least), step, least, may)
     whole = _filled(problem, whole, step, may)
-    found = [_exchanged(problem, whole, step, least, may)]
-    if allowed is None:
-        nearest = _filled(problem, _nearest(problem, w, step, least), step, may)
-        found.append(_exchanged(problem, nearest, step, least, may))
-    return min(found, key=problem.value) + 0.0  # no minus zero
+    nearest = _filled(problem, _nearest(problem, w, step, least), step, may)
+    found = [_exchanged(problem, start, step, least, may) for start in (whole, nearest)]
+    return min(found, key=lambda one: (not may(one), problem.value(one))) + 0.0  # no minus zero
 
 
 def _nearest(problem: DesignProblem, w: Array, step: float, least: Array) -> Array:
