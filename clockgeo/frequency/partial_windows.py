@@ -29,8 +29,9 @@ __all__ = ["WindowExpectations", "noise_mixture"]
 _MOST_LAWS = 3
 _PRICE = 6.0
 """What a further law must take off the misfit (χ²)."""
-_PROBES = 200
-"""Windows whose expectation stands for all, where there are more."""
+_PROBES, _SAMPLES = 200, 64_000
+"""Windows whose expectation stands for all where there are more: so many, or as many as hold so
+many samples."""
 _GOLDEN = 0.6180339887498949
 _LONGEST_TABLE = 1_024
 """Averaging factor up to which complete windows are evaluated; beyond, laws are scaled."""
@@ -87,9 +88,10 @@ class WindowExpectations:
         """
         span = 3 * m - 1 if self._modified else self.statistic.order * m
         places = np.arange(0, self.count.size - span, stride)
-        if places.size > _PROBES:
+        probes = max(_PROBES, _SAMPLES // m)
+        if places.size > probes:
             # Spread evenly, yet in step with no pattern of gaps.
-            spread = (np.arange(_PROBES) + np.arange(_PROBES) * _GOLDEN % 1.0) / _PROBES
+            spread = (np.arange(probes) + np.arange(probes) * _GOLDEN % 1.0) / probes
             places = places[(spread * places.size).astype(np.int64)]
         return self._expected(self.count, self.starts, self.stops, places, m, least)
 

@@ -58,20 +58,26 @@ def flicker_phase_structure(lag: int) -> float:
     return 0.75 * acc
 
 
+_STRUCTURE = np.array([flicker_phase_structure(lag) for lag in range(1_024)])
+
+
 @compiled
 def _of_edges(
-    place: NDArray[np.int64], size: NDArray[np.float64], number: int
+    place: NDArray[np.int64], size: NDArray[np.float64], number: int, reach: int
 ) -> tuple[float, float]:
-    """Variance of Σ size x(place) for white and flicker phase; sizes add up to zero."""
+    """Variance of Σ size x(place) for white and flicker phase; sizes add up to zero.
+
+    Of flicker phase each edge is told to so many others on one side.
+    """
     white = 0.0
     flicker = 0.0
-    reach = number if number <= _ALL else _NEIGHBOURS
     for k in range(number):
         white += size[k] * size[k]
         last = min(number, k + reach + 1)
         for other in range(k + 1, last):
             share = 0.5 if (other == k + reach and reach < number) else 1.0
-            s = flicker_phase_structure(place[other] - place[k])
+            lag = place[other] - place[k]
+            s = _STRUCTURE[lag] if lag < 1_024 else flicker_phase_structure(lag)
             flicker -= share * size[k] * size[other] * s
     return white / 3.0, flicker
 
@@ -167,7 +173,7 @@ def expected_squares(
             run += 1
         crowded = number >= _EDGES
         number = min(number, _FIRST) if crowded else number
-        white, phase = _of_edges(place, size, number)
+        white, phase = _of_edges(place, size, number, number if number <= _ALL else _NEIGHBOURS)
         if crowded:
             told = 0.0
             for k in range(number):
@@ -269,7 +275,8 @@ def expected_modified(
             place[number], size[number] = high, before
             number += 1
         number = min(number, _FIRST) if number >= _EDGES else number
-        white, phase = _of_edges(place, size, number)
+        reach = number if dense or number <= _ALL else _NEIGHBOURS
+        white, phase = _of_edges(place, size, number, reach)
         if not dense:
             share = total_edges / number
             slopes = float(m) ** 4 * 0.5 * (1.0 / n1**2 + 1.0 / n2**2)

@@ -13,6 +13,8 @@ __all__ = ["freedom_with_gaps"]
 
 _STRETCH, _SHORTEST, _STRETCHES = 12, 256, 3
 """Stretches that stand for a long record: averaging times, ticks, and how many of them."""
+_SHORT = 1_024
+"""Ticks of a record whose every window is told of."""
 _BLOCKS = 16
 """Blocks of an averaging time; windows are placed at every other of them."""
 
@@ -55,17 +57,18 @@ def freedom_with_gaps(
     Notes
     -----
     The whole quadratic form where the record holds few averaging times; else the forms of some
-    stretches, scaled to the number of places for a window. Exact for m up to 15, and to about 2 %
-    above, where windows are placed at eighths of an averaging time.
+    stretches, scaled to the number of places for a window. Exact for m up to 31 in records of up
+    to 1024 ticks; to some % elsewhere, where windows are placed at eighths of an averaging time.
     """
     size = count.size - 1
     width = max(1, m // _BLOCKS)
     each = max(round(m / width), 1)
     span = (3 if modified else order) * each
-    step = each if plain else max(1, each // 8)
     blocks = max(size // width, 1)
     stretch = min(max(_STRETCH * each, _SHORTEST), blocks)
-    if blocks <= 2 * stretch:
+    short = width == 1 and blocks <= _SHORT
+    step = each if plain else (1 if short else max(1, each // 8))
+    if short or blocks <= 2 * stretch:
         stretch, starts = blocks, np.zeros(1, dtype=np.int64)
     else:
         starts = np.linspace(0, blocks - stretch, _STRETCHES).astype(np.int64)
