@@ -119,7 +119,8 @@ class Plan(Table):
     step: Positive = 1.0
     """Sessions last whole multiples of so many days."""
     start: Instant | None = None
-    """When the first candidate may start; after the last planned session if absent."""
+    """When the first candidate may start, if the planned sessions are over by then; they go one
+    after the other."""
     move_days: NonNegative = 1.0
     """Days that moving and setting up a clock takes."""
     criterion: Literal["targets", "A", "D", "E"] = "targets"

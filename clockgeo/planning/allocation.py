@@ -16,6 +16,7 @@ from scipy import linalg
 
 from clockgeo.campaign.document import Document
 from clockgeo.campaign.schema import Campaign, Candidate, Session
+from clockgeo.errors import DataError
 from clockgeo.levelling.session_rows import NumberOf
 from clockgeo.planning.control import Ties
 from clockgeo.planning.design_problem import Array, Criterion, DesignProblem
@@ -59,7 +60,7 @@ def allocation_problem(document: Document) -> Allocation:
     Raises
     ------
     DataError, ConventionError
-        If the model cannot be built.
+        If the model cannot be built, or a candidate has no white noise.
     """
     campaign = document.campaign
     candidates = campaign.candidates
@@ -70,7 +71,15 @@ def allocation_problem(document: Document) -> Allocation:
     free = np.arange(len(campaign.sessions), len(sessions), dtype=np.int64)
     rows, known, unknowns = _information(model, free)
     averaging = np.sum([model.parts[name] for name in AVERAGING], axis=0)
-    rate = 1.0 / (np.diag(averaging)[free] * length)
+    variance = np.diag(averaging)[free] * length
+    silent = [one.id for one, size in zip(candidates, variance, strict=True) if not size > 0.0]
+    if silent:
+        raise DataError(
+            "candidates without white noise need no time, so days cannot be shared out",
+            value=", ".join(silent),
+            advice="State the instability of their clocks (white_fm)",
+        )
+    rate = 1.0 / variance
     wanted = _wanted(model, unknowns, rows.shape[1])
     criterion: Criterion = (
         "worst" if campaign.plan.criterion == "targets" else (campaign.plan.criterion)

@@ -29,6 +29,18 @@ class BestUse:
     sessions: tuple[Session, ...]
     result: OptimumResult
 
+    def with_one_more(self, document: Document) -> dict[str, tuple[Session, ...]]:
+        """Sessions if a candidate that got nothing had one step: name of the change -> sessions."""
+        days = {one.id: one.days for one in self.result.shares}
+        step = document.campaign.plan.step
+        return {
+            f"{step:g} d of {name}, so far left out": tuple(
+                placed_in_time(document.campaign, {**days, name: step})
+            )
+            for name, length in days.items()
+            if length == 0.0
+        }
+
 
 def best_use(document: Document) -> BestUse:
     """Share the days out over the candidates.

@@ -11,10 +11,10 @@ from clockgeo.campaign.results import Conventions, Input, Provenance
 from clockgeo.campaign.schema import Session
 from clockgeo.files import sha256_of
 from clockgeo.gravity import CAUTION, zero_level
-from clockgeo.planning.best_use import best_use
+from clockgeo.planning.best_use import BestUse, best_use
 from clockgeo.planning.checking import refuse_what_cannot_be_planned
 from clockgeo.planning.confirmation import confirm
-from clockgeo.planning.prediction import Prediction, goals_of, plan_model
+from clockgeo.planning.prediction import PlanModel, Prediction, goals_of, plan_model
 from clockgeo.planning.requirement import need_of
 from clockgeo.planning.results import CostResult, PlanResult
 from clockgeo.planning.tabulating import (
@@ -105,7 +105,7 @@ def plan(document: Document, *, confirm_runs: int = 0, seed: int = 1) -> Planned
         terms=tuple(line for goal in goals for line in term_lines(prediction, goal)),
         alternatives=alternatives,
         techniques=technique_curves(campaign, alternatives),
-        sensitivity=tuple(sensitivity_lines(prediction, goals)),
+        sensitivity=tuple(sensitivity_lines(prediction, goals, _left_out(document, best))),
         reach=tuple(reach_curve(prediction, goals)),
         sites=tuple(site_places(prediction)),
         stays=tuple(stay_results(prediction)),
@@ -119,6 +119,14 @@ def plan(document: Document, *, confirm_runs: int = 0, seed: int = 1) -> Planned
         ),
     )
     return Planned(result, prediction, sessions)
+
+
+def _left_out(document: Document, best: BestUse | None) -> dict[str, PlanModel]:
+    """Models with a step for each candidate that got nothing."""
+    more = best.with_one_more(document) if best else {}
+    fixed = document.campaign.sessions
+    steps = track(more.items(), "trying sites left out", len(more))
+    return {text: plan_model(document, [*fixed, *sessions]) for text, sessions in steps}
 
 
 def _notes(costs: CostResult, sessions: Sequence[Session]) -> Iterator[str]:

@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Callable, Hashable, Iterator, Sequence
 from dataclasses import dataclass
 
-import numpy as np
 from scipy.optimize import brentq
 
 from clockgeo.frequency import NoiseModel
@@ -159,7 +158,7 @@ def _where_reached(at: Callable[[float], float], wanted: float, floor: float) ->
     low, high = -12.0, 12.0
 
     def excess(exponent: float) -> float:
-        return float(np.log(at(10.0**exponent) / wanted))
+        return at(10.0**exponent) / wanted - 1.0
 
     if excess(low) <= 0.0:
         return float(10.0**low)

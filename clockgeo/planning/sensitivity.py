@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Hashable, Iterator, Sequence
+from collections.abc import Hashable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -32,14 +32,23 @@ class Change:
     u: tuple[float, ...]
 
 
-def changes(prediction: Prediction, goals: Sequence[Goal]) -> Iterator[Change]:
+def changes(
+    prediction: Prediction, goals: Sequence[Goal], others: Mapping[str, PlanModel] | None = None
+) -> Iterator[Change]:
     """Try changes of the plan one at a time.
+
+    Parameters
+    ----------
+    prediction : Prediction
+    goals : sequence of Goal
+    others : mapping of str to PlanModel, optional
+        Further changes by their names, such as a day at a site that the plan leaves out.
 
     Yields
     ------
     Change
         The largest effects halved; a day more for a session; a session once more, as a new stay of
-        the clocks that travel.
+        the clocks that travel; and the further ones.
     """
     model = prediction.model
     lines = effect_lines(model)
@@ -58,6 +67,8 @@ def changes(prediction: Prediction, goals: Sequence[Goal]) -> Iterator[Change]:
         name = model.sessions[place].id
         yield _change(f"a day more in {name}", with_more_time(model, place, _DAY_S), goals)
         yield _change(f"{name} once more, as a new stay", visited_again(model, place), goals)
+    for text, other in (others or {}).items():
+        yield _change(text, other, goals)
 
 
 def _by_effect(prediction: Prediction, goals: Sequence[Goal]) -> dict[Hashable, list[_Part]]:

@@ -17,7 +17,15 @@ from clockgeo.planning.alternatives import (
 )
 from clockgeo.planning.limits import words_of
 from clockgeo.planning.noise import AVERAGING, FLICKER, LINK_FLOOR
-from clockgeo.planning.prediction import EFFECTS, RATIO, RENEWED, STAYS, Goal, Prediction
+from clockgeo.planning.prediction import (
+    EFFECTS,
+    RATIO,
+    RENEWED,
+    STAYS,
+    Goal,
+    PlanModel,
+    Prediction,
+)
 from clockgeo.planning.requirement import Need, longer
 from clockgeo.planning.results import (
     AlternativeResult,
@@ -181,10 +189,12 @@ def technique_curves(
     )
 
 
-def sensitivity_lines(prediction: Prediction, goals: Sequence[Goal]) -> Iterator[SensitivityLine]:
+def sensitivity_lines(
+    prediction: Prediction, goals: Sequence[Goal], others: Mapping[str, PlanModel]
+) -> Iterator[SensitivityLine]:
     """Every change that was tried, for every target, largest gain first."""
     before = [prediction.u(goal) for goal in goals]
-    tried = list(changes(prediction, goals))
+    tried = list(changes(prediction, goals, others))
     for place, goal in enumerate(goals):
         for change in sorted(tried, key=lambda one: one.u[place]):
             yield SensitivityLine(

@@ -89,6 +89,33 @@ def test_steps_and_least_days(home):
     assert shares == {"l": 8.0, "r": 2.0}
 
 
+def test_what_was_left_out_is_tried(home):
+    document = home(
+        a=CLOCK,
+        b={"transition": "171Yb"},
+        candidate=[
+            candidate("l", "home"),
+            candidate("r", "away"),
+            candidate("dull", "home", uptime=0.001, most_days=2.0),
+        ],
+        plan={"days": 4.0, "start": START},
+    )
+    result = plan(document).result
+    assert "dull" not in {one.id for one in result.sessions}
+    tried = {one.change: one for one in result.sensitivity}
+    assert tried["1 d of dull, so far left out"].gain >= 0.0
+    assert tried["1 d of dull, so far left out"].gain < tried["a day more in r"].gain
+
+
+def test_a_candidate_without_noise_is_refused(home):
+    document = home(
+        candidate=[candidate("l", "home"), candidate("r", "away")],
+        plan={"days": 4.0, "start": START},
+    )
+    with pytest.raises(DataError, match="without white noise need no time"):
+        plan(document)
+
+
 def test_a_budget_with_moves(home):
     # 10 a move, 1 a day and 20 in all leave ten days for two sessions with one move between.
     document = home(
