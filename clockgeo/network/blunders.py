@@ -28,6 +28,12 @@ _SEPARABLE = 1e-6
 """Share of its sharpness that a row must keep beside the suspects to be tested at all."""
 _PAIR_ROWS = 1200
 """Rows whose pairs are tested; in larger nets those with the largest residuals."""
+_PAIR_WORK = 2e8
+"""Rows of the net times rows whose pairs are tested, at most."""
+_PART = 100
+"""Columns that are made at a time."""
+_OTHER_PAIRS = 5000
+"""Pairs that are looked at in place of two suspects, best first."""
 _TWINS = 10
 """Pairs of suspects for which other pairs are looked up."""
 _GLOBAL_ALPHA = 0.001
@@ -183,36 +189,46 @@ def _next_rows(state: _State, limit: float, chi_squared: float, freedom: int) ->
     return _best_pair(state, w, sharpness)
 
 
+@dataclass(frozen=True, eq=False)
+class _Pairs:
+    """Pairs among m rows: standardised residuals w, their correlations, χ² that each explains."""
+
+    rows: NDArray[np.int64]
+    w: NDArray[np.float64]
+    alike: NDArray[np.float64]
+    gain: NDArray[np.float64]
+
+
 def _best_pair(state: _State, w: NDArray[np.float64], sharpness: NDArray[np.float64]) -> list[int]:
     """Pair of rows that together explain most, if that is more than chance among all pairs."""
-    rows, gain = _pair_gains(state, w, sharpness)
-    if rows.size < 2:
+    found = _pair_gains(state, w, sharpness)
+    count = np.count_nonzero(sharpness > 0.0)
+    if found.rows.size < 2:
         return []
-    pairs = rows.size * (rows.size - 1) / 2.0
-    first, second = np.unravel_index(int(np.argmax(gain)), gain.shape)
-    if gain[first, second] <= stats.chi2.isf(_FAMILY_ALPHA / pairs, 2):
+    first, second = np.unravel_index(int(np.argmax(found.gain)), found.gain.shape)
+    if found.gain[first, second] <= stats.chi2.isf(_FAMILY_ALPHA / (count * (count - 1) / 2.0), 2):
         return []
-    return [int(rows[first]), int(rows[second])]
+    return [int(found.rows[first]), int(found.rows[second])]
 
 
-def _pair_gains(
-    state: _State, w: NDArray[np.float64], sharpness: NDArray[np.float64]
-) -> tuple[NDArray[np.int64], NDArray[np.float64]]:
-    """Rows whose pairs are tested, shape (m,), and χ² that each pair explains, shape (m, m)."""
+def _pair_gains(state: _State, w: NDArray[np.float64], sharpness: NDArray[np.float64]) -> _Pairs:
+    """Pairs of the rows with the largest residuals, as many as time and memory allow."""
+    most = int(min(_PAIR_ROWS, max(_PAIR_WORK / max(w.size, 1), 50.0)))
     rows = np.flatnonzero(sharpness > 0.0)
-    rows = rows[np.argsort(-np.abs(w[rows]), kind="stable")[:_PAIR_ROWS]]
-    block = state.base.columns(rows)[rows]
+    rows = rows[np.argsort(-np.abs(w[rows]), kind="stable")[:most]]
+    parts = [rows[start : start + _PART] for start in range(0, rows.size, _PART)]
+    block = np.hstack([state.base.columns(part)[rows] for part in parts]) if parts else np.empty(0)
     if state.rows:
         across = state.columns[rows]
         block = block - across @ np.linalg.solve(state.corner, across.T)
     root = np.sqrt(sharpness[rows])
-    alike = block / np.outer(root, root)
+    alike = block.reshape(rows.size, rows.size) / np.outer(root, root)
     own = w[rows]
     apart = 1.0 - alike**2
     joint = own[:, None] ** 2 + own[None, :] ** 2 - 2.0 * alike * np.outer(own, own)
     gain = np.where(apart > 1e-4, joint / np.maximum(apart, 1e-4), 0.0)
     np.fill_diagonal(gain, 0.0)
-    return rows, gain
+    return _Pairs(rows, own, alike, gain)
 
 
 def _clear(state: _State, limit: float) -> None:
@@ -225,27 +241,56 @@ def _clear(state: _State, limit: float) -> None:
         state.choose([row for row in state.rows if row != state.rows[weakest]])
 
 
-def _alternatives(state: _State) -> dict[int, list[int]]:
-    """Suspect -> rows that explain the misfit nearly as well, alone or in place of two suspects."""
+def _alternatives(state: _State, limit: float) -> dict[int, list[int]]:
+    """Suspect -> rows that explain the same misfit nearly as well, alone or as a pair.
+
+    They do so only if the suspects no longer stand out once these rows have biases instead.
+    """
     found: dict[int, set[int]] = {suspect: set() for suspect in state.rows}
     for suspect in state.rows:
-        w, _ = _beside(state, [suspect]).residuals()
-        near = np.flatnonzero((w[suspect] ** 2 - w**2 < _ODDS) & (w != 0.0))
-        found[suspect].update(near.tolist())
+        others = _beside(state, [suspect])
+        w, sharpness = others.residuals()
+        alike = _alike(others, state.columns[:, state.rows.index(suspect)], suspect, sharpness)
+        near = (w[suspect] ** 2 - w**2 < _ODDS) & (sharpness > 0.0)
+        left = np.abs(w[suspect] - alike * w) <= limit * np.sqrt(np.maximum(1.0 - alike**2, 1e-12))
+        found[suspect].update(np.flatnonzero(near & left).tolist())
     for first, second in list(combinations(state.rows, 2))[:_TWINS]:
-        others = _beside(state, [first, second])
-        rows, gain = _pair_gains(others, *others.residuals())
-        place = {int(row): i for i, row in enumerate(rows)}
-        if first not in place or second not in place:
-            continue
-        near = gain > gain[place[first], place[second]] - _ODDS
-        # A pair with one of the suspects in it is another reading of the other one only.
-        near[[place[first], place[second]], :] = False
-        near[:, [place[first], place[second]]] = False
-        instead = set(rows[np.unique(np.argwhere(near))].tolist())
+        instead = _other_pairs(_beside(state, [first, second]), first, second)
         found[first] |= instead
         found[second] |= instead
     return {one: sorted(rows.difference(state.rows)) for one, rows in found.items()}
+
+
+def _alike(
+    state: _State, column: NDArray[np.float64], row: int, sharpness: NDArray[np.float64]
+) -> NDArray[np.float64]:
+    """Correlation of the standardised residual of a row, whose column of M is given, with all."""
+    if state.rows:
+        column = column - state.columns @ np.linalg.solve(state.corner, column[state.rows])
+    root = np.sqrt(np.maximum(sharpness * sharpness[row], 1e-300))
+    return np.where(sharpness > 0.0, np.clip(column / root, -1.0, 1.0), 0.0)
+
+
+def _other_pairs(state: _State, first: int, second: int) -> set[int]:
+    """Rows of pairs that explain the misfit of two rows nearly as well as these do."""
+    pairs = _pair_gains(state, *state.residuals())
+    place = {int(row): i for i, row in enumerate(pairs.rows)}
+    if first not in place or second not in place:
+        return set()
+    both = [place[first], place[second]]
+    near = np.triu(pairs.gain > pairs.gain[both[0], both[1]] - _ODDS, 1)
+    # A pair with one of the suspects in it is another reading of the other one only.
+    near[both, :] = False
+    near[:, both] = False
+    i, j = np.nonzero(near)
+    best = np.argsort(-pairs.gain[i, j], kind="stable")[:_OTHER_PAIRS]
+    i, j = i[best], j[best]
+    four = np.column_stack([np.full_like(i, both[0]), np.full_like(i, both[1]), i, j])
+    alike = pairs.alike[four[:, :, None], four[:, None, :]]
+    own = pairs.w[four]
+    together = np.einsum("mi,mij,mj->m", own, np.linalg.pinv(alike, 1e-6, hermitian=True), own)
+    same = together - pairs.gain[i, j] <= stats.chi2.isf(_GLOBAL_ALPHA, 2)
+    return set(pairs.rows[np.unique(np.concatenate([i[same], j[same]]))].tolist())
 
 
 def _beside(state: _State, left_out: list[int]) -> _State:
@@ -259,7 +304,7 @@ def _beside(state: _State, left_out: list[int]) -> _State:
 def _result(state: _State, limit: float) -> BlunderSearch:
     adjustment = state.base.adjustment
     names = adjustment.model.rows
-    also = _alternatives(state)
+    also = _alternatives(state, limit)
     suspects = tuple(
         Suspect(
             row=names[row],

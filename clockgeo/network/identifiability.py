@@ -104,8 +104,8 @@ def _sentence(model: LinearModel, names: Sequence[Hashable], weights: NDArray[np
         parts.append(f"{listed(rest)} not estimable; needs a tie to points known otherwise")
     if sites:
         points = f"point{'s' if len(sites) > 1 else ''}"
-        with_it = "; with it" if parts else ""
-        parts.append(f"the number of {points} {listed(sites)} not estimable{with_it}")
+        start = "and so " if parts else ""
+        parts.append(f"{start}the number of {points} {listed(sites)} not estimable")
     return "; ".join(parts)
 
 
