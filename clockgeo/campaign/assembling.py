@@ -125,9 +125,7 @@ def _add_sessions(
 ) -> SessionSide:
     campaign = document.campaign
     chosen = [
-        session
-        for session in campaign.sessions
-        if session.record is not None and session.id not in left_out
+        session for session in campaign.sessions if session.measured and session.id not in left_out
     ]
     measured = tuple(
         measure(campaign, session, document.folder, skip_bad_rows=skip_bad_rows)
@@ -168,7 +166,7 @@ def _without(model: LinearModel, names: Sequence[str]) -> LinearModel:
 
 
 def _session_notes(document: Document, sessions: SessionSide) -> list[str]:
-    planned = [one.id for one in document.campaign.sessions if one.record is None]
+    planned = [one.id for one in document.campaign.sessions if not one.measured]
     notes = [f"session {name} has no record yet and was left out" for name in planned]
     known = [
         site.id

@@ -101,7 +101,7 @@ def _check_session(
     document: Document, session: Session, report: CheckReport, measured: list[Measured]
 ) -> None:
     n, d = (f"{place.clock} at {place.site}" for place in session.places)
-    if session.record is None:
+    if not session.measured:
         report.sessions.append(SessionState(session.id, n, d, "planned"))
         return
     try:

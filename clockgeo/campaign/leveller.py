@@ -10,6 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from clockgeo import __version__
+from clockgeo.campaign.correlating import closure_results, correlation_results
 from clockgeo.campaign.document import Document
 from clockgeo.campaign.evidence import Evidence
 from clockgeo.campaign.geodetic import compare, geodetic_numbers, geoid_path
@@ -95,7 +96,7 @@ def level(
     """
     campaign = document.campaign
     chosen = [session for session in campaign.sessions if session.id not in without]
-    measured_ones = [session for session in chosen if session.record is not None]
+    measured_ones = [session for session in chosen if session.measured]
     if not measured_ones:
         raise DataError(
             "no session has a record",
@@ -107,7 +108,7 @@ def level(
     notes += [
         f"session {session.id} has no record yet and was left out"
         for session in chosen
-        if session.record is None
+        if not session.measured
     ]
     measured = [
         measure(campaign, session, document.folder, skip_bad_rows=skip_bad_rows)
@@ -194,6 +195,8 @@ def level_measured(
         ),
         scatter=statistics.scatter,
         noise=statistics.noise_results(measured),
+        correlations=tuple(correlation_results(means, model)),
+        closures=tuple(closure_results(means, model)),
         comparison=tuple(compare(campaign, solution, pairs, geodetic)),
         notes=(*notes, *statistics.notes),
         provenance=Provenance(

@@ -9,6 +9,7 @@ from pathlib import Path
 import numpy as np
 from numpy.typing import NDArray
 
+from clockgeo.campaign.chaining import read_chain
 from clockgeo.campaign.schema import Campaign, Session
 from clockgeo.campaign.site_tides import site_tide, years_from_epoch
 from clockgeo.errors import DataError
@@ -171,6 +172,12 @@ def measure(
     DataError
         If the session has no record, the record cannot be read, or no epoch of it is valid.
     """
+    nominal = nominal_ratio_of(campaign, session)
+    if session.chain is not None:
+        record = read_chain(
+            session.chain, session, folder, nominal_ratio=nominal, skip_bad_rows=skip_bad_rows
+        )
+        return measure_record(campaign, session, record, folder=folder)
     if session.record is None:
         raise DataError(
             "a session has no record yet",
@@ -181,7 +188,7 @@ def measure(
         session.record,
         base=folder,
         name=session.id,
-        nominal_ratio=nominal_ratio_of(campaign, session),
+        nominal_ratio=nominal,
         carrier=nominal_frequency_of(campaign.clock(session.numerator.clock)),
         skip_bad_rows=skip_bad_rows,
     )

@@ -103,9 +103,9 @@ def _sessions(campaign: Campaign) -> Iterator[str]:
         n, d = session.places
         if n.clock == d.clock:
             yield f"{place}: clock {n.clock!r} is compared with itself; name two clocks"
-        if session.record is None and session.start is None:
+        if not session.measured and session.start is None:
             yield f"{place}: needs a start (planned) or a record (measured)"
-        if session.record is None and session.start and session.planned_stop is None:
+        if not session.measured and session.start and session.planned_stop is None:
             yield f"{place}: needs a stop or hours, so that its length is known"
     for first, second in combinations(campaign.sessions, 2):
         yield from _in_two_places(first, second)

@@ -13,8 +13,10 @@ from clockgeo.gravity.tide_systems import TideSystem
 from clockgeo.tables import Table as DocumentTable
 
 __all__ = [
+    "ClosureResult",
     "Comparison",
     "Conventions",
+    "CorrelationResult",
     "CovarianceTable",
     "DifferenceResult",
     "EffectLine",
@@ -144,6 +146,32 @@ class EffectLine(Table):
     """The same in mm of height."""
 
 
+class CorrelationResult(Table):
+    """Correlation coefficient of the means of two sessions, and what it comes from."""
+
+    first: str
+    second: str
+    coefficient: float
+    parts: dict[str, float]
+    """Shared effect or cause -> its part; the parts add up to the coefficient."""
+
+
+class ClosureResult(Table):
+    """A closed loop of clock sessions, each clock at its site."""
+
+    sessions: tuple[str, ...]
+    signs: tuple[int, ...]
+    """+1 where a session is run from denominator to numerator."""
+    misclosure: float
+    """m² s⁻²"""
+    u: float
+    """With all shared effects."""
+    normalised: float | None
+    """Misclosure over its u; null for an identity."""
+    verdict: str
+    """closes; does not close (beyond 3 u); or identity: made of the same data, no check."""
+
+
 class FitResult(Table):
     """Global test of the session means against the solution."""
 
@@ -238,6 +266,8 @@ class LevelResult(Table):
     fit: FitResult
     scatter: ScatterResult | None
     noise: tuple[NoiseResult, ...]
+    correlations: tuple[CorrelationResult, ...] = ()
+    closures: tuple[ClosureResult, ...] = ()
     comparison: tuple[Comparison, ...]
     notes: tuple[str, ...]
     provenance: Provenance

@@ -34,6 +34,7 @@ from clockgeo.tables import Identifier, Instant, NonNegative, Positive, Table, U
 
 __all__ = [
     "Campaign",
+    "ChainSource",
     "Candidate",
     "Difference",
     "GeoidSource",
@@ -72,6 +73,19 @@ class Head(Table):
     """How epochs of all records are flagged."""
 
 
+class ChainSource(Table):
+    """Where the ratio of a session comes along a chain of comparators."""
+
+    folder: str
+    """Folder in the open exchange format, relative to the document."""
+    numerator: str = Field(min_length=1)
+    """Oscillator of the numerator clock, as laboratory_oscillator."""
+    denominator: str = Field(min_length=1)
+    """Oscillator of the denominator clock."""
+    experimental: bool = False
+    """Whether rows flagged 1, valid but experimental, count beside those flagged 2."""
+
+
 class Session(Table):
     """`[[session]]`: one comparison; planned without a record, measured with one."""
 
@@ -89,8 +103,15 @@ class Session(Table):
     """Expected share of valid time."""
     record: RecordLayout | None = None
     """The measured record."""
+    chain: ChainSource | None = None
+    """Instead of a record: comparators that lead from one clock to the other."""
     screening: ScreeningRules | None = None
     """Rules for this record, where they differ from those of the campaign."""
+
+    @property
+    def measured(self) -> bool:
+        """Whether the session has data: a record, or a chain of comparators."""
+        return self.record is not None or self.chain is not None
 
     @property
     def places(self) -> tuple[Placed, Placed]:
@@ -112,6 +133,9 @@ class Session(Table):
 
     @model_validator(mode="after")
     def _one_length(self) -> Session:
+        if self.record is not None and self.chain is not None:
+            message = "give either a record or a chain, not both"
+            raise ValueError(message)
         if self.stop is not None and self.hours is not None:
             message = "give either stop or hours, not both"
             raise ValueError(message)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import combinations
 
 import numpy as np
 from numpy.typing import NDArray
@@ -22,6 +23,7 @@ from clockgeo.frequency import (
     fit_noise,
     mean_covariance,
 )
+from clockgeo.levelling.correlations import overlap_covariance
 from clockgeo.levelling.linear_model import ModelBuilder
 from clockgeo.levelling.redshift import potential_from_shift
 from clockgeo.levelling.session_rows import SessionMean, add_session_rows
@@ -136,6 +138,7 @@ def session_statistics(
             notes.append(
                 f"{group.name}: records too short for a fit; the stated instability is used"
             )
+    covariance += _overlaps(campaign, groups, measured)
     excess = _excess(campaign, covariance, means)
     applied = excess is not None and excess.standard_deviation > 0.0
     scatter_u = excess.standard_deviation if applied and excess is not None else 0.0
@@ -236,6 +239,32 @@ def _group_covariance(group: Group, measured: Sequence[Measured]) -> NDArray[np.
         group.model, [_series(one) for one in members], interval=members[0].record.interval
     )
     return np.asarray(np.outer(signs, signs) * block)
+
+
+def _overlaps(
+    campaign: Campaign, groups: Sequence[Group], measured: Sequence[Measured]
+) -> NDArray[np.float64]:
+    """Covariance of sessions of different pairs that share a clock at the same time.
+
+    The white noise stated for the clock is in both; its slower noise is small over a session.
+    """
+    group_of = {place: number for number, group in enumerate(groups) for place in group.members}
+    covariance = np.zeros((len(measured), len(measured)))
+    for i, j in combinations(range(len(measured)), 2):
+        first, second = measured[i], measured[j]
+        interval = first.record.interval
+        if group_of[i] == group_of[j] or abs(second.record.interval / interval - 1.0) > 1e-9:
+            continue
+        for one, sign in zip(first.session.places, (1.0, -1.0), strict=True):
+            for other, turned in zip(second.session.places, (1.0, -1.0), strict=True):
+                if one.clock == other.clock:
+                    white = campaign.clock(one.clock).instability.white_fm
+                    shared = overlap_covariance(
+                        first.series.tick, second.series.tick, interval, white
+                    )
+                    covariance[i, j] += sign * turned * shared
+                    covariance[j, i] = covariance[i, j]
+    return covariance
 
 
 def _excess(

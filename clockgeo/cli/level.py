@@ -133,6 +133,23 @@ def _tell(result: LevelResult, *, verbose: bool) -> None:
             ],
             left=3,
         )
+    if verbose and result.closures:
+        show_table(
+            "Closed loops of clocks (m² s⁻²)",
+            ["sessions", "misclosure", "in u", "verdict"],
+            [
+                (
+                    " ".join(
+                        f"{'+' if sign > 0 else '-'}{name}"
+                        for name, sign in zip(one.sessions, one.signs, strict=True)
+                    ),
+                    with_uncertainty(one.misclosure, one.u) if one.u else "0",
+                    "" if one.normalised is None else f"{one.normalised:+.2f}",
+                    one.verdict,
+                )
+                for one in result.closures
+            ],
+        )
     if result.comparison:
         show_table(
             "Clocks against geodesy (m² s⁻²)",

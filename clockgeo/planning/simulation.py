@@ -28,6 +28,7 @@ from clockgeo.levelling.session_rows import (
     transfer_difference,
 )
 from clockgeo.levelling.stations import Clock, Link
+from clockgeo.planning.chain_simulation import write_chain
 from clockgeo.progress import track
 from clockgeo.times import SECOND_NS, tai_from_iso
 
@@ -71,7 +72,7 @@ class SimulatedSession:
 def simulate_records(
     campaign: Campaign, *, seed: int, folder: Path, tables: Path, replace: bool = False
 ) -> list[Path]:
-    """Draw and write the record of every session that names one.
+    """Draw and write the record, or the chain of comparators, of every session that names one.
 
     Parameters
     ----------
@@ -98,7 +99,19 @@ def simulate_records(
     """
     truth = _truth(campaign)
     written: list[Path] = []
-    for drawn in simulate_sessions(campaign, np.random.default_rng(seed), tables=tables):
+    sessions = simulate_sessions(campaign, np.random.default_rng(seed), tables=tables)
+    for number, drawn in enumerate(sessions):
+        if drawn.session.chain is not None:
+            written += write_chain(
+                drawn.session.chain,
+                drawn.record(),
+                nominal_ratio=nominal_ratio_of(campaign, drawn.session),
+                tables=tables,
+                folder=folder,
+                rng=np.random.default_rng([seed, number]),
+                replace=replace,
+            )
+            continue
         layout = drawn.session.record
         if layout is None:
             continue

@@ -1,0 +1,127 @@
+"""A campaign whose ratios come along chains of comparators, from the shipped example."""
+
+from __future__ import annotations
+
+import json
+import shutil
+
+import numpy as np
+import pytest
+from typer.testing import CliRunner
+
+from clockgeo.campaign import Campaign, level_measured, measure_record, read_document
+from clockgeo.cli import app
+from clockgeo.planning import simulate_sessions
+
+TRUTH = {"westrun": 712.40, "middle": 3498.65, "eastrun": 410.77}
+
+
+def run(*words):
+    return CliRunner().invoke(app, list(map(str, words)))
+
+
+@pytest.fixture(scope="module")
+def example(project):
+    return project / "examples" / "three-laboratories" / "campaign.toml"
+
+
+@pytest.fixture(scope="module")
+def told(example, tmp_path_factory):
+    result = run("level", example, "--out", tmp_path_factory.mktemp("out"), "--json")
+    assert result.exit_code == 0, result.stderr
+    return json.loads(result.stdout)
+
+
+def test_differences_hold_the_truth(told):
+    for one in told["differences"]:
+        true = TRUTH[one["to"]] - TRUTH[one["from"]]
+        assert abs(one["geopotential_difference"] - true) < 2.6 * one["u"]
+
+
+def test_the_ledger_says_what_was_not_applied(told):
+    notes = [note for session in told["sessions"] for note in session["notes"]]
+    assert any("grsA -6.1e-15 not applied" in note for note in notes)
+    assert any("uA_sys 2e-18 not used" in note for note in notes)
+    assert any("WESTRUN_SR - WESTRUN_LASER - MIDDLE_LASER - EASTRUN_SR" in note for note in notes)
+
+
+def test_headers_and_data_are_among_the_inputs(told):
+    paths = {one["path"] for one in told["provenance"]["inputs"]}
+    assert {"network/east.yml", "network/west.yml"} <= paths
+    assert sum(path.endswith(".dat") for path in paths) == 8
+
+
+def test_the_loop_of_three_clocks_closes(told):
+    (closure,) = told["closures"]
+    assert closure["verdict"] == "closes"
+    assert len(closure["sessions"]) == 3
+    assert abs(closure["misclosure"]) < 3 * closure["u"]
+
+
+def test_correlations_name_their_causes(told):
+    pairs = {(one["first"], one["second"]): one for one in told["correlations"]}
+    pair = pairs["east and west", "middle and west"]
+    assert pair["coefficient"] == pytest.approx(sum(pair["parts"].values()), abs=1e-12)
+    assert pair["parts"]["west sr · black-body radiation, temperature"] > 0.0
+    opposite = pairs["middle and west", "east and middle"]
+    assert opposite["parts"]["middle yb · black-body radiation"] < 0.0
+
+
+def test_the_example_comes_from_its_seed(example, tmp_path):
+    assert run("simulate", example, "--seed", 2, "--out", tmp_path, "--quiet").exit_code == 0
+    for shipped in sorted((example.parent / "network").rglob("*.dat")):
+        drawn = np.loadtxt(tmp_path / shipped.relative_to(example.parent))
+        np.testing.assert_allclose(drawn, np.loadtxt(shipped), rtol=1e-9)
+
+
+@pytest.mark.parametrize(
+    ("old", "new", "message"),
+    [
+        ('folder = "network"', 'folder = "nowhere"', "no header of the exchange format"),
+        ('numerator = "EASTRUN_SR"', 'numerator = "EASTRUN_CA"', "no comparator has such an"),
+        ("2027-09-06T00", "2027-08-06T00", "no valid epoch within the session's times"),
+    ],
+)
+def test_bad_chains_are_refused(example, tmp_path, old, new, message):
+    folder = shutil.copytree(example.parent, tmp_path / "copy")
+    text = (folder / "campaign.toml").read_text(encoding="utf-8")
+    assert old in text
+    (folder / "campaign.toml").write_text(text.replace(old, new, 1), encoding="utf-8")
+    result = run("level", folder / "campaign.toml", "--out", tmp_path / "out")
+    assert result.exit_code == 1
+    assert message in result.stderr
+
+
+def test_other_frequencies_in_a_header_are_refused(example, tmp_path):
+    folder = shutil.copytree(example.parent, tmp_path / "copy")
+    path = folder / "network" / "east.yml"
+    text = path.read_text(encoding="utf-8")
+    path.write_text(text.replace("nu0A: 194400121000000.0", "nu0A: 194400121000001.0"))
+    result = run("check", folder / "campaign.toml")
+    assert result.exit_code == 1
+    assert "two nominal frequencies of oscillator MIDDLE_LASER" in result.stdout
+
+
+def test_heights_and_their_correlation_cover_the_truth(example):
+    """Sixty drawn campaigns: chi-squared of both heights together, with their covariance."""
+    document = read_document(example)
+    campaign: Campaign = document.campaign.model_copy(
+        update={"head": document.campaign.head.model_copy(update={"tide": "none"})}
+    )
+    squares, inside = [], 0
+    for seed in range(60):
+        drawn = simulate_sessions(campaign, np.random.default_rng(seed), tables=document.folder)
+        measured = [
+            measure_record(campaign, one.session, one.record(), folder=document.folder)
+            for one in drawn
+        ]
+        result = level_measured(campaign, measured, folder=document.folder).result
+        matrix = np.array(result.covariance.matrix)
+        numbers = np.array([site.geopotential_number for site in result.sites])
+        # The reference's own uncertainty moves all numbers alike and is not drawn.
+        step = np.array([[-1.0, 1.0, 0.0], [-1.0, 0.0, 1.0]])
+        error = step @ (numbers - np.array([TRUTH[site.id] for site in result.sites]))
+        squares.append(float(error @ np.linalg.solve(step @ matrix @ step.T, error)))
+        inside += squares[-1] < 5.991  # 95 % point of chi-squared with two degrees of freedom
+    assert inside >= 60 * 0.95 - 3 * np.sqrt(60 * 0.95 * 0.05)
+    assert np.mean(squares) == pytest.approx(2.0, abs=4 * np.sqrt(4.0 / 60))
