@@ -81,7 +81,9 @@ def fit_noise(series: Sequence[TickSeries], *, interval: float) -> NoiseFit:
     generalised eigen-decomposition makes both diagonal, so that the restricted likelihood
     (Patterson and Thompson 1971, Biometrika 58:545) is a sum of scalars. For the average, the white
     level is integrated out with the prior 1/w and the ratio s/w is summed over an even grid in its
-    logarithm, from nothing to everything; both slow laws are equally likely beforehand.
+    logarithm, from nothing to everything, for the likelier slow law; where white noise alone is
+    likeliest, a flicker floor that does not show may still be there. A random walk that does not
+    show is left out: over the gaps between sessions it would be all prior and no data.
     """
     blocks = _block_means(series, interval)
     contrasts = _session_contrasts(blocks, len(series))
@@ -103,12 +105,13 @@ def fit_noise(series: Sequence[TickSeries], *, interval: float) -> NoiseFit:
     levels = {"white_fm": float(np.sqrt(chosen.white * interval))}
     if winner != "white_fm":
         levels[winner] = float(np.sqrt(chosen.slow))
-    averaged, doubt = _average(fits, blocks, freedom)
+    slow = winner if winner != "white_fm" else "flicker_fm"
+    averaged, doubt = _average({slow: fits[slow]}, blocks, freedom)
     return NoiseFit(
         model=NoiseModel(**levels),
         averaged=NoiseModel(
             white_fm=float(np.sqrt(averaged["white_fm"] * interval)),
-            **{law: float(np.sqrt(averaged[law])) for law in _LAWS},
+            **{slow: float(np.sqrt(averaged[slow]))},
         ),
         degrees_of_freedom=doubt,
         information=information,
