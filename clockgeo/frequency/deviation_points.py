@@ -10,7 +10,6 @@ from numpy.typing import NDArray
 
 from clockgeo.errors import DataError
 from clockgeo.frequency.confidence import LAW_OF_ALPHA, freedom_of
-from clockgeo.frequency.contrasts import LAWS
 from clockgeo.frequency.identification import dominant_exponent
 from clockgeo.frequency.mean import TickSeries
 from clockgeo.frequency.partial_windows import WindowExpectations, noise_mixture
@@ -31,6 +30,10 @@ __all__ = ["CurvePoints", "TimeLine", "longest_factor", "total_points", "window_
 
 _ENOUGH = 0.3
 """Share of all windows that must be complete for partly filled ones to be left aside."""
+_AVERAGES = 30
+"""Averages that an identification of the noise needs (common practice, no source)."""
+_TOLD = 1 << 15
+"""Averages that are enough to identify the noise to some hundredths of an exponent."""
 _PLACES = 16
 """Partly filled windows in an averaging time."""
 _FILL = 0.5
@@ -116,18 +119,43 @@ def total_points(
 
 
 def _exponent(record: TimeLine, m: int, otherwise: int) -> int:
-    """Ruling exponent at an averaging time, of a complete record; the last one where data end."""
-    averages = np.diff(record.total[::m]) / m
-    if averages.size < 30:
+    """Ruling exponent at an averaging time; the last one where too few averages are left."""
+    # A stretch from the middle tells as much as all of a long record.
+    behind = record.size // m - _TOLD
+    first = max(behind // 2, 0) * m
+    grid = slice(first, first + _TOLD * m + 1 if behind > 0 else None, m)
+    held, sums = np.diff(record.count[grid]), np.diff(record.total[grid])
+    complete = held == m
+    enough = complete if np.count_nonzero(complete) >= _AVERAGES else held >= m / 2.0
+    if np.count_nonzero(enough) < _AVERAGES or not np.any(enough[1:] & enough[:-1]):
         return otherwise
-    ratio = None
-    if m > 1:
-        runs = record.starts, record.stops
-        plain, pairs = complete_squares(record.total, *runs, m, 2, 1)
-        modified, triples = complete_modified(record.total, *runs, m)
-        if plain > 0.0 and triples:
-            ratio = (modified / triples / m**2) / (plain / pairs)
-    return dominant_exponent(averages, ratio, m)
+    averages = np.where(enough, sums / np.maximum(held, 1), np.nan)
+    try:
+        exponent = dominant_exponent(averages, None, m)
+        if exponent < 1 or m == 1:
+            return exponent
+        return dominant_exponent(averages, _r(record, m), m)  # white or flicker phase noise
+    except DataError:
+        return otherwise
+
+
+def _r(record: TimeLine, m: int) -> float | None:
+    """R(n): modified over plain Allan variance; None where too few windows are complete."""
+    runs = record.starts, record.stops
+    plain, pairs = complete_squares(record.total, *runs, m, 2, 1)
+    modified, triples = complete_modified(record.total, *runs, m)
+    if plain <= 0.0 or triples < m * _AVERAGES:
+        return None
+    return (modified / triples / m**2) / (plain / pairs)
+
+
+def _exponents(record: TimeLine, factors: Sequence[int]) -> list[int]:
+    """Ruling exponents at all averaging times."""
+    exponents, exponent = [], 0
+    for m in factors:
+        exponent = _exponent(record, m, exponent)
+        exponents.append(exponent)
+    return exponents
 
 
 def window_points(
@@ -158,10 +186,7 @@ def window_points(
     counts = np.array(count, dtype=np.int64)
     if not reached or not record.gapless:
         return _with_gaps(statistic, record, reached, interval, variance, counts, partial)
-    exponents, exponent = [], 0
-    for m in factors:
-        exponent = _exponent(record, m, exponent)
-        exponents.append(exponent)
+    exponents = _exponents(record, factors)
     edf = [
         freedom_of(statistic, alpha, m, record.size)
         for alpha, m in zip(exponents, factors, strict=True)
@@ -208,7 +233,7 @@ def _with_gaps(
         list(factors),
         raw * (whole @ levels) / (expected @ levels),
         np.array(edf),
-        [LAWS[int(place)] for place in np.argmax(whole * levels, axis=1)],
+        [LAW_OF_ALPHA[alpha] for alpha in _exponents(record, factors)],
         count,
         partial,
     )

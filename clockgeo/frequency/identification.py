@@ -18,7 +18,8 @@ def lag_one_exponent(averages: ArrayLike, *, highest_order: int = 2) -> float:
     Parameters
     ----------
     averages : array, shape (N,)
-        Frequency averages over the averaging time, without gaps; N >= 30.
+        Frequency averages over the averaging time; NaN where there is none. At least 30 must be
+        there.
     highest_order : int
         Most differences that are taken: 2 reaches α = -4.
 
@@ -30,13 +31,15 @@ def lag_one_exponent(averages: ArrayLike, *, highest_order: int = 2) -> float:
     Notes
     -----
     r1 is the lag-1 autocorrelation, δ = r1/(1 + r1); the series is differenced d times until
-    δ < 0.25, and α = -2 (δ + d). Riley and Greenhall 2004, 18th EFTF (from memory).
+    δ < 0.25, and α = -2 (δ + d). Riley and Greenhall 2004, 18th EFTF (from memory). With gaps only
+    neighbours count, and their sum is scaled to the number of pairs there would be.
     """
     series = np.asarray(averages, dtype=np.float64)
-    if series.size < _FEWEST:
+    count = int(np.count_nonzero(~np.isnan(series)))
+    if count < _FEWEST:
         raise DataError(
             "too few averages to identify the noise",
-            value=series.size,
+            value=count,
             allowed=f"At least {_FEWEST}",
         )
     for order in range(highest_order + 1):
@@ -48,12 +51,18 @@ def lag_one_exponent(averages: ArrayLike, *, highest_order: int = 2) -> float:
 
 
 def _delta(series: NDArray[np.float64]) -> float:
-    centred = series - series.mean()
+    valid = ~np.isnan(series)
+    count = int(np.count_nonzero(valid))
+    pairs = int(np.count_nonzero(valid[1:] & valid[:-1]))
+    if not pairs:
+        raise DataError("no averages are neighbours", value=f"{count} averages")
+    centred = np.where(valid, series - np.mean(series[valid]), 0.0)
     squares = float(centred @ centred)
     if squares == 0.0:
-        raise DataError("constant data show no noise", value=float(series[0]))
-    r1 = float(centred[1:] @ centred[:-1]) / squares
-    return r1 / (1.0 + r1)
+        raise DataError("constant data show no noise", value=float(series[valid][0]))
+    r1 = float(centred[1:] @ centred[:-1]) / squares * (count - 1) / pairs
+    # With few pairs the scaled sum can leave -1 to 1; -2/3 is the least of any power law.
+    return r1 / (1.0 + max(r1, -0.75))
 
 
 def dominant_exponent(averages: ArrayLike, ratio: float | None, m: int) -> int:
