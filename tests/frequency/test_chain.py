@@ -238,3 +238,59 @@ def test_missing_folders_and_data_are_told(tmp_path):
         read_output(folder, "MID_L-WEST_C")
     with pytest.raises(DataError, match="there is no such comparator: X"):
         read_output(folder, "X")
+
+
+def test_a_second_path_fills_what_the_first_leaves_open_and_counts_nothing_twice():
+    from clockgeo.frequency.record import Record
+
+    entries = [
+        entry("EAST_YB", "WEST_SR", nu_b=YB, nu_a=SR),
+        entry("FIBRE_L", "WEST_SR", nu_b=LASER, nu_a=SR),
+        entry("EAST_YB", "FIBRE_L", nu_b=YB, nu_a=LASER),
+    ]
+    comparators = {one["name"]: comparator_from(one, where="test") for one in entries}
+    chains = find_chains(comparators, denominator="WEST_SR", numerator="EAST_YB")
+    assert [len(chain.links) for chain in chains] == [1, 2]
+
+    def output(name, places, value):
+        tick = np.array(places)
+        ones = np.ones(tick.size)
+        return Record(name, tick * 10**9, value * ones, ones > 0, 1.0, tick)
+
+    outputs = {
+        "EAST_YB-WEST_SR": output("a", range(10), 1e-15),
+        "FIBRE_L-WEST_SR": output("b", range(5, 20), 2e-15),
+        "EAST_YB-FIBRE_L": output("c", range(5, 15), 3e-15),
+    }
+    record, counts = chain_record(chains, outputs, name="both")
+    assert counts == [10, 5]
+    np.testing.assert_array_equal(record.tick, np.arange(15))
+    np.testing.assert_allclose(record.y[:10], 1e-15, rtol=1e-12)
+    np.testing.assert_allclose(record.y[10:], 5e-15, rtol=1e-12)
+
+
+def test_gates_off_the_grid_and_other_intervals_are_refused():
+    from clockgeo.frequency.record import Record
+
+    chain = printed_chain(
+        [
+            entry("FIBRE_L", "WEST_SR", nu_b=LASER, nu_a=SR),
+            entry("EAST_YB", "FIBRE_L", nu_b=YB, nu_a=LASER),
+        ]
+    )
+    tick = np.arange(20)
+    ones = np.ones(20)
+
+    def outputs(shift, interval):
+        step = int(interval * 1e9)
+        return {
+            "FIBRE_L-WEST_SR": Record("one", tick * 10**9, ones, ones > 0, 1.0, tick),
+            "EAST_YB-FIBRE_L": Record("two", tick * step + shift, ones, ones > 0, interval, tick),
+        }
+
+    with pytest.raises(DataError, match=r"gates do not lie on the grid.*off by 0\.4"):
+        chain_record([chain], outputs(400_000_000, 1.0), name="x")
+    with pytest.raises(DataError, match="different gate times"):
+        chain_record([chain], outputs(0, 2.0), name="x")
+    with pytest.raises(DataError, match="no valid epoch in common"):
+        chain_record([chain], outputs(100 * 10**9, 1.0), name="x")
