@@ -18,10 +18,12 @@ from clockgeo.frequency import (
     ExcessScatter,
     NoiseModel,
     TickSeries,
+    dead_time_variance,
     diagnose,
     excess_scatter,
     fit_noise,
     mean_covariance,
+    uptime_windows,
 )
 from clockgeo.levelling.correlations import overlap_covariance
 from clockgeo.levelling.linear_model import ModelBuilder
@@ -139,6 +141,13 @@ def session_statistics(
                 f"{group.name}: records too short for a fit; the stated instability is used"
             )
     covariance += _overlaps(campaign, groups, measured)
+    dead_time = [_dead_time(campaign, one) for one in measured]
+    covariance += np.diag(dead_time)
+    notes += [
+        f"session {one.session.id}: a flywheel over the downtime adds {added**0.5:.2e} to u"
+        for one, added in zip(measured, dead_time, strict=True)
+        if added > 0.0
+    ]
     excess = _excess(campaign, covariance, means)
     applied = excess is not None and excess.standard_deviation > 0.0
     scatter_u = excess.standard_deviation if applied and excess is not None else 0.0
@@ -239,6 +248,19 @@ def _group_covariance(group: Group, measured: Sequence[Measured]) -> NDArray[np.
         group.model, [_series(one) for one in members], interval=members[0].record.interval
     )
     return np.asarray(np.outer(signs, signs) * block)
+
+
+def _dead_time(campaign: Campaign, one: Measured) -> float:
+    """Variance of carrying the session's uptime to its whole span with the links' flywheels."""
+    tick, interval = one.series.tick, one.record.interval
+    windows = uptime_windows(tick, interval)
+    total = float(tick[-1] - tick[0] + 1) * interval
+    flywheels = [campaign.link(link).flywheel for link in one.session.links]
+    return sum(
+        dead_time_variance(flywheel, windows, total)
+        for flywheel in flywheels
+        if flywheel is not None
+    )
 
 
 def _overlaps(

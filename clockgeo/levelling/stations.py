@@ -85,3 +85,6 @@ class Link(EffectList):
     """Power-law model of the link alone."""
     length: Positive | None = None
     """Length in m; for the report only."""
+    flywheel: NoiseModel | None = None
+    """Of an oscillator that carries the frequency over the clock's downtime, where the link
+    compares means over the whole session, as satellite links do; adds the dead-time term."""
