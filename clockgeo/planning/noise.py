@@ -75,8 +75,9 @@ def noise_parts(campaign: Campaign, sessions: Sequence[Session]) -> dict[str, ND
     Notes
     -----
     The sum is what `frequency.mean_covariance` gives for records with these windows and uptimes.
-    As in levelling, slow noise of a clock is one process through all its sessions, and the white
-    noise of sessions that share a clock at the same time counts as independent.
+    As in levelling, slow noise of a clock is one process through all its sessions, and sessions
+    that share a clock at the same time share its white noise: σ² T_overlap/(T1 T2), which does not
+    depend on the uptimes where the gaps are independent.
     """
     interval = _interval(sessions)
     gapped = [_series(one, interval, one.uptime) for one in sessions]
@@ -92,7 +93,7 @@ def noise_parts(campaign: Campaign, sessions: Sequence[Session]) -> dict[str, ND
         )
         fast, slow = _fast_and_slow(clock.instability)
         full = _block(fast, whole, signs, interval)
-        parts[STATISTICS] += full
+        parts[STATISTICS] += full + _overlaps(clock.instability, whole, signs, interval)
         parts[DEAD_TIME] += _block(fast, gapped, signs, interval) - full
         parts[FLICKER] += _block(slow, gapped, signs, interval)
     for link in campaign.links:
@@ -118,6 +119,19 @@ def _block(
         part = mean_covariance(model, [series[k] for k in present], interval=interval)
         block[np.ix_(present, present)] = np.outer(signs[present], signs[present]) * part
     return block
+
+
+def _overlaps(
+    model: NoiseModel, series: Sequence[TickSeries], signs: NDArray[np.float64], interval: float
+) -> NDArray[np.float64]:
+    """Covariance from white noise of sessions without gaps that run at the same time."""
+    start = np.array([int(one.tick[0]) for one in series])
+    count = np.array([one.tick.size for one in series])
+    stop = start + count
+    common = np.minimum.outer(stop, stop) - np.maximum.outer(start, start)
+    shared = np.maximum(common, 0) / (np.outer(count, count) * interval)
+    np.fill_diagonal(shared, 0.0)
+    return np.asarray(np.outer(signs, signs) * model.white_fm**2 * shared)
 
 
 def _interval(sessions: Sequence[Session]) -> float:

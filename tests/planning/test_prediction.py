@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 
@@ -153,10 +155,41 @@ def test_the_plan_says_what_level_says(project):
     # The same model: where the records are as stated, level finds the predicted u again, but for
     # its own fit of the noise (a few per cent of the statistics with 7 records).
     document = read_document(project / "examples" / "saddle" / "campaign.toml")
+    # Excess scatter is what a plan cannot foresee; the example's own draw may show some.
+    head = document.campaign.head.model_copy(update={"scatter": "none"})
+    document = replace(document, campaign=document.campaign.model_copy(update={"head": head}))
     prediction, goal = predicted(document)
     found = level(document).result.differences[0]
     potential = prediction.u(goal) * goal.gravity
     assert found.u == pytest.approx(potential, rel=0.12)
+
+
+def test_a_clock_that_two_sessions_share_at_the_same_time_counts_once():
+    # Two places against one clock at the same time: its white noise cancels in their difference,
+    # however long the sessions; one after the other, it does not.
+    def document(second_start):
+        other = {**session("c", "far", second_start, 1), "numerator": {"clock": "c", "site": "far"}}
+        quiet, loud = ({"instability": {"white_fm": level}} for level in (1e-16, 8e-16))
+        return plan_document(
+            [session("a", "away", 0, 1), other],
+            clock=[
+                {"id": "a", "transition": "87Sr", **quiet},
+                {"id": "b", "transition": "87Sr", **loud},
+                {"id": "c", "transition": "87Sr", **quiet},
+            ],
+            site=[
+                {"id": "home", "latitude": 50.0, "longitude": 8.0, "geopotential_number": 0.0},
+                {"id": "away", "latitude": 51.0, "longitude": 9.0},
+                {"id": "far", "latitude": 49.0, "longitude": 9.0},
+            ],
+            target={"difference": [{"from": "away", "to": "far", "u_height": 0.1}]},
+        )
+
+    day = 86_400.0
+    assert u_of(document(0)) == pytest.approx((2 * 1e-32 / day) ** 0.5, rel=1e-6)
+    assert u_of(document(1)) == pytest.approx((2 * 65e-32 / day) ** 0.5, rel=1e-6)
+    # Half of the time in common: half of the shared part is left.
+    assert u_of(document(0.5)) == pytest.approx((2 * 1e-32 / day + 64e-32 / day) ** 0.5, rel=1e-6)
 
 
 def test_session_statistics_follow_the_windows():
