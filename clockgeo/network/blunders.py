@@ -28,10 +28,14 @@ _SEPARABLE = 1e-6
 """Share of its sharpness that a row must keep beside the suspects to be tested at all."""
 _PAIR_ROWS = 1200
 """Rows whose pairs are tested; in larger nets those with the largest residuals."""
-_PAIR_WORK = 2e8
+_PAIR_WORK = 1e7
 """Rows of the net times rows whose pairs are tested, at most."""
 _PART = 100
 """Columns that are made at a time."""
+_KIN, _ALIKE = 150, 0.3
+"""Most rows that may explain what two suspects do, and their least correlation with one of them."""
+_HELD = 2e8
+"""Numbers that the columns of all suspects may hold."""
 _OTHER_PAIRS = 5000
 """Pairs that are looked at in place of two suspects, best first."""
 _TWINS = 10
@@ -151,7 +155,8 @@ def find_blunders(
     alpha : float, optional
         Size of the test of one row; that of the reliability if not given.
     at_most : int, optional
-        Largest number of suspects; a third of the degrees of freedom if not given.
+        Largest number of suspects; a third of the degrees of freedom if not given, and no more
+        than memory allows: 100 in a net of two million rows.
 
     Returns
     -------
@@ -160,6 +165,7 @@ def find_blunders(
     fit = reliability.adjustment.fit
     limit = critical_residual(reliability.alpha if alpha is None else alpha)
     most = at_most if at_most is not None else max(fit.degrees_of_freedom // 3, 1)
+    most = min(most, max(int(_HELD // max(reliability.pull.size, 1)), 10))
     state = _State(reliability)
     seen: set[frozenset[int]] = set()
     while len(state.rows) < most and fit.degrees_of_freedom > len(state.rows):
@@ -201,28 +207,33 @@ class _Pairs:
 
 def _best_pair(state: _State, w: NDArray[np.float64], sharpness: NDArray[np.float64]) -> list[int]:
     """Pair of rows that together explain most, if that is more than chance among all pairs."""
-    found = _pair_gains(state, w, sharpness)
-    count = np.count_nonzero(sharpness > 0.0)
-    if found.rows.size < 2:
+    testable = np.flatnonzero(sharpness > 0.0)
+    if testable.size < 2:
         return []
+    most = int(min(_PAIR_ROWS, max(_PAIR_WORK / w.size, 50.0)))
+    chosen = testable[np.argsort(-np.abs(w[testable]), kind="stable")[:most]]
+    found = _pair_gains(state, w, sharpness, chosen)
+    chances = testable.size * (testable.size - 1) / 2.0
     first, second = np.unravel_index(int(np.argmax(found.gain)), found.gain.shape)
-    if found.gain[first, second] <= stats.chi2.isf(_FAMILY_ALPHA / (count * (count - 1) / 2.0), 2):
+    if found.gain[first, second] <= stats.chi2.isf(_FAMILY_ALPHA / chances, 2):
         return []
     return [int(found.rows[first]), int(found.rows[second])]
 
 
-def _pair_gains(state: _State, w: NDArray[np.float64], sharpness: NDArray[np.float64]) -> _Pairs:
-    """Pairs of the rows with the largest residuals, as many as time and memory allow."""
-    most = int(min(_PAIR_ROWS, max(_PAIR_WORK / max(w.size, 1), 50.0)))
-    rows = np.flatnonzero(sharpness > 0.0)
-    rows = rows[np.argsort(-np.abs(w[rows]), kind="stable")[:most]]
+def _pair_gains(
+    state: _State,
+    w: NDArray[np.float64],
+    sharpness: NDArray[np.float64],
+    rows: NDArray[np.int64],
+) -> _Pairs:
+    """All pairs of some testable rows."""
     parts = [rows[start : start + _PART] for start in range(0, rows.size, _PART)]
-    block = np.hstack([state.base.columns(part)[rows] for part in parts]) if parts else np.empty(0)
+    block = np.hstack([state.base.columns(part)[rows] for part in parts])
     if state.rows:
         across = state.columns[rows]
         block = block - across @ np.linalg.solve(state.corner, across.T)
     root = np.sqrt(sharpness[rows])
-    alike = block.reshape(rows.size, rows.size) / np.outer(root, root)
+    alike = block / np.outer(root, root)
     own = w[rows]
     apart = 1.0 - alike**2
     joint = own[:, None] ** 2 + own[None, :] ** 2 - 2.0 * alike * np.outer(own, own)
@@ -255,7 +266,7 @@ def _alternatives(state: _State, limit: float) -> dict[int, list[int]]:
         left = np.abs(w[suspect] - alike * w) <= limit * np.sqrt(np.maximum(1.0 - alike**2, 1e-12))
         found[suspect].update(np.flatnonzero(near & left).tolist())
     for first, second in list(combinations(state.rows, 2))[:_TWINS]:
-        instead = _other_pairs(_beside(state, [first, second]), first, second)
+        instead = _other_pairs(state, first, second)
         found[first] |= instead
         found[second] |= instead
     return {one: sorted(rows.difference(state.rows)) for one, rows in found.items()}
@@ -272,20 +283,26 @@ def _alike(
 
 
 def _other_pairs(state: _State, first: int, second: int) -> set[int]:
-    """Rows of pairs that explain the misfit of two rows nearly as well as these do."""
-    pairs = _pair_gains(state, *state.residuals())
-    place = {int(row): i for i, row in enumerate(pairs.rows)}
-    if first not in place or second not in place:
-        return set()
-    both = [place[first], place[second]]
-    near = np.triu(pairs.gain > pairs.gain[both[0], both[1]] - _ODDS, 1)
+    """Rows of pairs that explain the misfit of two suspects nearly as well as these do."""
+    others = _beside(state, [first, second])
+    w, sharpness = others.residuals()
+    kin = np.maximum(
+        *(
+            np.abs(_alike(others, state.columns[:, state.rows.index(one)], one, sharpness))
+            for one in (first, second)
+        )
+    )
+    kin[[first, second]] = 2.0
+    rows = np.argsort(-kin, kind="stable")[:_KIN]
+    pairs = _pair_gains(others, w, sharpness, rows[kin[rows] > _ALIKE])
     # A pair with one of the suspects in it is another reading of the other one only.
-    near[both, :] = False
-    near[:, both] = False
+    near = np.triu(pairs.gain > pairs.gain[0, 1] - _ODDS, 1)
+    near[:2, :] = False
+    near[:, :2] = False
     i, j = np.nonzero(near)
     best = np.argsort(-pairs.gain[i, j], kind="stable")[:_OTHER_PAIRS]
     i, j = i[best], j[best]
-    four = np.column_stack([np.full_like(i, both[0]), np.full_like(i, both[1]), i, j])
+    four = np.column_stack([np.zeros_like(i), np.ones_like(i), i, j])
     alike = pairs.alike[four[:, :, None], four[:, None, :]]
     own = pairs.w[four]
     together = np.einsum("mi,mij,mj->m", own, np.linalg.pinv(alike, 1e-6, hermitian=True), own)
@@ -305,6 +322,7 @@ def _result(state: _State, limit: float) -> BlunderSearch:
     adjustment = state.base.adjustment
     names = adjustment.model.rows
     also = _alternatives(state, limit)
+    w, _ = state.residuals()
     suspects = tuple(
         Suspect(
             row=names[row],
@@ -326,13 +344,15 @@ def _result(state: _State, limit: float) -> BlunderSearch:
         chi_squared=chi_squared,
         degrees_of_freedom=left,
         p_value=p_value,
-        text=_verdict(suspects, p_value),
+        text=_verdict(suspects, p_value, more=int(np.count_nonzero(np.abs(w) > limit))),
     )
 
 
-def _verdict(suspects: tuple[Suspect, ...], p_value: float | None) -> str:
+def _verdict(suspects: tuple[Suspect, ...], p_value: float | None, *, more: int) -> str:
     rest = ""
-    if p_value is not None and p_value < _GLOBAL_ALPHA:
+    if more:
+        rest = f"; the search ended here, though {more} more stand out"
+    elif p_value is not None and p_value < _GLOBAL_ALPHA:
         rest = (
             "; the global test still fails without any single row or pair standing out: "
             "the stated uncertainties are too small, or many small errors add up"

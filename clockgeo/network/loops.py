@@ -2,16 +2,19 @@
 
 from __future__ import annotations
 
-from collections import deque
 from collections.abc import Collection
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
+from scipy import sparse
 
 from clockgeo.levelling.linear_model import LinearModel
 
 __all__ = ["Loop", "loop_misclosures"]
+
+_Steps = dict[int, tuple[int, int] | None]
+"""Unknown -> the unknown before it and the row between; None where a search began."""
+_Paths = list[list[int]]
 
 
 @dataclass(frozen=True)
@@ -61,15 +64,13 @@ def loop_misclosures(
     for row, (start, end) in edges.items():
         around.setdefault(start, []).append((end, row))
         around.setdefault(end, []).append((start, row))
-    found: dict[frozenset[int], Loop] = {}
+    found: dict[frozenset[int], list[int]] = {}
     for row, (start, end) in list(edges.items())[:at_most]:
         path = _shortest_path(around, end, start, avoiding=row)
-        if path is None:
-            continue
-        members = frozenset([row, *path])
-        if members not in found:
-            found[members] = _closed(model, edges, [row, *path], start)
-    return sorted(found.values(), key=lambda loop: -abs(loop.standardised))
+        if path is not None:
+            found.setdefault(frozenset([row, *path]), [row, *path])
+    loops = _closed(model, edges, list(found.values())) if found else []
+    return sorted(loops, key=lambda loop: -abs(loop.standardised))
 
 
 def _edges(model: LinearModel, kinds: Collection[str]) -> dict[int, tuple[int, int]]:
@@ -92,42 +93,67 @@ def _edges(model: LinearModel, kinds: Collection[str]) -> dict[int, tuple[int, i
 def _shortest_path(
     around: dict[int, list[tuple[int, int]]], start: int, goal: int, *, avoiding: int
 ) -> list[int] | None:
-    """Rows of a shortest path between two unknowns, without one row."""
-    came: dict[int, tuple[int, int] | None] = {start: None}
-    queue = deque([start])
-    while queue:
-        here = queue.popleft()
-        if here == goal:
-            break
-        for there, row in around[here]:
-            if row != avoiding and there not in came:
-                came[there] = (here, row)
-                queue.append(there)
-    if goal not in came:
-        return None
-    path: list[int] = []
-    step = came[goal]
+    """Rows of a shortest path between two unknowns, without one row.
+
+    It is searched from both ends, so that a row that nothing closes costs its smaller side only.
+    """
+    came: tuple[_Steps, _Steps] = ({start: None}, {goal: None})
+    fronts = [[start], [goal]]
+    side = 0
+    while fronts[0] and fronts[1]:
+        front: list[int] = []
+        for here in fronts[side]:
+            for there, row in around[here]:
+                if row == avoiding or there in came[side]:
+                    continue
+                came[side][there] = (here, row)
+                if there in came[1 - side]:
+                    return _way(came[0], there)[::-1] + _way(came[1], there)
+                front.append(there)
+        fronts[side] = front
+        side = 1 - side
+    return None
+
+
+def _way(came: _Steps, here: int) -> list[int]:
+    """Rows from an unknown back to where a search began."""
+    rows: list[int] = []
+    step = came[here]
     while step is not None:
-        path.append(step[1])
+        rows.append(step[1])
         step = came[step[0]]
-    return path[::-1]
+    return rows
 
 
-def _closed(
-    model: LinearModel, edges: dict[int, tuple[int, int]], rows: list[int], start: int
-) -> Loop:
-    signs, here = [], start
+def _signs(edges: dict[int, tuple[int, int]], rows: list[int]) -> list[int]:
+    """+1 for rows that are run from their start to their end, the first of them so, else -1."""
+    signs, here = [], edges[rows[0]][0]
     for row in rows:
         first, second = edges[row]
         signs.append(1 if first == here else -1)
         here = second if first == here else first
-    weights: NDArray[np.float64] = np.array(signs, dtype=np.float64)
-    noise = model.noise[rows][:, rows]
-    loads = weights @ model.loading[rows]
-    variance = float(weights @ (noise @ weights)) + float(np.sum(loads**2))
-    return Loop(
-        rows=tuple(model.rows[row] for row in rows),
-        signs=tuple(signs),
-        misclosure=float(weights @ model.values[rows]),
-        u=float(np.sqrt(variance)),
+    return signs
+
+
+def _closed(model: LinearModel, edges: dict[int, tuple[int, int]], paths: _Paths) -> list[Loop]:
+    signs = [_signs(edges, rows) for rows in paths]
+    lengths = [len(rows) for rows in paths]
+    weights = sparse.csr_array(
+        (
+            np.array([sign for one in signs for sign in one], dtype=np.float64),
+            np.array([row for rows in paths for row in rows], dtype=np.int64),
+            np.concatenate([[0], np.cumsum(lengths, dtype=np.int64)]),
+        ),
+        shape=(len(paths), len(model.rows)),
     )
+    loads = sparse.csr_array(weights @ model.loading)
+    variance = (weights @ model.noise).multiply(weights).sum(axis=1) + loads.multiply(loads).sum(
+        axis=1
+    )
+    spread = np.sqrt(np.asarray(variance, dtype=np.float64).ravel())
+    return [
+        Loop(tuple(model.rows[row] for row in rows), tuple(sign), float(misclosure), float(u))
+        for rows, sign, misclosure, u in zip(
+            paths, signs, weights @ model.values, spread, strict=True
+        )
+    ]

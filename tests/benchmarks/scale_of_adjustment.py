@@ -111,11 +111,12 @@ def measured(count: int) -> None:
         normal, permc_spec="MMD_AT_PLUS_A", diag_pivot_thresh=0.0, options={"SymmetricMode": True}
     )
     one = time.perf_counter() - start
+    times = {"adjusted": solved - begun, "u of all": done - solved, "both": done - begun}
+    ratios = [f"{name} {took:.2f} s = {took / one:.1f}" for name, took in times.items()]
     print(
-        f"{count} points, {len(model.rows)} rows, factor of {factor.L.nnz / 1e6:.1f} million entries\n"
-        f"  one factorisation {one:.2f} s; adjusted {solved - begun:.2f} s = "
-        f"{(solved - begun) / one:.1f}, u of all {done - solved:.2f} s = {(done - solved) / one:.1f}"
-        f", both {(done - begun) / one:.1f} factorisations; memory {memory():.2f} GB"
+        f"{count} points, {len(model.rows)} rows, factor of {factor.L.nnz / 1e6:.1f} million\n"
+        f"  one factorisation {one:.2f} s; {', '.join(ratios)} factorisations; "
+        f"memory {memory():.2f} GB"
     )
     z = error / u[points]
     held = 100 * np.mean(np.abs(z) < 1.96)

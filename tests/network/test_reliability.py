@@ -103,6 +103,43 @@ def test_loops_close_as_their_lines_add_up():
     assert loops[0].u == pytest.approx(0.03, abs=1e-12)  # root of 1 + 4 + 4 in units of 0.01
 
 
+def test_loops_of_a_grid_are_its_faces_and_dead_ends_close_nothing():
+    model, _ = grid_net(np.random.default_rng(9), size=4)
+    # Euler: a grid of 4 by 4 points has 9 faces, each the shortest loop of its four sides.
+    loops = loop_misclosures(model)
+    assert [len(loop.rows) for loop in loops] == [4] * 9
+    value = dict(zip(model.rows, model.values, strict=True))
+    for loop in loops:
+        total = sum(sign * value[row] for row, sign in zip(loop.rows, loop.signs, strict=True))
+        assert loop.misclosure == pytest.approx(total, abs=1e-15)
+        assert loop.u == pytest.approx(0.02, abs=1e-12)  # four lines of 0.01
+    lines = [("a", "b", 1.0, 0.01), ("b", "c", 1.0, 0.01), ("c", "d", 1.0, 0.01)]
+    assert loop_misclosures(level_net({"a": (0.0, 0.0)}, lines)) == []
+
+
+def test_a_suspect_in_one_net_is_not_excused_by_lines_of_another():
+    """Two nets without a line between them: only rows of the same loops can be mistaken for it."""
+    rng = np.random.default_rng(3)
+    one = [
+        (f"{part}{i}{j}", f"{part}{end[0]}{end[1]}", 0.01 * rng.standard_normal(), 0.01)
+        for part in "lr"
+        for i in range(4)
+        for j in range(4)
+        for end in ((i, j + 1), (i + 1, j))
+        if max(end) < 4
+    ]
+    names = [f"{a}-{b}" for a, b, _, _ in one]
+    for row in ("l11-l12", "r21-r22"):
+        place = names.index(row)
+        start, end, value, u = one[place]
+        one[place] = (start, end, value + 0.07, u)
+    model = level_net({"l00": (0.0, 0.0), "r00": (0.0, 0.0)}, one)
+    suspects = find_blunders(reliability_of(adjust_network(model)), alpha=0.05).suspects
+    assert {"l11-l12", "r21-r22"} <= {suspect.row for suspect in suspects}
+    for suspect in suspects:
+        assert all(other[0] == suspect.row[0] for other in suspect.alternatives)
+
+
 @pytest.mark.parametrize("rule", ["huber", "igg3"])
 def test_the_robust_net_forgets_a_blunder(rule, rng):
     clean, names = grid_net(np.random.default_rng(20270301))
