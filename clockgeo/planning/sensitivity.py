@@ -9,6 +9,7 @@ import numpy as np
 from scipy import sparse
 
 from clockgeo.levelling.effects import EffectKey
+from clockgeo.levelling.session_rows import stays_of
 from clockgeo.planning.noise import AVERAGING
 from clockgeo.planning.prediction import Goal, PlanModel, Prediction
 from clockgeo.planning.requirement import effect_lines
@@ -21,7 +22,7 @@ _HALVED = 8
 _HARMLESS = 1e-6
 """Share of the variance below which an effect is not worth a try."""
 _SESSIONS = 40
-"""Up to so many sessions are tried one by one; beyond, those that weigh most."""
+"""Up to so many kinds of session are tried; beyond, those that weigh most."""
 
 
 @dataclass(frozen=True)
@@ -85,10 +86,17 @@ class _Part:
 
 
 def _weightiest(prediction: Prediction, goals: Sequence[Goal]) -> list[int]:
-    solution, rows = prediction.solution, prediction.model.clock_rows
-    weights = np.array([solution.weights(g.combination) @ solution.gain for g in goals])[:, rows]
-    order = np.argsort(-np.max(np.abs(weights), axis=0), kind="stable")
-    return sorted(order[:_SESSIONS].tolist())
+    """The session that weighs most of each kind: same clocks, links and stays."""
+    solution, model = prediction.solution, prediction.model
+    weights = np.array([solution.weights(g.combination) @ solution.gain for g in goals])
+    size = np.max(np.abs(weights[:, model.clock_rows]), axis=0)
+    stays = stays_of(model.means)
+    best: dict[Hashable, int] = {}
+    for place in np.argsort(-size, kind="stable").tolist():
+        session = model.sessions[place]
+        at = tuple((one, stays[one.clock, session.id]) for one in session.places)
+        best.setdefault((at, session.links), place)
+    return sorted(list(best.values())[:_SESSIONS])
 
 
 def _change(text: str, model: PlanModel, goals: Sequence[Goal]) -> Change:
