@@ -286,12 +286,13 @@ def _other_pairs(state: _State, first: int, second: int) -> set[int]:
     """Rows of pairs that explain the misfit of two suspects nearly as well as these do."""
     others = _beside(state, [first, second])
     w, sharpness = others.residuals()
-    kin = np.maximum(
-        *(
-            np.abs(_alike(others, state.columns[:, state.rows.index(one)], one, sharpness))
-            for one in (first, second)
-        )
+    near_first, near_second = (
+        np.abs(_alike(others, state.columns[:, state.rows.index(one)], one, sharpness))
+        for one in (first, second)
     )
+    if near_first[second] < _ALIKE:  # they do not hide each other: each is looked at alone
+        return set()
+    kin = np.maximum(near_first, near_second)
     kin[[first, second]] = 2.0
     rows = np.argsort(-kin, kind="stable")[:_KIN]
     pairs = _pair_gains(others, w, sharpness, rows[kin[rows] > _ALIKE])
