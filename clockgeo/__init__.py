@@ -1,10 +1,127 @@
-"""From optical clock comparisons to geopotential differences, heights and datums."""
+"""From optical clock comparisons to geopotential differences, heights and datums.
 
+The whole job is at hand under this name: documents and records are read, records screened and
+assessed, campaigns planned, simulated, levelled and adjusted, results drawn. Names are imported
+when first used.
+
+    import clockgeo
+
+    document = clockgeo.read_document("campaign.toml")
+    levelled = clockgeo.level(document)
+    print(levelled.result.differences)
+"""
+
+from __future__ import annotations
+
+import importlib
 from importlib.metadata import PackageNotFoundError, version
+from typing import TYPE_CHECKING, Any
+
+if TYPE_CHECKING:
+    from clockgeo.campaign import (
+        adjust,
+        adjusted_dataset,
+        check_campaign,
+        level,
+        read_document,
+        read_result,
+        result_dataset,
+        write_result,
+    )
+    from clockgeo.frequency import (
+        NoiseModel,
+        RecordLayout,
+        assess_stability,
+        read_record,
+        screen,
+        stability_curve,
+    )
+    from clockgeo.gravity import heights_of, open_geoid, tide_series
+    from clockgeo.planning import plan, simulate_records
+    from clockgeo.report import (
+        adjust_page,
+        level_page,
+        record_picture,
+        save_picture,
+        stability_picture,
+        write_page,
+    )
 
 try:
     __version__ = version("clockgeo")
 except PackageNotFoundError:  # a source tree that was never installed
     __version__ = "0+unknown"
 
-__all__ = ["__version__"]
+_HOMES = {
+    # campaigns
+    "read_document": "campaign",
+    "check_campaign": "campaign",
+    "level": "campaign",
+    "adjust": "campaign",
+    "plan": "planning",
+    "simulate_records": "planning",
+    # results
+    "read_result": "campaign",
+    "write_result": "campaign",
+    "result_dataset": "campaign",
+    "adjusted_dataset": "campaign",
+    # records
+    "RecordLayout": "frequency",
+    "NoiseModel": "frequency",
+    "read_record": "frequency",
+    "screen": "frequency",
+    "assess_stability": "frequency",
+    "stability_curve": "frequency",
+    # places
+    "heights_of": "gravity",
+    "open_geoid": "gravity",
+    "tide_series": "gravity",
+    # pictures and pages
+    "record_picture": "report",
+    "stability_picture": "report",
+    "save_picture": "report",
+    "level_page": "report",
+    "adjust_page": "report",
+    "write_page": "report",
+}
+"""Public name -> package that holds it."""
+
+__all__ = [
+    "__version__",
+    "read_document",
+    "check_campaign",
+    "level",
+    "adjust",
+    "plan",
+    "simulate_records",
+    "read_result",
+    "write_result",
+    "result_dataset",
+    "adjusted_dataset",
+    "RecordLayout",
+    "NoiseModel",
+    "read_record",
+    "screen",
+    "assess_stability",
+    "stability_curve",
+    "heights_of",
+    "open_geoid",
+    "tide_series",
+    "record_picture",
+    "stability_picture",
+    "save_picture",
+    "level_page",
+    "adjust_page",
+    "write_page",
+]
+
+
+def __getattr__(name: str) -> Any:
+    if name not in _HOMES:
+        message = f"module {__name__!r} has no attribute {name!r}"
+        raise AttributeError(message)
+    return getattr(importlib.import_module(f"{__name__}.{_HOMES[name]}"), name)
+
+
+def __dir__() -> list[str]:
+    return sorted([*globals(), *_HOMES])

@@ -224,7 +224,7 @@ def make(folder: Path) -> None:
     truth = drawn_truth(rng)
     write_tables(folder, truth, rng)
     for name in SITES:
-        print(f"{name} = {truth.number[truth.ids.index(name)]:.4f}")  # noqa: T201
+        print(f"{name} = {truth.number[truth.ids.index(name)]:.4f}")
 
 
 if __name__ == "__main__":

@@ -158,7 +158,7 @@ def _mean(
     interval = record.interval
     ticks = int(record.tick[-1] - record.tick[0]) + 1
     if fit is not None:
-        u = float(np.sqrt(mean_covariance(fit.model, [series], interval=interval)[0, 0]))
+        u = float(np.sqrt(mean_covariance(fit.averaged, [series], interval=interval)[0, 0]))
     else:
         factor = max([1.0, *(finding.factor or 1.0 for finding in findings)])
         u = factor * float(np.std(series.y, ddof=1)) / float(np.sqrt(series.y.size))
