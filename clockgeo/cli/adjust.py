@@ -96,7 +96,7 @@ def _tell(result: AdjustResult, *, verbose: bool) -> None:
 
 
 def _tell_datums(result: AdjustResult) -> None:
-    from clockgeo.cli.terminal import show_table
+    from clockgeo.cli.terminal import say, show_table
     from clockgeo.report.numbers import in_units_of, with_uncertainty
 
     def tilt(value: float | None, u: float | None) -> str:
@@ -105,8 +105,8 @@ def _tell_datums(result: AdjustResult) -> None:
         return in_units_of(value, 1e-8, u) if u else "not asked for"
 
     show_table(
-        "Datums (positive: the zero surface lies high; tilts in cm on 1000 km)",
-        ["datum", "points", "offset / m", "tilt north", "tilt east"],
+        "Datums: offset in m, tilts in cm on 1000 km",
+        ["datum", "points", "offset", "tilt north", "tilt east"],
         [
             (
                 one.name,
@@ -120,6 +120,7 @@ def _tell_datums(result: AdjustResult) -> None:
             for one in result.datums
         ],
     )
+    say("a positive offset: the datum's zero surface lies high\n")
 
 
 def _tell_tests(result: AdjustResult) -> None:
@@ -141,7 +142,7 @@ def _tell_tests(result: AdjustResult) -> None:
         say(f"uncontrolled, nothing else checks them: {names}")
     if result.variance_components:
         show_table(
-            "Variance factors of the groups (1 where the stated u hold)",
+            "Variance factors of the groups",
             ["group", "observations", "factor", "u"],
             [
                 (one.group, str(one.observations), f"{one.factor:.2f}", f"{one.u:.2f}")
