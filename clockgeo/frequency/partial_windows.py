@@ -29,7 +29,7 @@ __all__ = ["WindowExpectations", "noise_mixture"]
 _MOST_LAWS = 3
 _PRICE = 6.0
 """What a further law must take off the misfit (χ²)."""
-_PROBES, _SAMPLES = 200, 64_000
+_PROBES, _SAMPLES = 150, 32_000
 """Windows whose expectation stands for all where there are more: so many, or as many as hold so
 many samples."""
 _GOLDEN = 0.6180339887498949

@@ -57,16 +57,16 @@ def freedom_with_gaps(
     Notes
     -----
     The whole quadratic form where the record holds few averaging times; else the forms of some
-    stretches, scaled to the number of places for a window. Exact for m up to 31 in records of up
-    to 1024 ticks; to some % elsewhere, where windows are placed at eighths of an averaging time.
+    stretches, scaled to the number of places for a window. Exact for records of up to 1024
+    ticks; to some % elsewhere, where windows are placed at eighths of an averaging time.
     """
     size = count.size - 1
-    width = max(1, m // _BLOCKS)
+    short = size <= _SHORT
+    width = 1 if short else max(1, m // _BLOCKS)
     each = max(round(m / width), 1)
     span = (3 if modified else order) * each
     blocks = max(size // width, 1)
     stretch = min(max(_STRETCH * each, _SHORTEST), blocks)
-    short = width == 1 and blocks <= _SHORT
     step = each if plain else (1 if short else max(1, each // 8))
     if short or blocks <= 2 * stretch:
         stretch, starts = blocks, np.zeros(1, dtype=np.int64)

@@ -66,6 +66,27 @@ def runs_of(tick: NDArray[np.int64]) -> tuple[NDArray[np.int64], NDArray[np.int6
 
 
 @compiled
+def _squares(total: NDArray[np.float64], m: int, order: int, stride: int) -> float:
+    """Sum over all places within one run; without a stride, loops over whole vectors."""
+    places = total.size - order * m
+    acc = 0.0
+    if order == 2 and stride == 1:
+        early, middle, late = total[:places], total[m : m + places], total[2 * m :]
+        for i in range(places):
+            d = late[i] - 2.0 * middle[i] + early[i]
+            acc += d * d
+    elif order == 2:
+        for i in range(0, places, stride):
+            d = total[i + 2 * m] - 2.0 * total[i + m] + total[i]
+            acc += d * d
+    else:
+        for i in range(0, places, stride):
+            d = total[i + 3 * m] - 3.0 * (total[i + 2 * m] - total[i + m]) - total[i]
+            acc += d * d
+    return acc
+
+
+@compiled
 def complete_squares(
     total: NDArray[np.float64],
     starts: NDArray[np.int64],
@@ -90,16 +111,7 @@ def complete_squares(
         behind = stops[run] - order * m + 1
         if behind <= first:
             continue
-        acc = 0.0
-        if order == 2:
-            for i in range(first, behind, stride):
-                d = total[i + 2 * m] - 2.0 * total[i + m] + total[i]
-                acc += d * d
-        else:
-            for i in range(first, behind, stride):
-                d = total[i + 3 * m] - 3.0 * (total[i + 2 * m] - total[i + m]) - total[i]
-                acc += d * d
-        squares += acc
+        squares += _squares(total[first : behind + order * m], m, order, stride)
         number += (behind - first + stride - 1) // stride
     return squares, number
 

@@ -13,10 +13,9 @@ import numpy as np
 
 sys.path.insert(0, "tests")
 
-from frequency.power_laws import LAWS, power_law
-
 from clockgeo.frequency import TickSeries
 from clockgeo.frequency.deviations import stability_curve
+from frequency.power_laws import LAWS, power_law
 
 SAMPLES = 8_192
 FACTORS = [1.0, 4.0, 16.0, 64.0, 256.0, 1024.0]

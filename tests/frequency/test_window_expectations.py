@@ -143,5 +143,6 @@ def test_freedom_of_partly_filled_windows(statistic, pattern, law):
             interval=1.0,
         )
         exact = max(equivalent_freedom(rows, covariance(law), weights), 1.0)
-        # 10 % in freedom is 5 % in the width of an interval.
-        assert_close(found / exact, 1.0, tolerance=0.1, name=f"{law} at {m}")
+        # Up to this length every window is told of; partly filled ones are placed at sixteenths of
+        # an averaging time here, which costs a few per cent.
+        assert_close(found / exact, 1.0, tolerance=0.05, name=f"{law} at {m}")
