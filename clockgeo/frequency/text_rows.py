@@ -204,7 +204,7 @@ def _allowed(column: pl.Series, layout: RecordLayout) -> NDArray[np.bool_]:
         for text in column.unique().drop_nulls().to_list()
         if text in stated or _number_or_none(text) in numbers
     ]
-    return np.asarray(column.is_in(pl.Series(good, dtype=pl.String)).fill_null(False).to_numpy())
+    return np.asarray(column.is_in(good).fill_null(False).to_numpy())
 
 
 def _number_or_none(text: str) -> Fraction | None:
