@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
+from enum import StrEnum
 from pathlib import Path
-from typing import Annotated
+from typing import Annotated, Any
 
 import typer
 
@@ -17,9 +18,24 @@ Schema = Annotated[
 ]
 
 
+class ResultKind(StrEnum):
+    """Commands whose results have a schema."""
+
+    level = "level"
+    adjust = "adjust"
+    plan = "plan"
+
+
+OfResult = Annotated[
+    ResultKind | None,
+    typer.Option("--result-schema", help="Print the JSON Schema of a result: level, adjust, plan."),
+]
+
+
 def command(
     campaign: Campaign = None,
     schema: Schema = False,
+    result_schema: OfResult = None,
     json: Json = False,
     quiet: Quiet = False,
 ) -> None:
@@ -35,8 +51,11 @@ def command(
     if schema:
         print_json(campaign_schema())
         return
+    if result_schema is not None:
+        print_json(_schema_of(result_schema))
+        return
     if campaign is None:
-        message = "name a campaign document, or ask for --schema"
+        message = "name a campaign document, or ask for --schema or --result-schema"
         raise typer.BadParameter(message)
     with progress_shown(quiet=quiet or json):
         report = check_campaign(campaign)
@@ -66,3 +85,13 @@ def command(
         say("The document and its records are in order." if not report.problems else "")
     if report.problems:
         raise typer.Exit(1)
+
+
+def _schema_of(kind: ResultKind) -> dict[str, Any]:
+    """JSON Schema (draft 2020-12) of what a command writes and prints with --json."""
+    from clockgeo.campaign import AdjustResult, LevelResult
+    from clockgeo.planning import PlanResult
+
+    models = {"level": LevelResult, "adjust": AdjustResult, "plan": PlanResult}
+    schema = models[kind.value].model_json_schema(by_alias=True, mode="serialization")
+    return {"$schema": "https://json-schema.org/draft/2020-12/schema", **schema}

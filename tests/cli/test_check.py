@@ -107,5 +107,19 @@ def test_the_schema_is_a_json_schema_of_the_document():
     assert {"campaign", "site", "clock", "link", "session", "geoid"} <= set(schema["properties"])
 
 
+@pytest.mark.parametrize(
+    ("kind", "names"),
+    [
+        ("level", {"schema", "sessions", "sites", "differences", "covariance", "provenance"}),
+        ("adjust", {"schema", "datums", "observations", "global_test", "variance_components"}),
+        ("plan", {"schema", "targets", "sessions", "limits", "alternatives"}),
+    ],
+)
+def test_results_have_a_published_schema(kind, names):
+    schema = json.loads(run("--result-schema", kind).stdout)
+    assert schema["$schema"].startswith("https://json-schema.org/")
+    assert names <= set(schema["properties"])
+
+
 def test_neither_document_nor_schema_is_wrong_usage():
     assert run().exit_code == 2
