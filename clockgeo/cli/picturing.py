@@ -67,10 +67,17 @@ def draw_stability(
     """Draw the curves of every record with its noise model; nothing where there are no paths."""
     if not paths:
         return
+    from clockgeo.frequency.stability_statistics import find_statistic
     from clockgeo.report import save_picture, stability_picture
 
     for result, path in zip(results, paths, strict=True):
-        figure = stability_picture(result.curves, model=result.model, title=result.record.name)
+        in_seconds = all(find_statistic(curve.statistic).in_time for curve in result.curves)
+        figure = stability_picture(
+            result.curves,
+            model=None if in_seconds else result.model,
+            model_name="noise model, Allan deviation",
+            title=result.record.name,
+        )
         save_picture(figure, path, replace=replace)
 
 

@@ -82,6 +82,9 @@ def command(
     if not 0.0 < confidence < 1.0:
         message = f"--confidence: {confidence:g} is not between 0 and 1"
         raise typer.BadParameter(message)
+    if picture is not None and len({find_statistic(name).in_time for name in names}) > 1:
+        message = "--picture: deviations and time deviations (in s) do not share an axis"
+        raise typer.BadParameter(message)
     pictures = numbered_pictures(picture, len(reading.files), replace=force)
     if out is not None:
         checked_stability_file(out, records=len(reading.files), replace=force)

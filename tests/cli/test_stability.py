@@ -188,6 +188,7 @@ def test_what_does_not_fit_is_an_error_of_data(gapped, words, told):
         (["--confidence", "95"], "between 0 and 1"),
         (["--flywheel", "white_fm"], "law=level"),
         (["--flywheel", "pink=1e-15"], "law=level"),
+        (["--statistic", "allan,time", "--picture", "p.svg"], "do not share an axis"),
     ],
 )
 def test_wrong_words_are_wrong_usage(gapped, words, told):
