@@ -91,7 +91,8 @@ def _schema_of(kind: ResultKind) -> dict[str, Any]:
     """JSON Schema (draft 2020-12) of what a command writes and prints with --json."""
     from clockgeo.campaign import AdjustResult, LevelResult
     from clockgeo.planning import PlanResult
+    from clockgeo.tables import Table
 
-    models = {"level": LevelResult, "adjust": AdjustResult, "plan": PlanResult}
+    models: dict[str, type[Table]] = {"level": LevelResult, "adjust": AdjustResult, "plan": PlanResult}
     schema = models[kind.value].model_json_schema(by_alias=True, mode="serialization")
     return {"$schema": "https://json-schema.org/draft/2020-12/schema", **schema}
