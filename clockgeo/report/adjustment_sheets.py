@@ -35,6 +35,13 @@ def _determined(value: float | None, u: float | None, *, step: float = 1.0) -> C
     return measured(value, u, step=step)
 
 
+def _tilt(value: float | None, u: float | None) -> Cell:
+    """A tilt in mm/km; one that is not estimated is held at zero, and so it says."""
+    if value == 0.0 and u == 0.0:
+        return Cell("held at 0", (value, u))
+    return _determined(value, u, step=_PER_KM)
+
+
 def datum_sheet(result: AdjustResult) -> Sheet:
     """Offsets and tilts of the datums."""
     columns: Columns = [
@@ -54,8 +61,8 @@ def datum_sheet(result: AdjustResult) -> Sheet:
             count(d.points),
             _determined(d.offset, d.u),
             _determined(d.offset_potential, d.u_offset_potential),
-            _determined(d.tilt_north, d.u_tilt_north, step=_PER_KM),
-            _determined(d.tilt_east, d.u_tilt_east, step=_PER_KM),
+            _tilt(d.tilt_north, d.u_tilt_north),
+            _tilt(d.tilt_east, d.u_tilt_east),
             _beside(d.offset_above_height_reference, d.u),
         )
         for d in result.datums
@@ -109,8 +116,8 @@ def geoid_sheet(result: AdjustResult) -> Sheet:
         (
             words(g.id),
             _determined(g.bias, g.u),
-            _determined(g.tilt_north, g.u_tilt_north, step=_PER_KM),
-            _determined(g.tilt_east, g.u_tilt_east, step=_PER_KM),
+            _tilt(g.tilt_north, g.u_tilt_north),
+            _tilt(g.tilt_east, g.u_tilt_east),
         )
         for g in result.geoid_models
     ]

@@ -73,6 +73,7 @@ def net_picture(
     }
     _draw_lines(axes, at, lines, "lichen", 0.8, f"observed differences ({len(lines)})")
     _draw_lines(axes, at, suspected, "heather", 3.0, f"suspected ({len(suspected)})")
+    _ring(axes, at, suspected)
     looks = (
         ("points", [p for p in points if p.is_known and not p.has_clock], ".", "slate", "slate"),
         ("not determined", [p for p in points if not p.is_known], "x", "clay", "clay"),
@@ -120,6 +121,27 @@ def _draw_lines(
                 zorder=2,
             ),
             autolim=False,
+        )
+
+
+def _ring(axes: Axes, at: dict[str, tuple[float, float]], lines: Sequence[tuple[str, str]]) -> None:
+    """Ring the middle of lines: a short one between many points would not be seen."""
+    middles = [
+        np.mean([at[first], at[second]], axis=0)
+        for first, second in lines
+        if first in at and second in at
+    ]
+    if middles:
+        across, up = np.transpose(middles)
+        axes.plot(
+            across,
+            up,
+            "o",
+            markersize=16.0,
+            markerfacecolor="none",
+            markeredgecolor=LIGHT["heather"],
+            markeredgewidth=2.0,
+            zorder=5,
         )
 
 
