@@ -42,7 +42,7 @@ def cases(names):
 
 
 @pytest.mark.parametrize(("statistic", "gaps"), cases(STATISTICS))
-@settings(max_examples=5)
+@settings(max_examples=3)
 @given(seed=seeds, constant=constants)
 def test_an_added_constant_changes_nothing(statistic, gaps, seed, constant):
     tick, y = record(seed, gaps=gaps)
@@ -52,7 +52,7 @@ def test_an_added_constant_changes_nothing(statistic, gaps, seed, constant):
 
 
 @pytest.mark.parametrize("statistic", HADAMARD)
-@settings(max_examples=5)
+@settings(max_examples=3)
 @given(seed=seeds, drift=st.floats(-10.0, 10.0))
 def test_the_hadamard_family_sees_no_drift(statistic, seed, drift):
     tick, y = record(seed, gaps=False)
@@ -62,7 +62,7 @@ def test_the_hadamard_family_sees_no_drift(statistic, seed, drift):
 
 
 @pytest.mark.parametrize(("statistic", "gaps"), cases(STATISTICS))
-@settings(max_examples=5)
+@settings(max_examples=3)
 @given(seed=seeds, factor=constants)
 def test_a_factor_scales_by_its_size(statistic, gaps, seed, factor):
     tick, y = record(seed, gaps=gaps)
@@ -74,7 +74,7 @@ def test_a_factor_scales_by_its_size(statistic, gaps, seed, factor):
 
 
 @pytest.mark.parametrize("statistic", WITH_GAPS)
-@settings(max_examples=5)
+@settings(max_examples=3)
 @given(seed=seeds, ticks=st.integers(-(10**9), 10**9))
 def test_where_the_line_begins_changes_nothing(statistic, seed, ticks):
     tick, y = record(seed, gaps=True)
