@@ -26,7 +26,14 @@ from clockgeo.frequency.window_sums import (
 )
 from clockgeo.progress import track
 
-__all__ = ["CurvePoints", "TimeLine", "longest_factor", "total_points", "window_points"]
+__all__ = [
+    "CurvePoints",
+    "TimeLine",
+    "exponents_of",
+    "longest_factor",
+    "total_points",
+    "window_points",
+]
 
 _ENOUGH = 0.3
 """Share of all windows that must be complete for partly filled ones to be left aside."""
@@ -149,7 +156,7 @@ def _r(record: TimeLine, m: int) -> float | None:
     return (modified / triples / m**2) / (plain / pairs)
 
 
-def _exponents(record: TimeLine, factors: Sequence[int]) -> list[int]:
+def exponents_of(record: TimeLine, factors: Sequence[int]) -> list[int]:
     """Ruling exponents at all averaging times."""
     exponents, exponent = [], 0
     for m in factors:
@@ -186,7 +193,7 @@ def window_points(
     counts = np.array(count, dtype=np.int64)
     if not reached or not record.gapless:
         return _with_gaps(statistic, record, reached, interval, variance, counts, partial)
-    exponents = _exponents(record, factors)
+    exponents = exponents_of(record, factors)
     edf = [
         freedom_of(statistic, alpha, m, record.size)
         for alpha, m in zip(exponents, factors, strict=True)
@@ -233,7 +240,7 @@ def _with_gaps(
         list(factors),
         raw * (whole @ levels) / (expected @ levels),
         np.array(edf),
-        [LAW_OF_ALPHA[alpha] for alpha in _exponents(record, factors)],
+        [LAW_OF_ALPHA[alpha] for alpha in exponents_of(record, factors)],
         count,
         partial,
     )

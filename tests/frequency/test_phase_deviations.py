@@ -1,0 +1,52 @@
+"""Statistics of a time error with gaps through which it is continuous."""
+
+from __future__ import annotations
+
+import numpy as np
+import pytest
+
+from checks import assert_close
+from clockgeo.errors import DataError
+from clockgeo.frequency import TickSeries
+from clockgeo.frequency.deviations import stability_curve
+from clockgeo.frequency.phase_deviations import phase_stability_curve
+from clockgeo.frequency.stability_statistics import STATISTICS
+from frequency.power_laws import LAWS, power_law
+
+
+@pytest.mark.parametrize("statistic", STATISTICS)
+def test_a_complete_time_error_is_its_frequency(statistic, rng):
+    y = rng.standard_normal(200)
+    x = np.concatenate(([3.0], 3.0 + np.cumsum(y) * 0.5))
+    found = phase_stability_curve(TickSeries(np.arange(201), x), statistic, interval=0.5)
+    expected = stability_curve(TickSeries(np.arange(200), y), statistic, interval=0.5)
+    np.testing.assert_allclose(found.deviation, expected.deviation, rtol=1e-9)
+    np.testing.assert_array_equal(found.tau, expected.tau)
+
+
+@pytest.mark.parametrize("alpha", LAWS)
+@pytest.mark.parametrize("statistic", ["overlapping-allan", "overlapping-hadamard"])
+def test_time_errors_missing_at_random_leave_no_bias(alpha, statistic, rng):
+    # Against the complete record of the same draw, averaged: 25 % are there.
+    seen, whole = np.zeros(3), np.zeros(3)
+    tau = [1.0, 8.0, 64.0]
+    for _ in range(60):
+        x = np.cumsum(power_law(alpha, 8_192, rng))
+        tick = np.flatnonzero(rng.random(x.size) < 0.25)
+        part = phase_stability_curve(TickSeries(tick, x[tick]), statistic, interval=1.0, tau=tau)
+        all_ = TickSeries(np.arange(x.size), x)
+        seen += part.deviation**2
+        whole += phase_stability_curve(all_, statistic, interval=1.0, tau=tau).deviation ** 2
+        assert np.all((part.lower < part.deviation) & (part.deviation < part.upper))
+    for ratio in np.sqrt(seen / whole):
+        assert_close(ratio, 1.0, tolerance=0.06)  # four standard deviations of the sparsest
+
+
+def test_bad_time_errors_are_refused():
+    tick = np.array([0, 1, 3, 4, 6])
+    with pytest.raises(DataError, match="time errors are not finite"):
+        phase_stability_curve(TickSeries(tick, np.array([0.0, np.nan, 1, 2, 3])), interval=1.0)
+    with pytest.raises(DataError, match="no complete set of time errors"):
+        phase_stability_curve(
+            TickSeries(np.array([0, 1, 5, 6, 20]), np.arange(5.0) ** 2), interval=1.0, tau=[3.0]
+        )
