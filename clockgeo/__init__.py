@@ -13,9 +13,10 @@ when first used.
 
 from __future__ import annotations
 
-import importlib
-from importlib.metadata import PackageNotFoundError, version
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
+
+from clockgeo.faces import lazy_face
+from clockgeo.version import __version__
 
 if TYPE_CHECKING:
     from clockgeo.campaign import (
@@ -46,11 +47,6 @@ if TYPE_CHECKING:
         stability_picture,
         write_page,
     )
-
-try:
-    __version__ = version("clockgeo")
-except PackageNotFoundError:  # a source tree that was never installed
-    __version__ = "0+unknown"
 
 _HOMES = {
     # campaigns
@@ -115,13 +111,4 @@ __all__ = [
     "write_page",
 ]
 
-
-def __getattr__(name: str) -> Any:
-    if name not in _HOMES:
-        message = f"module {__name__!r} has no attribute {name!r}"
-        raise AttributeError(message)
-    return getattr(importlib.import_module(f"{__name__}.{_HOMES[name]}"), name)
-
-
-def __dir__() -> list[str]:
-    return sorted([*globals(), *_HOMES])
+__getattr__, __dir__ = lazy_face(__name__, _HOMES)

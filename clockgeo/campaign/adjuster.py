@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Collection
 from dataclasses import dataclass
 
-from clockgeo import __version__
 from clockgeo.campaign.adjust_results import AdjustResult
 from clockgeo.campaign.adjust_tables import (
     blunder_result,
@@ -37,6 +36,7 @@ from clockgeo.levelling.session_rows import (
 from clockgeo.network.adjustment import Adjustment, adjust_network
 from clockgeo.network.blunders import find_blunders
 from clockgeo.network.reliability import Reliability, reliability_of
+from clockgeo.version import __version__
 
 __all__ = ["Adjusted", "adjust"]
 

@@ -9,7 +9,6 @@ from pathlib import Path
 import numpy as np
 from numpy.typing import NDArray
 
-from clockgeo import __version__
 from clockgeo.campaign.correlating import closure_results, correlation_results
 from clockgeo.campaign.document import Document
 from clockgeo.campaign.evidence import Evidence
@@ -49,6 +48,7 @@ from clockgeo.levelling.session_rows import (
 from clockgeo.levelling.solution import Solution, solve
 from clockgeo.progress import track
 from clockgeo.times import iso_utc
+from clockgeo.version import __version__
 
 __all__ = ["Levelled", "level", "level_measured", "session_results"]
 

@@ -93,6 +93,10 @@ def _schema_of(kind: ResultKind) -> dict[str, Any]:
     from clockgeo.planning import PlanResult
     from clockgeo.tables import Table
 
-    models: dict[str, type[Table]] = {"level": LevelResult, "adjust": AdjustResult, "plan": PlanResult}
+    models: dict[str, type[Table]] = {
+        "level": LevelResult,
+        "adjust": AdjustResult,
+        "plan": PlanResult,
+    }
     schema = models[kind.value].model_json_schema(by_alias=True, mode="serialization")
     return {"$schema": "https://json-schema.org/draft/2020-12/schema", **schema}

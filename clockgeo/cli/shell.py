@@ -73,7 +73,7 @@ app = typer.Typer(
 
 def _version(asked: bool) -> None:
     if asked:
-        from clockgeo import __version__
+        from clockgeo.version import __version__
 
         typer.echo(f"clockgeo {__version__}")
         raise typer.Exit

@@ -5,8 +5,9 @@ Names are imported when first used, so that a command pays only for what it need
 
 from __future__ import annotations
 
-import importlib
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
+
+from clockgeo.faces import lazy_face
 
 if TYPE_CHECKING:
     from clockgeo.frequency.dead_time import dead_time_variance, uptime_windows
@@ -17,6 +18,7 @@ if TYPE_CHECKING:
     from clockgeo.frequency.mean import TickSeries, mean_covariance
     from clockgeo.frequency.noise import NoiseModel
     from clockgeo.frequency.noise_fit import NoiseFit, fit_noise
+    from clockgeo.frequency.phase_deviations import phase_stability_curve
     from clockgeo.frequency.ratio import exact_number, fractional_frequency, ratio_text
     from clockgeo.frequency.reading import read_record
     from clockgeo.frequency.record import Record, Source
@@ -36,6 +38,7 @@ _HOMES = {
     "uptime_windows": "dead_time",
     "StabilityCurve": "deviations",
     "stability_curve": "deviations",
+    "phase_stability_curve": "phase_deviations",
     "assess_stability": "stability",
     "NoiseFit": "noise_fit",
     "NoiseModel": "noise",
@@ -76,6 +79,7 @@ __all__ = [
     "dead_time_variance",
     "uptime_windows",
     "stability_curve",
+    "phase_stability_curve",
     "assess_stability",
     "NoiseFit",
     "NoiseModel",
@@ -106,13 +110,4 @@ __all__ = [
     "write_record",
 ]
 
-
-def __getattr__(name: str) -> Any:
-    if name not in _HOMES:
-        message = f"module {__name__!r} has no attribute {name!r}"
-        raise AttributeError(message)
-    return getattr(importlib.import_module(f"{__name__}.{_HOMES[name]}"), name)
-
-
-def __dir__() -> list[str]:
-    return sorted([*globals(), *_HOMES])
+__getattr__, __dir__ = lazy_face(__name__, _HOMES)

@@ -6,8 +6,9 @@ next to nothing.
 
 from __future__ import annotations
 
-import importlib
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
+
+from clockgeo.faces import lazy_face
 
 if TYPE_CHECKING:
     from clockgeo.gravity.caution import CAUTION
@@ -268,13 +269,4 @@ _HOME = {
 }
 """Public name -> module of this package that defines it."""
 
-
-def __getattr__(name: str) -> Any:
-    if name not in _HOME:
-        message = f"module {__name__!r} has no attribute {name!r}"
-        raise AttributeError(message)
-    return getattr(importlib.import_module(f"{__name__}.{_HOME[name]}"), name)
-
-
-def __dir__() -> list[str]:
-    return sorted(__all__)
+__getattr__, __dir__ = lazy_face(__name__, _HOME)

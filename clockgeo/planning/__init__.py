@@ -5,8 +5,9 @@ Names are imported when first used, so that a command pays only for what it need
 
 from __future__ import annotations
 
-import importlib
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
+
+from clockgeo.faces import lazy_face
 
 if TYPE_CHECKING:
     from clockgeo.planning.confirmation import confirm
@@ -48,13 +49,4 @@ __all__ = [
     "write_plan",
 ]
 
-
-def __getattr__(name: str) -> Any:
-    if name not in _HOMES:
-        message = f"module {__name__!r} has no attribute {name!r}"
-        raise AttributeError(message)
-    return getattr(importlib.import_module(f"{__name__}.{_HOMES[name]}"), name)
-
-
-def __dir__() -> list[str]:
-    return sorted([*globals(), *_HOMES])
+__getattr__, __dir__ = lazy_face(__name__, _HOMES)

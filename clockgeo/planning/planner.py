@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
-from clockgeo import __version__
 from clockgeo.campaign.document import Document
 from clockgeo.campaign.results import Conventions, Input, Provenance
 from clockgeo.campaign.schema import Session
@@ -31,6 +30,7 @@ from clockgeo.planning.tabulating import (
     term_lines,
 )
 from clockgeo.progress import track
+from clockgeo.version import __version__
 
 __all__ = ["Planned", "plan"]
 
@@ -112,13 +112,21 @@ def plan(document: Document, *, confirm_runs: int = 0, seed: int = 1) -> Planned
         costs=costs,
         optimum=best.result if best else None,
         confirmation=confirmation,
-        notes=tuple(_notes(costs, sessions)),
+        notes=(*_notes(costs, sessions), *_scatter_note(document, confirm_runs)),
         provenance=Provenance(
             version=__version__,
             inputs=(Input(path=document.path.name, sha256=sha256_of(document.path)),),
         ),
     )
     return Planned(result, prediction, sessions)
+
+
+def _scatter_note(document: Document, runs: int) -> Iterator[str]:
+    if runs and document.campaign.head.scatter == "estimate":
+        yield (
+            "levelling the simulated campaigns estimates excess scatter from a few sessions, which "
+            'makes results scatter more than a plan can foresee; scatter = "none" leaves it out'
+        )
 
 
 def _left_out(document: Document, best: BestUse | None) -> dict[str, PlanModel]:
