@@ -43,29 +43,21 @@ def command(
 
     Example: clockgeo adjust examples/four-datums/campaign.toml --out results/four-datums
     """
-    from clockgeo.campaign import (
-        adjust,
-        adjust_files,
-        prepare_folder,
-        read_document,
-        write_adjusted,
-    )
+    from clockgeo.campaign import adjust, adjust_files, read_document, write_adjusted
+    from clockgeo.cli.results import ResultPlace
     from clockgeo.cli.terminal import print_json, progress_shown, say
-    from clockgeo.report import PAGE, adjust_page, prepare_figures, write_figures, write_page
+    from clockgeo.report import adjust_page
 
     document = read_document(campaign)
     datums = [datum.id for datum in document.campaign.datums]
-    folder = prepare_folder(out, (*adjust_files(datums), PAGE), replace=force)
-    suffix = f".{figure_kind}"
-    if figures is not None:
-        prepare_figures(figures, suffix=suffix, replace=force)
+    place = ResultPlace.prepared(
+        out, adjust_files(datums), figures=figures, kind=figure_kind, replace=force
+    )
     with progress_shown(quiet=quiet or json):
         adjusted = adjust(document, without=without or (), skip_bad_rows=skip_bad_rows)
         page = adjust_page(adjusted.result)
-        written = write_adjusted(adjusted.result, folder, replace=force)
-        written.append(write_page(folder / PAGE, page, replace=force))
-        if figures is not None:
-            written += write_figures(page, figures, suffix=suffix, replace=force)
+        written = write_adjusted(adjusted.result, place.folder, replace=force)
+        written += place.write_page(page)
     if json:
         print_json(adjusted.result)
     elif not quiet:

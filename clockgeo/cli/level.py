@@ -40,23 +40,19 @@ def command(
 
     Example: clockgeo level examples/saddle/campaign.toml --out results/saddle
     """
-    from clockgeo.campaign import level, prepare_folder, read_document, write_result
+    from clockgeo.campaign import level, read_document, write_result
+    from clockgeo.cli.results import ResultPlace
     from clockgeo.cli.terminal import print_json, progress_shown, say
-    from clockgeo.report import PAGE, level_page, prepare_figures, write_figures, write_page
+    from clockgeo.report import level_page
 
     document = read_document(campaign)
-    names = ("result.json", "result.nc", PAGE)
-    folder = prepare_folder(out, names, replace=force)
-    suffix = f".{figure_kind}"
-    if figures is not None:
-        prepare_figures(figures, suffix=suffix, replace=force)
+    names = ("result.json", "result.nc")
+    place = ResultPlace.prepared(out, names, figures=figures, kind=figure_kind, replace=force)
     with progress_shown(quiet=quiet or json):
         levelled = level(document, without=without or (), skip_bad_rows=skip_bad_rows)
-        written = write_result(levelled.result, folder, replace=force)
+        written = write_result(levelled.result, place.folder, replace=force)
         page = level_page(levelled.result, levelled.evidence)
-        written.append(write_page(folder / PAGE, page, replace=force))
-        if figures is not None:
-            written += write_figures(page, figures, suffix=suffix, replace=force)
+        written += place.write_page(page)
     if json:
         print_json(levelled.result)
     elif not quiet:

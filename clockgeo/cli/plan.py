@@ -73,23 +73,19 @@ def command(
     Example: clockgeo plan examples/harrow-line/campaign.toml --out results/harrow-line
     """
     del preset  # acted upon before anything else
-    from clockgeo.campaign import prepare_folder, read_document
+    from clockgeo.campaign import read_document
+    from clockgeo.cli.results import ResultPlace
     from clockgeo.cli.terminal import print_json, progress_shown, say
     from clockgeo.planning import PLAN_FILES, plan, write_plan
-    from clockgeo.report import PAGE, plan_page, prepare_figures, write_figures, write_page
+    from clockgeo.report import plan_page
 
     document = read_document(campaign)
-    folder = prepare_folder(out, (*PLAN_FILES, PAGE), replace=force)
-    suffix = f".{figure_kind}"
-    if figures is not None:
-        prepare_figures(figures, suffix=suffix, replace=force)
+    place = ResultPlace.prepared(out, PLAN_FILES, figures=figures, kind=figure_kind, replace=force)
     with progress_shown(quiet=quiet or json):
         planned = plan(document, confirm_runs=confirm, seed=seed)
         page = plan_page(planned.result)
-        written = write_plan(planned.result, planned.sessions, folder, replace=force)
-        written.append(write_page(folder / PAGE, page, replace=force))
-        if figures is not None:
-            written += write_figures(page, figures, suffix=suffix, replace=force)
+        written = write_plan(planned.result, planned.sessions, place.folder, replace=force)
+        written += place.write_page(page)
     if json:
         print_json(planned.result)
     elif not quiet:
