@@ -32,10 +32,13 @@ _PAIR_WORK = 1e7
 """Rows of the net times rows whose pairs are tested, at most."""
 _PART = 100
 """Columns that are made at a time."""
-_KIN, _ALIKE = 150, 0.3
-"""Most rows that may explain what two suspects do, and their least correlation with one of them."""
+_KIN, _ALIKE, _AT_ALL = 150, 0.1, 0.02
+"""Most rows that may explain what suspects do, their least correlation with some suspect, and
+with the one that they are named with."""
 _HELD = 2e8
 """Numbers that the columns of all suspects may hold."""
+_EACH = 4.0
+"""χ² that each row of a pair must explain beside the other, to stand for one suspect."""
 _OTHER_PAIRS = 5000
 """Pairs that are looked at in place of two suspects, best first."""
 _TWINS = 10
@@ -265,10 +268,10 @@ def _alternatives(state: _State, limit: float) -> dict[int, list[int]]:
         near = (w[suspect] ** 2 - w**2 < _ODDS) & (sharpness > 0.0)
         left = np.abs(w[suspect] - alike * w) <= limit * np.sqrt(np.maximum(1.0 - alike**2, 1e-12))
         found[suspect].update(np.flatnonzero(near & left).tolist())
-    for first, second in list(combinations(state.rows, 2))[:_TWINS]:
-        instead = _other_pairs(state, first, second)
-        found[first] |= instead
-        found[second] |= instead
+    sets = [[one] for one in state.rows] + [list(two) for two in combinations(state.rows, 2)]
+    for suspects in sets[: len(state.rows) + _TWINS]:
+        for suspect, instead in _other_pairs(state, suspects).items():
+            found[suspect] |= instead
     return {one: sorted(rows.difference(state.rows)) for one, rows in found.items()}
 
 
@@ -282,33 +285,45 @@ def _alike(
     return np.where(sharpness > 0.0, np.clip(column / root, -1.0, 1.0), 0.0)
 
 
-def _other_pairs(state: _State, first: int, second: int) -> set[int]:
-    """Rows of pairs that explain the misfit of two suspects nearly as well as these do."""
-    others = _beside(state, [first, second])
+def _other_pairs(state: _State, suspects: list[int]) -> dict[int, set[int]]:
+    """Rows of pairs that explain the misfit of one or two suspects about as well as these do.
+
+    In place of one suspect, which is simpler, a pair must explain more, with each of its rows.
+    """
+    others, count = _beside(state, suspects), len(suspects)
     w, sharpness = others.residuals()
-    near_first, near_second = (
-        np.abs(_alike(others, state.columns[:, state.rows.index(one)], one, sharpness))
-        for one in (first, second)
+    columns = [state.columns[:, state.rows.index(one)] for one in suspects]
+    near = np.array(
+        [
+            np.abs(_alike(others, column, one, sharpness))
+            for one, column in zip(suspects, columns, strict=True)
+        ]
     )
-    if near_first[second] < _ALIKE:  # they do not hide each other: each is looked at alone
-        return set()
-    kin = np.maximum(near_first, near_second)
-    kin[[first, second]] = 2.0
+    kin = near.max(axis=0)
+    kin[suspects] = 2.0
     rows = np.argsort(-kin, kind="stable")[:_KIN]
     pairs = _pair_gains(others, w, sharpness, rows[kin[rows] > _ALIKE])
+    if count == 1:
+        stronger = np.maximum(*np.meshgrid(pairs.w**2, pairs.w**2))
+        good = (pairs.gain > pairs.w[0] ** 2) & (pairs.gain - stronger > _EACH)
+    else:
+        good = pairs.gain > pairs.gain[0, 1] - _ODDS
     # A pair with one of the suspects in it is another reading of the other one only.
-    near = np.triu(pairs.gain > pairs.gain[0, 1] - _ODDS, 1)
-    near[:2, :] = False
-    near[:, :2] = False
-    i, j = np.nonzero(near)
+    good[:count, :] = False
+    good[:, :count] = False
+    i, j = np.nonzero(np.triu(good, 1))
     best = np.argsort(-pairs.gain[i, j], kind="stable")[:_OTHER_PAIRS]
     i, j = i[best], j[best]
-    four = np.column_stack([np.zeros_like(i), np.ones_like(i), i, j])
-    alike = pairs.alike[four[:, :, None], four[:, None, :]]
-    own = pairs.w[four]
+    every = np.column_stack([*(np.full_like(i, place) for place in range(count)), i, j])
+    alike = pairs.alike[every[:, :, None], every[:, None, :]]
+    own = pairs.w[every]
     together = np.einsum("mi,mij,mj->m", own, np.linalg.pinv(alike, 1e-6, hermitian=True), own)
-    same = together - pairs.gain[i, j] <= stats.chi2.isf(_GLOBAL_ALPHA, 2)
-    return set(pairs.rows[np.unique(np.concatenate([i[same], j[same]]))].tolist())
+    same = together - pairs.gain[i, j] <= stats.chi2.isf(_GLOBAL_ALPHA, count)
+    instead = pairs.rows[np.unique(np.concatenate([i[same], j[same]]))]
+    return {
+        one: set(instead[own_near[instead] > _AT_ALL].tolist())
+        for one, own_near in zip(suspects, near, strict=True)
+    }
 
 
 def _beside(state: _State, left_out: list[int]) -> _State:
