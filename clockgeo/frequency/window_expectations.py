@@ -34,7 +34,7 @@ _NEIGHBOURS = 24
 """Edges on one side that are told to an edge; signs alternate, so that the rest cancels."""
 _ALL = 128
 """Number of edges up to which all are told to each other."""
-_DENSE = 512
+_DENSE = 800
 """Longest reach of two triangles in samples for which every phase counts as an edge."""
 
 
@@ -221,8 +221,8 @@ def expected_modified(
     blocks = min(m, BLOCKS)
     filling = np.empty(3 * blocks)
     shape = np.empty(3 * blocks)
-    place = np.empty(_EDGES + 4, dtype=np.int64)
-    size = np.empty(_EDGES + 4)
+    place = np.empty(_DENSE + _EDGES, dtype=np.int64)
+    size = np.empty(_DENSE + _EDGES)
     dense = 3 * m <= _DENSE
     for i in probes:
         n1 = 0.0
@@ -259,7 +259,7 @@ def expected_modified(
             low, high = max(starts[run], i), min(stops[run], end)
             run += 1
             total_edges += 2
-            if number >= _EDGES:
+            if number >= _EDGES and not dense:
                 continue
             before = 0.0
             if dense:
@@ -274,7 +274,7 @@ def expected_modified(
                 before = _triangles(float(high - 1 - i), m, n1, n2)
             place[number], size[number] = high, before
             number += 1
-        number = min(number, _FIRST) if number >= _EDGES else number
+        number = min(number, _FIRST) if number >= _EDGES and not dense else number
         reach = number if dense or number <= _ALL else _NEIGHBOURS
         white, phase = _of_edges(place, size, number, reach)
         if not dense:
