@@ -26,6 +26,8 @@ __all__ = ["Combination", "Contribution", "Fit", "Solution", "null_space", "solv
 Combination = Mapping[Any, float]
 """A linear combination of unknowns: name of the unknown -> coefficient."""
 
+_ROUNDING = 1e-8
+"""m² s⁻²: what arithmetic alone may leave of a number of some 10⁵ m² s⁻²."""
 _RANK_TOLERANCE = 1e-9
 """Relative size below which a singular value of a scaled matrix counts as zero."""
 
@@ -201,8 +203,8 @@ def _refuse_contradiction(
 ) -> None:
     """Residuals must lie in the range of T; what lies outside could not happen by chance."""
     spread = model.covariance() + np.outer(model.values, model.values) * 1e-24
-    root = np.sqrt(np.diag(spread))
-    root = np.where(root > 0.0, root, 1.0)
+    # A known number without u must not turn rounding into a contradiction.
+    root = np.maximum(np.sqrt(np.diag(spread)), _ROUNDING)
     explained = np.linalg.pinv(inverse, hermitian=True, rcond=1e-15) @ (inverse @ residuals)
     outside = np.abs(residuals - explained) / root
     if outside.size and outside.max() > 1e-3:
