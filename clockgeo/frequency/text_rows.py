@@ -195,8 +195,6 @@ def _fractional(
 
 def _allowed(column: pl.Series, layout: RecordLayout) -> NDArray[np.bool_]:
     """Rows whose flag is one of the stated ones, as text or as a number."""
-    import polars as pl
-
     stated = {str(flag) for flag in layout.valid_flags}
     numbers = {_number_or_none(flag) for flag in stated} - {None}
     good = [

@@ -26,7 +26,7 @@ def u_of(model, parts, weights, interval=60.0):
     ("weights", "printed"), [((-0.5, 1.0, -0.5), "1.2930e-17"), ((-1.0, 1.0, 0.0), "1.6063e-17")]
 )
 def test_five_days_each_with_a_floor(weights, printed):
-    """Local 5 d, gap 2 d, remote 5 d, gap 2 d, local 5 d; flicker floor 1e-17 (own spectral value)."""
+    """Local 5 d, gap 2 d, remote 5 d, gap 2 d, local 5 d; flicker floor 1e-17 (spectral route)."""
     parts = [session(0, 5), session(7, 5), session(14, 5)]
     assert_published(u_of(NoiseModel(flicker_fm=1e-17), parts, weights), printed)
 
