@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -17,6 +17,7 @@ __all__ = ["NoiseFit", "fit_noise"]
 
 _BLOCKS = 320
 _FEWEST_CONTRASTS = 12
+_SIGNIFICANT = 3.0
 _LAWS = ("flicker_fm", "random_walk_fm")
 _RATIOS = np.geomspace(3e-3, 1e6, 69)
 """Slow over white noise, in units of where the slow law begins to show; even in the logarithm."""
@@ -44,6 +45,9 @@ class NoiseFit:
         Upper end of the one-sided 95 % profile interval of the flicker floor (beside white noise).
     block_seconds : float
         Length of the blocks that were averaged first.
+    u_drift : float or None
+        Standard uncertainty of the model's linear drift in 1/s under the averaged noise; the model
+        holds a drift only where it is beyond three times that.
     """
 
     model: NoiseModel
@@ -52,6 +56,7 @@ class NoiseFit:
     information: dict[str, float]
     flicker_limit: float
     block_seconds: float
+    u_drift: float | None = None
 
 
 def fit_noise(series: Sequence[TickSeries], *, interval: float) -> NoiseFit:
@@ -95,6 +100,20 @@ def fit_noise(series: Sequence[TickSeries], *, interval: float) -> NoiseFit:
             allowed=f"At least {_FEWEST_CONTRASTS} more blocks than sessions",
             advice="State the instability of clocks and links instead",
         )
+    if _could_drift(blocks, len(series)):
+        # On contrasts that do not see a drift, which else would pass for slow noise.
+        across = contrasts.T @ blocks.seconds
+        blind = _fitted(blocks, contrasts @ linalg.null_space(across[None, :]), interval)
+        drift, u = _drift(blocks, len(series), blind.averaged, interval)
+        if abs(drift) > _SIGNIFICANT * u:
+            model = blind.model.model_copy(update={"drift": drift})
+            return replace(blind, model=model, u_drift=u)
+    return _fitted(blocks, contrasts, interval)
+
+
+def _fitted(blocks: _Blocks, contrasts: NDArray[np.float64], interval: float) -> NoiseFit:
+    """Fit and average the laws on contrasts."""
+    freedom = contrasts.shape[1]
     fits = {law: _two_laws(law, blocks, contrasts) for law in _LAWS}
     white_alone = fits["flicker_fm"].white_alone
     information = {"white_fm": white_alone.minus_two_log + _penalty(1, freedom)}
@@ -147,6 +166,11 @@ class _Blocks:
     place: NDArray[np.int64]
     session: NDArray[np.int64]
     width: float
+
+    @property
+    def seconds(self) -> NDArray[np.float64]:
+        """Middle of each block, from the first one."""
+        return np.asarray((self.place - self.place[0]) * self.width, dtype=np.float64)
 
 
 def _penalty(parameters: int, freedom: int) -> float:
@@ -225,6 +249,37 @@ def _difference(blocks: _Blocks) -> NDArray[np.float64]:
     share = np.where(early, -blocks.count, 0.0) / blocks.count[early].sum()
     late = ~early
     return np.asarray(share + np.where(late, blocks.count, 0.0) / blocks.count[late].sum())
+
+
+def _could_drift(blocks: _Blocks, sessions: int) -> bool:
+    """Whether a drift stands out even if all noise were white, which is the least its u can be."""
+    means = (blocks.session[:, None] == np.arange(sessions)).astype(np.float64)
+    weight = np.sqrt(blocks.count)
+    scale = float(np.ptp(blocks.seconds)) or 1.0
+    design = np.column_stack([means, blocks.seconds / scale]) * weight[:, None]
+    estimate, *_ = np.linalg.lstsq(design, blocks.y * weight, rcond=None)
+    misfit = blocks.y * weight - design @ estimate
+    freedom = max(blocks.y.size - design.shape[1], 1)
+    cofactor = np.linalg.pinv(design.T @ design)[-1, -1]
+    u = np.sqrt(float(misfit @ misfit) / freedom * cofactor)
+    return bool(abs(estimate[-1]) > _SIGNIFICANT * u)
+
+
+def _drift(
+    blocks: _Blocks, sessions: int, noise: NoiseModel, interval: float
+) -> tuple[float, float]:
+    """Common drift of all sessions beside their means, by generalised least squares; and its u."""
+    span = float(blocks.place.max() + 1) * blocks.width
+    covariance = block_kernel(noise, blocks.place, blocks.width, span)
+    covariance += np.diag(noise.white_fm**2 / interval / blocks.count)
+    means = (blocks.session[:, None] == np.arange(sessions)).astype(np.float64)
+    scale = float(np.ptp(blocks.seconds)) or 1.0
+    design = np.column_stack([means, blocks.seconds / scale])
+    # The kernel is defined up to a constant, which the means of the sessions take up.
+    factor = linalg.cho_factor(covariance + np.max(np.abs(covariance)) * np.ones_like(covariance))
+    cofactor = linalg.inv(design.T @ linalg.cho_solve(factor, design))
+    estimate = cofactor @ (design.T @ linalg.cho_solve(factor, blocks.y))
+    return float(estimate[-1] / scale), float(np.sqrt(cofactor[-1, -1]) / scale)
 
 
 def _session_contrasts(blocks: _Blocks, sessions: int) -> NDArray[np.float64]:

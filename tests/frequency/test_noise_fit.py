@@ -67,6 +67,32 @@ def test_what_does_not_show_may_still_be_there():
     assert fit.degrees_of_freedom > 4.0
 
 
+def test_a_drift_is_found_with_its_u_and_no_walk_is_made_of_it():
+    rng = np.random.default_rng(21)
+    model = NoiseModel(white_fm=1e-15)
+    seen = []
+    for _ in range(30):
+        fit = fit_noise(
+            [
+                TickSeries(one.tick, one.y + 4e-21 * 10.0 * one.tick)
+                for one in sessions(model, rng, uptime=0.9)
+            ],
+            interval=10.0,
+        )
+        seen.append(((fit.model.drift - 4e-21) / fit.u_drift, fit.model.random_walk_fm))
+    deviations, walks = np.array(seen).T
+    # Thirty draws know their spread to 13 %; u is averaged over a floor that may be there.
+    assert 0.5 < np.std(deviations) < 1.3
+    assert np.count_nonzero(walks) <= 6
+
+
+def test_no_drift_is_made_of_noise():
+    rng = np.random.default_rng(22)
+    model = NoiseModel(white_fm=1e-16, flicker_fm=3e-17)
+    fits = [fit_noise(sessions(model, rng), interval=10.0) for _ in range(20)]
+    assert sum(fit.model.drift != 0.0 for fit in fits) <= 2
+
+
 def test_servo_correlation_falls_into_blocks():
     """Neighbouring samples that a servo has made alike do not make the white level too small."""
     rng = np.random.default_rng(8)
