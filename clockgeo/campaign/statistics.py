@@ -252,15 +252,14 @@ def _group_covariance(group: Group, measured: Sequence[Measured]) -> NDArray[np.
 
 def _dead_time(campaign: Campaign, one: Measured) -> float:
     """Variance of carrying the session's uptime to its whole span with the links' flywheels."""
+    stated = [campaign.link(link).flywheel for link in one.session.links]
+    flywheels = [flywheel for flywheel in stated if flywheel is not None]
+    if not flywheels:
+        return 0.0
     tick, interval = one.series.tick, one.record.interval
     windows = uptime_windows(tick, interval)
     total = float(tick[-1] - tick[0] + 1) * interval
-    flywheels = [campaign.link(link).flywheel for link in one.session.links]
-    return sum(
-        dead_time_variance(flywheel, windows, total)
-        for flywheel in flywheels
-        if flywheel is not None
-    )
+    return sum(dead_time_variance(flywheel, windows, total) for flywheel in flywheels)
 
 
 def _overlaps(

@@ -15,7 +15,7 @@ from clockgeo.frequency.noise import NoiseModel
 
 __all__ = ["NoiseFit", "fit_noise"]
 
-_BLOCKS = 320
+_BLOCKS = 256
 _FEWEST_CONTRASTS = 12
 _SIGNIFICANT = 3.0
 _LAWS = ("flicker_fm", "random_walk_fm")

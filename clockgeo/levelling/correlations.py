@@ -87,5 +87,7 @@ def overlap_covariance(
     float
         σ² T_overlap/(T1 T2); for equal oscillators the correlation is T_overlap/√(T1 T2).
     """
+    if first[-1] < second[0] or second[-1] < first[0]:
+        return 0.0
     common = np.intersect1d(first, second, assume_unique=True).size * interval
     return float(white_fm**2 * common / (first.size * interval * second.size * interval))

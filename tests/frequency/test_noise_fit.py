@@ -74,16 +74,18 @@ def test_a_drift_is_found_with_its_u_and_no_walk_is_made_of_it():
     for _ in range(30):
         fit = fit_noise(
             [
-                TickSeries(one.tick, one.y + 4e-21 * 10.0 * one.tick)
+                TickSeries(one.tick, one.y + 4e-20 * 10.0 * one.tick)
                 for one in sessions(model, rng, uptime=0.9)
             ],
             interval=10.0,
         )
-        seen.append(((fit.model.drift - 4e-21) / fit.u_drift, fit.model.random_walk_fm))
+        if fit.u_drift is not None:
+            seen.append(((fit.model.drift - 4e-20) / fit.u_drift, fit.model.random_walk_fm))
+    assert len(seen) > 20
     deviations, walks = np.array(seen).T
-    # Thirty draws know their spread to 13 %; u is averaged over a floor that may be there.
-    assert 0.5 < np.std(deviations) < 1.3
-    assert np.count_nonzero(walks) <= 6
+    # Of Student's kind: wider than one; thirty draws know their spread to 13 %.
+    assert 0.5 < np.std(deviations) < 1.6
+    assert np.count_nonzero(walks) <= 3
 
 
 def test_no_drift_is_made_of_noise():
