@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from clockgeo.campaign.document import Document
-from clockgeo.campaign.measuring import Measured, measure
+from clockgeo.campaign.measuring import Measured, measure_all
 from clockgeo.campaign.networking import NetworkRows, add_network
 from clockgeo.campaign.plausibility import record_problems
 from clockgeo.campaign.statistics import SessionStatistics, session_statistics
@@ -23,7 +23,6 @@ from clockgeo.levelling.session_rows import (
     add_session_rows,
 )
 from clockgeo.network.zero_definition import ZeroRule
-from clockgeo.progress import track
 
 __all__ = ["Assembled", "SessionSide", "assemble"]
 
@@ -127,10 +126,7 @@ def _add_sessions(
     chosen = [
         session for session in campaign.sessions if session.measured and session.id not in left_out
     ]
-    measured = tuple(
-        measure(campaign, session, document.folder, skip_bad_rows=skip_bad_rows)
-        for session in track(chosen, "reading records")
-    )
+    measured = tuple(measure_all(campaign, chosen, document.folder, skip_bad_rows=skip_bad_rows))
     if not measured:
         return SessionSide((), (), None, np.zeros(0))
     problems = record_problems(measured)

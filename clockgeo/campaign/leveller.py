@@ -13,7 +13,7 @@ from clockgeo.campaign.correlating import closure_results, correlation_results
 from clockgeo.campaign.document import Document
 from clockgeo.campaign.evidence import Evidence
 from clockgeo.campaign.geodetic import compare, geodetic_numbers, geoid_path
-from clockgeo.campaign.measuring import Measured, measure
+from clockgeo.campaign.measuring import Measured, measure_all
 from clockgeo.campaign.plausibility import record_problems
 from clockgeo.campaign.results import (
     Conventions,
@@ -46,7 +46,6 @@ from clockgeo.levelling.session_rows import (
     add_session_rows,
 )
 from clockgeo.levelling.solution import Solution, solve
-from clockgeo.progress import track
 from clockgeo.times import iso_utc
 from clockgeo.version import __version__
 
@@ -110,10 +109,7 @@ def level(
         for session in chosen
         if not session.measured
     ]
-    measured = [
-        measure(campaign, session, document.folder, skip_bad_rows=skip_bad_rows)
-        for session in track(measured_ones, "reading records")
-    ]
+    measured = measure_all(campaign, measured_ones, document.folder, skip_bad_rows=skip_bad_rows)
     problems = record_problems(measured)
     if problems:
         raise CampaignError(problems, where=str(document.path))

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
 from fractions import Fraction
 from pathlib import Path
@@ -25,10 +27,12 @@ from clockgeo.frequency import (
 from clockgeo.levelling.session_rows import SessionMean
 from clockgeo.levelling.stations import Clock
 from clockgeo.levelling.tide_correction import TideCorrection, tide_correction
+from clockgeo.progress import track
 
 __all__ = [
     "Measured",
     "measure",
+    "measure_all",
     "measure_record",
     "nominal_frequency_of",
     "nominal_ratio_of",
@@ -193,6 +197,23 @@ def measure(
         skip_bad_rows=skip_bad_rows,
     )
     return measure_record(campaign, session, record, folder=folder)
+
+
+def measure_all(
+    campaign: Campaign, sessions: Sequence[Session], folder: Path, *, skip_bad_rows: bool = False
+) -> list[Measured]:
+    """Measure sessions in their order, two at a time; otherwise as `measure`.
+
+    Reading and screening spend their time in compiled code, so that a second session is worked on
+    while the first one waits.
+    """
+
+    def one(session: Session) -> Measured:
+        return measure(campaign, session, folder, skip_bad_rows=skip_bad_rows)
+
+    with ThreadPoolExecutor(max_workers=2) as workers:
+        done = workers.map(one, sessions)
+        return list(track(done, "reading records", len(sessions)))
 
 
 def measure_record(
