@@ -32,6 +32,8 @@ from clockgeo.levelling.session_rows import SessionMean, add_session_rows
 
 __all__ = ["Group", "SessionStatistics", "session_statistics"]
 
+_SCATTER_FROM = 4
+"""Sessions from which excess scatter between them can stand for a floor within them."""
 _MATTERS = 0.1
 """A link counts in the grouping where its deviation exceeds this share of the clocks'."""
 
@@ -46,7 +48,8 @@ class Group:
     members : tuple of int
         Places in the list of sessions.
     model : NoiseModel
-        What uncertainties follow: averaged over what the data allow, no less than stated.
+        What uncertainties follow, no less than stated: the likeliest where excess scatter between
+        sessions is estimated beside it, else averaged over what the data allow.
     likeliest : NoiseModel
         What is reported as the noise of the pair.
     fitted : bool
@@ -215,10 +218,15 @@ def _fitted(
         return Group(
             name, tuple(places), stated, stated, fitted=False, degrees_of_freedom=float("inf")
         )
+    scatters = campaign.head.scatter == "estimate" and len(measured) >= _SCATTER_FROM
     return Group(
         name,
         tuple(places),
-        _no_less_than_stated(fit.averaged, _stated_model(campaign, measured[places[0]])),
+        _no_less_than_stated(
+            # A floor that hides within sessions shows between them, as excess scatter.
+            fit.model if scatters else fit.averaged,
+            _stated_model(campaign, measured[places[0]]),
+        ),
         fit.model,
         fitted=True,
         degrees_of_freedom=fit.degrees_of_freedom,
