@@ -38,7 +38,7 @@ if TYPE_CHECKING:
         stability_curve,
     )
     from clockgeo.gravity import heights_of, open_geoid, tide_series
-    from clockgeo.planning import plan, simulate_records
+    from clockgeo.planning import plan, read_plan, simulate_records, write_plan
     from clockgeo.report import (
         adjust_page,
         level_page,
@@ -58,6 +58,8 @@ _HOMES = {
     "simulate_records": "planning",
     # results
     "read_result": "campaign",
+    "read_plan": "planning",
+    "write_plan": "planning",
     "write_result": "campaign",
     "result_dataset": "campaign",
     "adjusted_dataset": "campaign",
@@ -91,6 +93,8 @@ __all__ = [
     "plan",
     "simulate_records",
     "read_result",
+    "read_plan",
+    "write_plan",
     "write_result",
     "result_dataset",
     "adjusted_dataset",

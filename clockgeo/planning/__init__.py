@@ -11,7 +11,7 @@ from clockgeo.faces import lazy_face
 
 if TYPE_CHECKING:
     from clockgeo.planning.confirmation import confirm
-    from clockgeo.planning.output import PLAN_FILES, write_plan
+    from clockgeo.planning.output import PLAN_FILES, read_plan, write_plan
     from clockgeo.planning.planner import Planned, plan
     from clockgeo.planning.prediction import goals_of, plan_model
     from clockgeo.planning.requirement import averaging_time
@@ -28,6 +28,7 @@ _HOMES = {
     "goals_of": "prediction",
     "plan": "planner",
     "plan_model": "prediction",
+    "read_plan": "output",
     "simulate_records": "simulation",
     "simulate_sessions": "simulation",
     "write_plan": "output",
@@ -44,6 +45,7 @@ __all__ = [
     "goals_of",
     "plan",
     "plan_model",
+    "read_plan",
     "simulate_records",
     "simulate_sessions",
     "write_plan",

@@ -6,11 +6,12 @@ from collections.abc import Sequence
 from pathlib import Path
 
 from clockgeo.campaign.schema import Placed, Session
+from clockgeo.errors import DataError
 from clockgeo.files import json_text, write_dataset, write_text
 from clockgeo.planning.dataset import plan_dataset
 from clockgeo.planning.results import PlanResult
 
-__all__ = ["PLAN_FILES", "sessions_toml", "write_plan"]
+__all__ = ["PLAN_FILES", "read_plan", "sessions_toml", "write_plan"]
 
 PLAN_FILES = ("plan.json", "plan.nc", "sessions.toml")
 
@@ -30,6 +31,33 @@ def write_plan(
     write_dataset(paths[1], plan_dataset(result), replace=replace, classic=True)
     write_text(paths[2], sessions_toml(sessions), replace=replace)
     return paths
+
+
+def read_plan(path: str | Path) -> PlanResult:
+    """Read a `plan.json` back, checked against its schema.
+
+    Raises
+    ------
+    DataError
+        If the file is missing or is no plan of clockgeo.
+    """
+    from pydantic import ValidationError
+
+    path = Path(path)
+    path = path / PLAN_FILES[0] if path.is_dir() else path
+    try:
+        return PlanResult.model_validate_json(path.read_bytes())
+    except FileNotFoundError:
+        raise DataError(
+            "no plan here", value=path, advice="Run clockgeo plan with --out first"
+        ) from None
+    except ValidationError as error:
+        first = error.errors()[0]
+        raise DataError(
+            "not a plan of clockgeo",
+            value=f"{'.'.join(map(str, first['loc']))}: {first['msg']}",
+            where=str(path),
+        ) from None
 
 
 def sessions_toml(sessions: Sequence[Session]) -> str:
