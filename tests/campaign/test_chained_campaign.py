@@ -103,13 +103,13 @@ def test_other_frequencies_in_a_header_are_refused(example, tmp_path):
 
 
 def test_heights_and_their_correlation_cover_the_truth(example):
-    """Sixty drawn campaigns: chi-squared of both heights together, with their covariance."""
+    """Drawn campaigns: chi-squared of both heights together, with their covariance."""
     document = read_document(example)
     campaign: Campaign = document.campaign.model_copy(
         update={"head": document.campaign.head.model_copy(update={"tide": "none"})}
     )
-    squares, inside = [], 0
-    for seed in range(60):
+    squares, inside, runs = [], 0, 24
+    for seed in range(runs):
         drawn = simulate_sessions(campaign, np.random.default_rng(seed), tables=document.folder)
         measured = [
             measure_record(campaign, one.session, one.record(), folder=document.folder)
@@ -123,5 +123,5 @@ def test_heights_and_their_correlation_cover_the_truth(example):
         error = step @ (numbers - np.array([TRUTH[site.id] for site in result.sites]))
         squares.append(float(error @ np.linalg.solve(step @ matrix @ step.T, error)))
         inside += squares[-1] < 5.991  # 95 % point of chi-squared with two degrees of freedom
-    assert inside >= 60 * 0.95 - 3 * np.sqrt(60 * 0.95 * 0.05)
-    assert np.mean(squares) == pytest.approx(2.0, abs=4 * np.sqrt(4.0 / 60))
+    assert inside >= runs * 0.95 - 3 * np.sqrt(runs * 0.95 * 0.05)
+    assert np.mean(squares) == pytest.approx(2.0, abs=4 * np.sqrt(4.0 / runs))

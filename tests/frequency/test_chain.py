@@ -51,7 +51,7 @@ def test_the_printed_chain():
     assert reduced == Fraction("2.927e-14")
     ratio = chain.nominal_ratio * (1 + reduced)
     assert abs(ratio - RATIO) < Fraction(1, 10**27)
-    # A float steps by 2.2e-16 here: 1.5 times that, in height, is metres.
+    # One float steps by 2.2e-16 here; rounding to it alone is off by decimetres of height.
     assert abs(Fraction(float(ratio)) - RATIO) / RATIO > Fraction(1, 10**18)
 
 
