@@ -164,14 +164,7 @@ def _largest_departure(
 ) -> float:
     """Largest difference between the plane and the correction by geopotential numbers, m."""
     latitude, longitude = points.latitude[frame.points], points.longitude[frame.points]
-    sizes: dict[Term, NDArray[np.float64] | float] = {
-        "offset": 1.0,
-        "tilt_north": frame.north,
-        "tilt_east": frame.east,
-        "elevation": frame.values / frame.gravity,
-        "distance": np.hypot(frame.north, frame.east),
-    }
-    step = frame.gravity * sum((terms[term] or 0.0) * size for term, size in sizes.items())
+    step = frame.gravity * sum((terms[term] or 0.0) * size for term, size in frame.sizes.items())
     rigorous = normal_height(frame.values + step, latitude) - normal_height(frame.values, latitude)
     return float(np.max(np.abs(rigorous - operation.shift(latitude, longitude))))
 

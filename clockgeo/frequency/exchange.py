@@ -26,7 +26,7 @@ from clockgeo.times import SECOND_NS
 __all__ = ["ExchangeFolder", "read_exchange", "read_output", "write_exchange"]
 
 HEADERS = "*.yml"
-MJD_COLUMN, OUTPUT_COLUMN, FLAG_COLUMN, U_COLUMN = 1, 2, 3, 4
+MJD_COLUMN, OUTPUT_COLUMN, FLAG_COLUMN = 1, 2, 3
 VALID_FLAG, EXPERIMENTAL_FLAG = 2, 1
 
 
@@ -124,7 +124,8 @@ def read_output(
     Returns
     -------
     Record
-        `y` is the output Δ, epochs are starts of gates.
+        `y` is the output Δ, epochs are starts of gates. A systematic uncertainty in the fourth
+        column is not taken: it often repeats that of the header, and would count twice.
 
     Raises
     ------

@@ -53,6 +53,17 @@ class TermFrame:
     values: NDArray[np.float64]
     rows: tuple[str, ...]
 
+    @property
+    def sizes(self) -> dict[Term, NDArray[np.float64] | float]:
+        """How much of each term a point has: 1 for the offset, ways and heights in m."""
+        return {
+            "offset": 1.0,
+            "tilt_north": self.north,
+            "tilt_east": self.east,
+            "elevation": self.values / self.gravity,
+            "distance": np.hypot(self.north, self.east),
+        }
+
 
 def term_frame(
     name: str,
@@ -81,14 +92,7 @@ def _middle(latitude: NDArray[np.float64], longitude: NDArray[np.float64]) -> tu
 
 def term_entries(frame: TermFrame, names: Mapping[Term, Hashable]) -> list[Named]:
     """Entries -1, -north, -east ... of the terms in the rows of the frame."""
-    sizes: dict[Term, NDArray[np.float64] | float] = {
-        "offset": 1.0,
-        "tilt_north": frame.north,
-        "tilt_east": frame.east,
-        "elevation": frame.values / frame.gravity,
-        "distance": np.hypot(frame.north, frame.east),
-    }
-    return [(name, -np.asarray(sizes[term])) for term, name in names.items()]
+    return [(name, -np.asarray(frame.sizes[term])) for term, name in names.items()]
 
 
 def add_priors(

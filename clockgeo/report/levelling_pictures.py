@@ -2,10 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
 
 from clockgeo.campaign.evidence import Evidence
-from clockgeo.campaign.results import LevelResult
+from clockgeo.campaign.results import LevelResult, SessionResult
+from clockgeo.planning.results import PlannedSession
 from clockgeo.report.levelling_sheets import Solved, budget_pairs
 from clockgeo.report.numbers import duration, percentage, rounded, typeset, with_uncertainty
 from clockgeo.report.page import Picture
@@ -30,6 +31,7 @@ __all__ = [
     "record_pictures",
     "residual_pictures",
     "stability_pictures",
+    "timeline_sessions",
 ]
 
 
@@ -57,9 +59,9 @@ def campaign_map(result: Solved) -> Picture:
     )
 
 
-def campaign_timeline(result: Solved) -> Picture:
-    """When each clock was where."""
-    sessions = [
+def timeline_sessions(sessions: Iterable[SessionResult | PlannedSession]) -> list[TimelineSession]:
+    """Sessions, measured or planned, as the timeline draws them."""
+    return [
         TimelineSession(
             name=s.id,
             start=tai_from_iso(s.start),
@@ -68,11 +70,15 @@ def campaign_timeline(result: Solved) -> Picture:
             sites=(s.numerator_site, s.denominator_site),
             uptime=s.uptime,
         )
-        for s in result.sessions
+        for s in sessions
     ]
+
+
+def campaign_timeline(result: Solved) -> Picture:
+    """When each clock was where."""
     return Picture(
         id="timeline",
-        figure=timeline_picture(sessions),
+        figure=timeline_picture(timeline_sessions(result.sessions)),
         caption="One lane a clock. Blocks are sessions, filled as high as their uptime; lines "
         "under them are stays at a site.",
         alt="Timeline: "

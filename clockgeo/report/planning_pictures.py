@@ -5,13 +5,13 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 from clockgeo.planning.results import PlanResult, TargetResult
+from clockgeo.report.levelling_pictures import timeline_sessions
 from clockgeo.report.numbers import percentage, rounded
 from clockgeo.report.page import Picture
 from clockgeo.report.pictures.budget import budget_picture
 from clockgeo.report.pictures.places import MapSite, site_map
 from clockgeo.report.pictures.planning import alternatives_picture, reach_picture
-from clockgeo.report.pictures.timeline import TimelineSession, timeline_picture
-from clockgeo.times import tai_from_iso
+from clockgeo.report.pictures.timeline import timeline_picture
 
 __all__ = [
     "alternatives_pictures",
@@ -52,20 +52,9 @@ def plan_map(result: PlanResult) -> Picture:
 
 def plan_timeline(result: PlanResult) -> Picture:
     """When each clock is to be where."""
-    sessions = [
-        TimelineSession(
-            name=s.id,
-            start=tai_from_iso(s.start),
-            stop=tai_from_iso(s.stop),
-            clocks=(s.numerator_clock, s.denominator_clock),
-            sites=(s.numerator_site, s.denominator_site),
-            uptime=s.uptime,
-        )
-        for s in result.sessions
-    ]
     return Picture(
         id="timeline",
-        figure=timeline_picture(sessions),
+        figure=timeline_picture(timeline_sessions(result.sessions)),
         caption="One lane a clock. Blocks are sessions, filled as high as their expected uptime; "
         "lines under them are stays at a site, dotted ones are moves.",
         alt="Timeline: "
