@@ -44,5 +44,6 @@ def test_the_tutorial_runs(project, tmp_path):
         "stability.png",
         "result.json",
         "result.nc",
+        "correlations.csv",
         "report.html",
     }

@@ -60,6 +60,7 @@ def test_the_main_job_runs_as_written(readme, place):
     assert {path.name for path in (place / "results" / "saddle").iterdir()} == {
         "result.json",
         "result.nc",
+        "correlations.csv",
         "report.html",
     }
 

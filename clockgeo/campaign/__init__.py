@@ -18,7 +18,13 @@ if TYPE_CHECKING:
     from clockgeo.campaign.evidence import Evidence
     from clockgeo.campaign.leveller import Levelled, level, level_measured
     from clockgeo.campaign.measuring import Measured, measure, measure_record
-    from clockgeo.campaign.output import prepare_folder, read_result, result_dataset, write_result
+    from clockgeo.campaign.output import (
+        LEVEL_FILES,
+        prepare_folder,
+        read_result,
+        result_dataset,
+        write_result,
+    )
     from clockgeo.campaign.results import LevelResult
     from clockgeo.campaign.schema import Campaign
 
@@ -42,6 +48,7 @@ _HOMES = {
     "level_measured": "leveller",
     "measure": "measuring",
     "measure_record": "measuring",
+    "LEVEL_FILES": "output",
     "prepare_folder": "output",
     "read_document": "document",
     "read_result": "output",
@@ -51,6 +58,7 @@ _HOMES = {
 """Public name -> module of this package that defines it."""
 
 __all__ = [
+    "LEVEL_FILES",
     "AdjustResult",
     "Adjusted",
     "adjust",

@@ -191,8 +191,8 @@ def level_measured(
         ),
         scatter=statistics.scatter,
         noise=statistics.noise_results(measured),
-        correlations=tuple(correlation_results(means, model)),
-        closures=tuple(closure_results(means, model)),
+        correlations=tuple(correlation_results(means, solution, solved, pairs)),
+        closures=tuple(closure_results(means, solution)),
         comparison=tuple(compare(campaign, solution, pairs, geodetic)),
         notes=(*notes, *statistics.notes),
         provenance=Provenance(

@@ -1,4 +1,4 @@
-"""Results on disk: `result.json` and CF netCDF, whole or not at all."""
+"""Results on disk: `result.json`, CF netCDF, correlations as CSV; whole or not at all."""
 
 from __future__ import annotations
 
@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from clockgeo.campaign.adjust_results import ADJUST_SCHEMA, AdjustResult
+from clockgeo.campaign.correlation_output import correlations_csv, with_correlations
 from clockgeo.campaign.results import LEVEL_SCHEMA, LevelResult
 from clockgeo.errors import DataError, OutputError
 from clockgeo.files import json_text, write_dataset, write_text
@@ -16,10 +17,20 @@ from clockgeo.files import json_text, write_dataset, write_text
 if TYPE_CHECKING:
     import xarray as xr
 
-__all__ = ["prepare_folder", "read_result", "result_dataset", "without_empty", "write_result"]
+__all__ = [
+    "LEVEL_FILES",
+    "prepare_folder",
+    "read_result",
+    "result_dataset",
+    "without_empty",
+    "write_result",
+]
 
 RESULT_JSON = "result.json"
 RESULT_NETCDF = "result.nc"
+CORRELATIONS_CSV = "correlations.csv"
+LEVEL_FILES = (RESULT_JSON, RESULT_NETCDF, CORRELATIONS_CSV)
+"""What `write_result` writes."""
 
 
 def prepare_folder(folder: str | Path, names: tuple[str, ...], *, replace: bool) -> Path:
@@ -54,11 +65,18 @@ def prepare_folder(folder: str | Path, names: tuple[str, ...], *, replace: bool)
 
 
 def write_result(result: LevelResult, folder: Path, *, replace: bool = False) -> list[Path]:
-    """Write `result.json` and `result.nc` into `folder`; return their paths."""
-    json_path, netcdf_path = folder / RESULT_JSON, folder / RESULT_NETCDF
-    write_text(json_path, json_text(result), replace=replace)
-    write_dataset(netcdf_path, result_dataset(result), replace=replace, classic=True)
-    return [json_path, netcdf_path]
+    """Write `LEVEL_FILES` into `folder`; return their paths.
+
+    Raises
+    ------
+    OutputError
+        If a file cannot be written, or exists and `replace` is false.
+    """
+    write_text(folder / RESULT_JSON, json_text(result), replace=replace)
+    dataset = with_correlations(result_dataset(result), result)
+    write_dataset(folder / RESULT_NETCDF, without_empty(dataset), replace=replace, classic=True)
+    write_text(folder / CORRELATIONS_CSV, correlations_csv(result), replace=replace)
+    return [folder / name for name in LEVEL_FILES]
 
 
 def read_result(path: str | Path) -> LevelResult | AdjustResult:

@@ -7,6 +7,8 @@ says why.
 
 from __future__ import annotations
 
+from typing import Literal
+
 from pydantic import ConfigDict, Field
 
 from clockgeo.gravity.tide_systems import TideSystem
@@ -147,10 +149,13 @@ class EffectLine(Table):
 
 
 class CorrelationResult(Table):
-    """Correlation coefficient of the means of two sessions, and what it comes from."""
+    """Correlation coefficient of two quantities of one kind, and what it comes from."""
 
+    kind: Literal["session", "geopotential_number", "difference"]
+    """Means of two sessions; numbers of two sites (and with them their heights); differences."""
     first: str
     second: str
+    """Ids of sessions or sites, or `to - from` of differences."""
     coefficient: float
     parts: dict[str, float]
     """Shared effect or cause -> its part; the parts add up to the coefficient."""
@@ -169,7 +174,8 @@ class ClosureResult(Table):
     normalised: float | None
     """Misclosure over its u; null for an identity."""
     verdict: str
-    """closes; does not close (beyond 3 u); or identity: made of the same data, no check."""
+    """closes; does not close (beyond 3 u); or identity: it follows from its own sessions, or from
+    the loops before it, because they are made of the same data; no check."""
 
 
 class FitResult(Table):

@@ -35,19 +35,18 @@ def command(
 ) -> None:
     """Turn a campaign's records into potential differences and heights.
 
-    Writes result.json, result.nc and report.html into the folder given with --out, and the page's
-    pictures as files into the folder given with --figures.
+    Writes result.json, result.nc, correlations.csv and report.html into the folder given with
+    --out, and the page's pictures as files into the folder given with --figures.
 
     Example: clockgeo level examples/saddle/campaign.toml --out results/saddle
     """
-    from clockgeo.campaign import level, read_document, write_result
+    from clockgeo.campaign import LEVEL_FILES, level, read_document, write_result
     from clockgeo.cli.results import ResultPlace
     from clockgeo.cli.terminal import print_json, progress_shown, say
     from clockgeo.report import level_page
 
     document = read_document(campaign)
-    names = ("result.json", "result.nc")
-    place = ResultPlace.prepared(out, names, figures=figures, kind=figure_kind, replace=force)
+    place = ResultPlace.prepared(out, LEVEL_FILES, figures=figures, kind=figure_kind, replace=force)
     with progress_shown(quiet=quiet or json):
         levelled = level(document, without=without or (), skip_bad_rows=skip_bad_rows)
         written = write_result(levelled.result, place.folder, replace=force)
@@ -64,7 +63,7 @@ def command(
 def _tell(result: LevelResult, *, verbose: bool) -> None:
     """Print the answer, the sessions, the comparison and, if asked, the whole budget."""
     from clockgeo.cli.terminal import say, show_table
-    from clockgeo.report.numbers import in_units_of, with_uncertainty
+    from clockgeo.report.numbers import in_units_of, signed_names, with_uncertainty
 
     conventions = result.conventions
     say(f"{result.name}")
@@ -135,10 +134,7 @@ def _tell(result: LevelResult, *, verbose: bool) -> None:
             ["sessions", "misclosure", "in u", "verdict"],
             [
                 (
-                    " ".join(
-                        f"{'+' if sign > 0 else '-'}{name}"
-                        for name, sign in zip(one.sessions, one.signs, strict=True)
-                    ),
+                    signed_names(one.sessions, one.signs),
                     with_uncertainty(one.misclosure, one.u) if one.u else "0",
                     "" if one.normalised is None else f"{one.normalised:+.2f}",
                     one.verdict,

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from itertools import combinations
 
 import numpy as np
 from numpy.typing import NDArray
@@ -48,7 +49,10 @@ def mean_covariance(
     interval: float,
     span: float | None = None,
 ) -> NDArray[np.float64]:
-    """Covariance of the plain means of several gapped series of one oscillator pair.
+    """Covariance of the plain means of several gapped series of one oscillator or pair.
+
+    Series may overlap; what they have in common is then the same noise. For white FM the
+    correlation is T_overlap/√(T1 T2).
 
     Notes
     -----
@@ -61,7 +65,7 @@ def mean_covariance(
     if span is None:
         span = (last - first + 1) * interval
     counts = np.array([one.tick.size for one in series], dtype=np.float64)
-    covariance = np.diag(model.h0 / (2.0 * counts * interval))
+    covariance = _white_part(model, series, counts * interval, interval)
     if model.white_pm or model.flicker_pm:
         runs = np.array([1 + np.count_nonzero(np.diff(one.tick) > 1) for one in series])
         variance = (model.white_pm**2 + model.flicker_pm**2) / 3.0
@@ -71,6 +75,26 @@ def mean_covariance(
         kernel = block_kernel(model, places, width * interval, span)
         covariance += weights @ kernel @ weights.T
     return covariance
+
+
+def _white_part(
+    model: NoiseModel, series: Sequence[TickSeries], seconds: NDArray[np.float64], interval: float
+) -> NDArray[np.float64]:
+    """White FM of means over `seconds` of valid time each, and of what they have in common."""
+    covariance = np.diag(model.h0 / (2.0 * seconds))
+    if model.h0:
+        for i, j in combinations(range(len(series)), 2):
+            common = _common_ticks(series[i].tick, series[j].tick) * interval
+            covariance[i, j] = covariance[j, i] = (
+                model.h0 / 2.0 * common / (seconds[i] * seconds[j])
+            )
+    return covariance
+
+
+def _common_ticks(first: NDArray[np.int64], second: NDArray[np.int64]) -> int:
+    if first[-1] < second[0] or second[-1] < first[0]:
+        return 0
+    return int(np.intersect1d(first, second, assume_unique=True).size)
 
 
 @dataclass(frozen=True, eq=False)

@@ -1,7 +1,8 @@
 """Closed loops of clock sessions: what must add up to zero, and whether it does.
 
 A session joins two ends, each a clock at a site; around a loop numbers and nominal-ratio errors
-cancel. A loop whose sum has no variance is an identity, made of the same data, and checks nothing.
+cancel. A loop whose sum has no variance beyond that of the loops before it is an identity, made of
+the same data, and checks nothing.
 """
 
 from __future__ import annotations
@@ -11,6 +12,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from clockgeo.levelling.linear_model import LinearModel
 from clockgeo.levelling.session_rows import SessionMean
@@ -18,7 +20,7 @@ from clockgeo.levelling.session_rows import SessionMean
 __all__ = ["Closure", "closures_of"]
 
 _NOTHING = 1e-9
-"""Share of the variances of its sessions below which a loop's own counts as none."""
+"""Share of the variances of its sessions below which what a loop adds counts as none."""
 
 End = tuple[str, str]
 
@@ -35,7 +37,8 @@ class Closure:
     misclosure, u : float
         Signed sum and its standard uncertainty with all shared effects, m² s⁻².
     identity : bool
-        Whether the loop closes by construction.
+        Whether its sum is fixed by its own sessions or by the loops before it: together they have
+        fewer independent sums than loops.
     """
 
     sessions: tuple[str, ...]
@@ -69,14 +72,14 @@ def closures_of(means: Sequence[SessionMean], model: LinearModel) -> list[Closur
         if mean.id in place
     }
     tree: dict[str, tuple[End, End]] = {}
-    found = []
+    loops = []
     for session, (start, stop) in edges.items():
         path = _path(tree, stop, start)
         if path is None:
             tree[session] = (start, stop)
         else:
-            found.append(_closed(model, place, [(session, 1), *path]))
-    return found
+            loops.append([(session, 1), *path])
+    return _closed(model, place, loops)
 
 
 def _path(tree: dict[str, tuple[End, End]], start: End, goal: End) -> list[tuple[str, int]] | None:
@@ -100,17 +103,33 @@ def _path(tree: dict[str, tuple[End, End]], start: End, goal: End) -> list[tuple
     return path[::-1]
 
 
-def _closed(model: LinearModel, place: dict[str, int], path: list[tuple[str, int]]) -> Closure:
-    rows = [place[session] for session, _ in path]
-    signs = np.array([sign for _, sign in path], dtype=np.float64)
-    noise = model.noise[rows][:, rows]
-    loads = model.loading[rows]
-    variance = float(signs @ (noise @ signs)) + float(np.sum((loads.T @ signs) ** 2))
-    whole = float(noise.diagonal().sum() + loads.multiply(loads).sum())
-    return Closure(
-        sessions=tuple(session for session, _ in path),
-        signs=tuple(sign for _, sign in path),
-        misclosure=float(signs @ model.values[rows]),
-        u=float(np.sqrt(max(variance, 0.0))),
-        identity=variance <= _NOTHING * whole,
-    )
+def _closed(
+    model: LinearModel, place: dict[str, int], loops: Sequence[Sequence[tuple[str, int]]]
+) -> list[Closure]:
+    signs = np.zeros((len(loops), len(model.rows)))
+    for number, loop in enumerate(loops):
+        for session, sign in loop:
+            signs[number, place[session]] = sign
+    loads = np.asarray(signs @ model.loading.toarray())
+    covariance = np.asarray(signs @ (model.noise @ signs.T)) + loads @ loads.T
+    single = model.noise.diagonal() + model.loading.multiply(model.loading).sum(axis=1)
+    whole = np.abs(signs) @ np.asarray(single).ravel()
+    return [
+        Closure(
+            sessions=tuple(session for session, _ in loop),
+            signs=tuple(sign for _, sign in loop),
+            misclosure=float(signs[number] @ model.values),
+            u=float(np.sqrt(max(covariance[number, number], 0.0))),
+            identity=_added(covariance, number) <= _NOTHING * whole[number],
+        )
+        for number, loop in enumerate(loops)
+    ]
+
+
+def _added(covariance: NDArray[np.float64], number: int) -> float:
+    """Variance of one loop's sum that the loops before it do not explain."""
+    before = covariance[:number, :number]
+    across = covariance[:number, number]
+    scale = max(float(np.max(np.diag(before), initial=0.0)), 1e-300)
+    explained = across @ np.linalg.pinv(before / scale, hermitian=True) @ across / scale
+    return float(covariance[number, number] - explained)

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from clockgeo.campaign.adjust_results import AdjustResult, ObservationResult
-from clockgeo.report.numbers import rounded
+from clockgeo.report.numbers import rounded, signed_names
 from clockgeo.report.sheets import Cell, Sheet, count, measured, plain, words
 
 __all__ = [
@@ -225,12 +225,7 @@ def loop_sheet(result: AdjustResult) -> Sheet:
     ]
     rows = [
         (
-            words(
-                " ".join(
-                    f"{'+' if sign > 0 else '−'}{name}"
-                    for name, sign in zip(loop.observations, loop.signs, strict=True)
-                )
-            ),
+            words(signed_names(loop.observations, loop.signs)),
             measured(loop.misclosure, loop.u),
             plain(f"{loop.standardised:+.2f}", loop.standardised),
         )

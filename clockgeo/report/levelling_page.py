@@ -8,6 +8,7 @@ from pathlib import Path
 from clockgeo.campaign.evidence import Evidence
 from clockgeo.campaign.results import Comparison, DifferenceResult, LevelResult, SiteResult
 from clockgeo.report import levelling_sheets as sheets
+from clockgeo.report.correlation_sheets import closure_sheet, correlation_sheets
 from clockgeo.report.levelling_pictures import (
     budget_pictures,
     campaign_map,
@@ -178,7 +179,11 @@ def _sections(result: LevelResult, evidence: Evidence) -> Iterator[Section]:
         "correlations",
         "Correlations",
         paragraphs=(_USE_THE_COVARIANCE,),
-        parts=(*correlation_pictures(result), sheets.correlation_sheet(result)),
+        parts=(
+            *correlation_pictures(result),
+            sheets.covariance_sheet(result),
+            *correlation_sheets(result),
+        ),
     )
     if result.comparison:
         yield Section(
@@ -190,7 +195,10 @@ def _sections(result: LevelResult, evidence: Evidence) -> Iterator[Section]:
         "fit",
         "Do the sessions agree?",
         paragraphs=tuple(_fit_words(result)),
-        parts=tuple(residual_pictures(result)),
+        parts=(
+            *residual_pictures(result),
+            *([closure_sheet(result)] if result.closures else []),
+        ),
     )
     yield Section(
         "conventions", "Conventions and constants", parts=(sheets.convention_sheet(result),)

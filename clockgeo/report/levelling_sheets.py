@@ -17,7 +17,7 @@ __all__ = [
     "budget_sheets",
     "comparison_sheet",
     "convention_sheet",
-    "correlation_sheet",
+    "covariance_sheet",
     "difference_sheet",
     "input_sheet",
     "mean_sheet",
@@ -226,7 +226,7 @@ def budget_sheets(result: Solved) -> Iterator[tuple[tuple[str, str], Sheet]]:
         yield pair, Sheet.of(f"budget-{number}", caption, columns, rows)
 
 
-def correlation_sheet(result: Solved) -> Sheet:
+def covariance_sheet(result: Solved) -> Sheet:
     """Covariance of the geopotential numbers."""
     order = result.covariance.order
     columns: list[tuple[str, str | tuple[str, str]]] = [("site", "site")]

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import csv
 import json
 
 import numpy as np
@@ -33,7 +34,35 @@ def test_json_comes_back_as_it_went(result, tmp_path):
 def test_netcdf_comes_back_as_it_went(result, tmp_path):
     write_result(result, tmp_path)
     with xr.open_dataset(tmp_path / "result.nc") as stored:
-        xr.testing.assert_equal(stored.load().drop_attrs(), result_dataset(result).drop_attrs())
+        same = stored.load()[list(result_dataset(result).variables)]
+        xr.testing.assert_equal(same.drop_attrs(), result_dataset(result).drop_attrs())
+
+
+def test_correlations_come_out_with_their_causes(result, tmp_path):
+    write_result(result, tmp_path)
+    with (tmp_path / "correlations.csv").open(encoding="utf-8", newline="") as lines:
+        rows = list(csv.DictReader(lines))
+    sessions = [one for one in result.correlations if one.kind == "session"]
+    assert sessions
+    for one in sessions:
+        mine = [
+            row
+            for row in rows
+            if (row["kind"], row["first"], row["second"]) == (one.kind, one.first, one.second)
+        ]
+        assert {row["cause"] for row in mine} == set(one.parts)
+        total = sum(float(row["part (1)"]) for row in mine)
+        assert total == pytest.approx(one.coefficient, abs=1e-12)
+    with xr.open_dataset(tmp_path / "result.nc") as stored:
+        matrix = stored["session_correlation"].to_numpy()
+        order = stored["other_session"].to_numpy().astype(str).tolist()
+        loops = stored.sizes.get("loop", 0)
+        misclosures = stored["misclosure"].to_numpy() if loops else []
+    one = sessions[0]
+    assert matrix[order.index(one.first), order.index(one.second)] == one.coefficient
+    assert np.all(np.diag(matrix) == 1.0)
+    assert np.allclose(matrix, matrix.T)
+    assert list(misclosures) == [one.misclosure for one in result.closures]
 
 
 def test_every_variable_has_a_unit_or_is_text(result):

@@ -6,16 +6,22 @@ import numpy as np
 import pytest
 
 from clockgeo.campaign import Campaign, level_measured, measure_record
-from clockgeo.frequency import NoiseModel, Record, dead_time_variance, uptime_windows
+from clockgeo.frequency import (
+    NoiseModel,
+    Record,
+    TickSeries,
+    dead_time_variance,
+    mean_covariance,
+    uptime_windows,
+)
 from clockgeo.times import SECOND_NS, tai_from_iso
 
 START = tai_from_iso("2027-05-03T00:00:00Z")
 
 
-def campaign(sessions, links=()):
-    clocks = [
-        {"id": name, "transition": "87Sr", "instability": {"white_fm": 1e-15}} for name in "abc"
-    ]
+def campaign(sessions, links=(), *, clocks="abc", floor=0.0, sites=("home",)):
+    instability = {"white_fm": 1e-15, "flicker_fm": floor}
+    clocks = [{"id": name, "transition": "87Sr", "instability": instability} for name in clocks]
     return Campaign.model_validate(
         {
             "campaign": {
@@ -25,7 +31,8 @@ def campaign(sessions, links=()):
                 "scatter": "none",
             },
             "site": [
-                {"id": "home", "latitude": 50.0, "longitude": 8.0, "geopotential_number": 0.0}
+                {"id": "home", "latitude": 50.0, "longitude": 8.0, "geopotential_number": 0.0},
+                *({"id": name, "latitude": 50.0, "longitude": 9.0} for name in sites[1:]),
             ],
             "clock": clocks,
             "link": list(links),
@@ -51,32 +58,99 @@ def record(rng, ticks, *, name="r", white=WHITE):
     return Record(name, tick * 10 * SECOND_NS, y, np.ones(tick.size, bool), 10.0, tick)
 
 
-def solved(document, records, folder):
+def levelled(document, records, folder):
     measured = [
         measure_record(document, session, one, folder=folder)
         for session, one in zip(document.sessions, records, strict=True)
     ]
-    return level_measured(document, measured, folder=folder).result
+    return level_measured(document, measured, folder=folder)
+
+
+def solved(document, records, folder):
+    return levelled(document, records, folder).result
+
+
+def white_covariance(found, share, overlap, first, second):
+    """Least fitted white noise of two pairs, of which `share` is common during `overlap` s."""
+    white = min(group.model.white_fm for group in found.evidence.groups)
+    return share * white**2 * overlap / (first * second)
+
+
+def covariance_of_sessions(result):
+    (pair,) = [one for one in result.correlations if one.kind == "session"]
+    first, second = (one.u_statistical for one in result.sessions)
+    return pair.coefficient * first * second
 
 
 def test_pairs_with_a_common_clock_are_correlated_while_they_overlap(rng, tmp_path):
     document = campaign([("a", "c"), ("b", "c")])
     records = [record(rng, range(6000)), record(rng, range(3000, 9000))]
-    result = solved(document, records, tmp_path)
-    (pair,) = result.correlations
-    # Half of each variance is the common clock's, half of the time is common: a quarter.
-    expected = (
-        0.25
-        * (1e-15**2 * 2 / 60_000)
-        / (result.sessions[0].u_statistical * result.sessions[1].u_statistical)
-    )
-    assert pair.parts["noise of clocks and links"] == pytest.approx(expected, rel=1e-6)
+    found = levelled(document, records, tmp_path)
+    # Half of each variance is the common clock's, half of the time is common.
+    expected = white_covariance(found, 0.5, 30_000.0, 60_000.0, 60_000.0)
+    assert covariance_of_sessions(found.result) == pytest.approx(expected, rel=1e-9)
 
 
 def test_pairs_that_do_not_overlap_are_not(rng, tmp_path):
     document = campaign([("a", "c"), ("b", "c")])
     records = [record(rng, range(3000)), record(rng, range(3000, 6000))]
     assert solved(document, records, tmp_path).correlations == ()
+
+
+def test_overlap_counts_time_where_intervals_differ(rng, tmp_path):
+    document = campaign([("a", "c"), ("b", "c")])
+    coarse = record(rng, range(6000))
+    tick = START // (5 * SECOND_NS) + np.arange(6000, 18_000)
+    y = WHITE / np.sqrt(5.0) * rng.standard_normal(tick.size)
+    fine = Record("fine", tick * 5 * SECOND_NS, y, np.ones(tick.size, bool), 5.0, tick)
+    found = levelled(document, [coarse, fine], tmp_path)
+    expected = white_covariance(found, 0.5, 30_000.0, 60_000.0, 60_000.0)
+    assert covariance_of_sessions(found.result) == pytest.approx(expected, rel=1e-9)
+
+
+def test_a_link_at_work_for_two_pairs_correlates_them(rng, tmp_path):
+    link = {"id": "span", "instability": {"white_fm": 3e-15}}
+    document = campaign([("a", "b"), ("c", "d")], [link], clocks="abcd")
+    white = (2.0 + 9.0) ** 0.5 * 1e-15
+    records = [record(rng, range(6000), white=white) for _ in range(2)]
+    found = levelled(document, records, tmp_path)
+    expected = white_covariance(found, 9.0 / 11.0, 60_000.0, 60_000.0, 60_000.0)
+    assert covariance_of_sessions(found.result) == pytest.approx(expected, rel=1e-9)
+
+
+def test_the_floor_of_a_common_clock_correlates_pairs_that_do_not_overlap(rng, tmp_path):
+    document = campaign([("a", "c"), ("b", "c")], floor=1e-17)
+    records = [record(rng, range(3000)), record(rng, range(3000, 6000))]
+    result = solved(document, records, tmp_path)
+    u = [one.u_statistical for one in result.sessions]
+    (pair,) = result.correlations
+    one = NoiseModel(flicker_fm=1e-17)
+    series = [TickSeries(np.arange(*ends), np.zeros(3000)) for ends in ((0, 3000), (3000, 6000))]
+    shared = mean_covariance(one, series, interval=10.0)[0, 1]
+    # Of the floors stated for a and c, 2e-34 together, half is of the clock in both.
+    assert pair.coefficient == pytest.approx(shared / (u[0] * u[1]), rel=1e-3)
+
+
+def test_numbers_and_differences_are_correlated_too(rng, tmp_path):
+    document = campaign([("a", "c"), ("b", "c")], sites=("home", "near", "far"))
+    placed = [
+        one.model_copy(
+            update={"numerator": one.numerator.model_copy(update={"site": site})},
+        )
+        for one, site in zip(document.sessions, ("near", "far"), strict=True)
+    ]
+    document = document.model_copy(update={"sessions": tuple(placed)})
+    records = [record(rng, range(6000)), record(rng, range(3000, 9000))]
+    result = solved(document, records, tmp_path)
+    by_kind = {one.kind: one for one in result.correlations if "home" not in one.first}
+    matrix, order = np.array(result.covariance.matrix), result.covariance.order
+    near, far = order.index("near"), order.index("far")
+    expected = matrix[near, far] / np.sqrt(matrix[near, near] * matrix[far, far])
+    assert by_kind["geopotential_number"].coefficient == pytest.approx(expected, rel=1e-9)
+    differences = [one for one in result.correlations if one.kind == "difference"]
+    assert {one.first for one in differences} == {"near - home", "far - home"}
+    for one in result.correlations:
+        assert sum(one.parts.values()) == pytest.approx(one.coefficient, abs=1e-12)
 
 
 def test_a_flywheel_over_the_downtime_adds_its_dead_time(rng, tmp_path):

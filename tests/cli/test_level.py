@@ -94,7 +94,7 @@ def test_inputs_stand_with_their_checksums(levelled, project):
 def test_equal_input_gives_equal_bytes(levelled, project, tmp_path):
     again = run(project / "examples" / "saddle" / "campaign.toml", "--out", tmp_path, "--quiet")
     assert (again.exit_code, again.stdout) == (0, "")
-    for name in ("result.json", "result.nc", "report.html"):
+    for name in ("result.json", "result.nc", "correlations.csv", "report.html"):
         assert (tmp_path / name).read_bytes() == (levelled[0] / name).read_bytes(), name
 
 
@@ -117,7 +117,10 @@ def test_results_are_not_replaced_unasked(saddle, tmp_path):
     before = (out / "result.json").stat().st_mtime_ns
     refused = run(saddle, "--out", out)
     assert refused.exit_code == 1
-    assert "results exist already: result.json, result.nc, report.html" in refused.stderr
+    assert (
+        "results exist already: result.json, result.nc, correlations.csv, report.html"
+        in refused.stderr
+    )
     assert (out / "result.json").stat().st_mtime_ns == before
     assert run(saddle, "--out", out, "--force").exit_code == 0
 
@@ -197,7 +200,7 @@ def test_a_disk_that_fills_up_leaves_no_half_file(saddle, tmp_path, kilobytes):
     done = subprocess.run(shell, capture_output=True, text=True, check=False)
     assert done.returncode == 1
     assert "cannot write the output (File too large)" in done.stderr
-    whole = {"result.json", "result.nc", "report.html"}
+    whole = {"result.json", "result.nc", "correlations.csv", "report.html"}
     assert {path.name for path in out.iterdir()} < whole
 
 

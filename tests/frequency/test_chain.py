@@ -9,6 +9,8 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
+from checks import assert_published
+from clockgeo.constants import SPEED_OF_LIGHT
 from clockgeo.errors import DataError
 from clockgeo.frequency.chain import Chain, Link, chain_record, find_chains, reduced_ratio
 from clockgeo.frequency.comparator import comparator_from, refuse_contradictions
@@ -51,8 +53,15 @@ def test_the_printed_chain():
     assert reduced == Fraction("2.927e-14")
     ratio = chain.nominal_ratio * (1 + reduced)
     assert abs(ratio - RATIO) < Fraction(1, 10**27)
-    # One float steps by 2.2e-16 here; rounding to it alone is off by decimetres of height.
-    assert abs(Fraction(float(ratio)) - RATIO) / RATIO > Fraction(1, 10**18)
+    # One float steps by 2.2e-16 here: rounding to it alone is off by 0.2 m of height, and a product
+    # of floats by the 1.6 m that are told of such routes.
+    floats = [float(one) for one in (SR, LASER, YB)]
+    product = (floats[1] / floats[0]) * (floats[2] / floats[1])
+    product *= 1.0 + sum(float(one) for one in OUTPUTS)
+    off = [float((Fraction(one) - RATIO) / RATIO) for one in (float(ratio), product)]
+    metres = [abs(shift) * SPEED_OF_LIGHT.value**2 / 9.80665 for shift in off]
+    assert_published(metres[0], "0.2")
+    assert_published(metres[1], "1.6")
 
 
 @pytest.mark.parametrize("turned", [(False, False), (True, False), (False, True), (True, True)])

@@ -4,11 +4,13 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
+from scipy.integrate import quad
 
 from checks import assert_published
+from clockgeo.frequency import NoiseModel, TickSeries, mean_covariance
 from clockgeo.gravity import TideSystem
 from clockgeo.levelling.closures import closures_of
-from clockgeo.levelling.correlations import correlations_of, overlap_covariance
+from clockgeo.levelling.correlations import correlations_of, single_rows
 from clockgeo.levelling.effects import Effect
 from clockgeo.levelling.linear_model import ModelBuilder
 from clockgeo.levelling.redshift import potential_from_shift
@@ -56,7 +58,7 @@ def model_of(pairs, values, *, statistics=0.0):
 def test_three_clocks_of_one_species(first, second, printed):
     """u of 5, 3 and 2 (1e-18), of which 1.5 is common to the species: recomputed by hand."""
     _, model = model_of([("A", "B"), ("A", "C"), ("B", "C")], [0.0, 0.0, 0.0])
-    found = {(c.first, c.second): c for c in correlations_of(model, model.rows)}
+    found = {(c.first, c.second): c for c in correlations_of(model, single_rows(model, model.rows))}
     correlation = found[first, second]
     assert_published(correlation.coefficient, printed)
     assert sum(correlation.parts.values()) == pytest.approx(correlation.coefficient, abs=1e-12)
@@ -66,10 +68,42 @@ def test_three_clocks_of_one_species(first, second, printed):
 
 def test_overlapping_white_noise():
     """10 d and 8 d with 6 d in common, white FM: r = 6/sqrt(80)."""
-    hour = np.arange(0, 240), np.arange(96, 288)
-    covariance = overlap_covariance(*hour, 3600.0, 1e-15)
-    u = [1e-15 / np.sqrt(3600.0 * ticks.size) for ticks in hour]
-    assert_published(covariance / (u[0] * u[1]), "0.670820")
+    series = [TickSeries(t, np.zeros(t.size)) for t in (np.arange(240), np.arange(96, 288))]
+    covariance = mean_covariance(NoiseModel(white_fm=1e-15), series, interval=3600.0)
+    u = [1e-15 / np.sqrt(3600.0 * one.tick.size) for one in series]
+    assert np.diag(covariance) == pytest.approx(np.square(u), rel=1e-12)
+    assert_published(covariance[0, 1] / (u[0] * u[1]), "0.670820")
+
+
+def test_overlapping_slow_noise_follows_the_kernel():
+    """Means over [0, 3] and [2, 6]: -h-1 ∫∫ ln|t - s| over both, by quadrature; contrasts only."""
+    model = NoiseModel(flicker_fm=1.0)
+    spans = ((0.0, 3.0), (2.0, 6.0), (7.0, 8.0))
+    series = [
+        TickSeries(np.arange(round(100 * a), round(100 * b)), np.zeros(round(100 * (b - a))))
+        for a, b in spans
+    ]
+    covariance = mean_covariance(model, series, interval=0.01)
+
+    def kernel(one, other):
+        (a, b), (c, d) = one, other
+
+        def inner(t):
+            # ∫ -ln|t - s| ds in closed form; the outer integral by quadrature.
+            ends = [(t - c) * np.log(abs(t - c)) if t != c else 0.0]
+            ends.append((d - t) * np.log(abs(d - t)) if t != d else 0.0)
+            return (d - c) - sum(ends)
+
+        inside = [end for end in (c, d) if a < end < b]
+        value, _ = quad(inner, a, b, points=inside or None, limit=200)
+        return model.h_minus1 * value / ((b - a) * (d - c))
+
+    expected = np.array([[kernel(one, other) for other in spans] for one in spans])
+    for weights in ([1.0, -1.0, 0.0], [1.0, 0.0, -1.0], [0.5, 0.5, -1.0]):
+        contrast = np.array(weights)
+        assert contrast @ covariance @ contrast == pytest.approx(
+            contrast @ expected @ contrast, rel=2e-5
+        )
 
 
 def test_a_third_ratio_of_the_same_data_is_an_identity():
@@ -97,6 +131,36 @@ def test_repeated_sessions_close_with_each_other():
     (closure,) = closures_of(means, model)
     assert closure.sessions == ("B/A", "A/B")
     assert closure.misclosure == pytest.approx(potential_from_shift(1e-18), rel=1e-9)
+
+
+def test_loops_made_of_the_same_data_are_told_by_rank():
+    """Two ways round the same ratio: each has a variance, together they have one."""
+    pairs = [("A", "B"), ("B", "C"), ("A", "C")]
+    builder, means = ModelBuilder(), []
+    twice = [*pairs, ("C", "A")]
+    for k, (n, d) in enumerate(twice):
+        means.append(
+            SessionMean(
+                id=f"s{k}",
+                numerator=clock(n),
+                numerator_site=SITE,
+                denominator=clock(d),
+                denominator_site=SITE,
+                links=(),
+                start_ns=k * 10**12,
+                y=[7e-18, -3e-18, 5e-18, -5e-18][k],
+            )
+        )
+    # The last session is the third one, turned: the same noise with the other sign.
+    noise = np.diag([1.0, 1.0, 1.0, 1.0]) * 1e-36
+    noise[2, 3] = noise[3, 2] = -1e-36
+    add_session_rows(builder, means, noise, tide_system=TideSystem.ZERO_TIDE)
+    first, second = closures_of(means, builder.build())
+    assert not first.identity
+    assert second.identity
+    # Seen the other way round, a loop that repeats another's sum is one as well.
+    turned = [means[k] for k in (0, 1, 3, 2)]
+    assert [one.identity for one in closures_of(turned, builder.build())] == [False, True]
 
 
 def test_a_tree_of_sessions_has_no_loop():
