@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import csv
 import io
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
@@ -45,12 +45,16 @@ def with_correlations(dataset: xr.Dataset, result: LevelResult) -> xr.Dataset:
         ("u_misclosure", [one.u for one in closures], "m2 s-2", "its standard uncertainty"),
         ("closure_verdict", [one.verdict for one in closures], None, "verdict on the loop"),
     ]
-    variables = {
+    variables: dict[str, Any] = {
         name: ("loop", values, {"long_name": words} | ({"units": unit} if unit else {}))
         for name, values, unit, words in of_loop
     }
-    correlation = {"units": "1", "long_name": "correlation coefficients of the sessions' y"}
+    variables["session_correlation"] = (
+        ("session", "other_session"),
+        matrix,
+        {"units": "1", "long_name": "correlation coefficients of the sessions' y"},
+    )
     return dataset.assign_coords(
         other_session=("other_session", order, {"long_name": "session"}),
         loop=("loop", loops, {"long_name": "signed sessions of the loop"}),
-    ).assign(variables, session_correlation=(("session", "other_session"), matrix, correlation))
+    ).assign(variables)
