@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import replace
 from fractions import Fraction
 from pathlib import Path
@@ -9,11 +10,17 @@ from pathlib import Path
 from clockgeo.campaign.schema import ChainSource, Session
 from clockgeo.errors import DataError
 from clockgeo.files import sha256_of
-from clockgeo.frequency.chain import Chain, chain_record, find_chains
-from clockgeo.frequency.exchange import read_exchange, read_output
+from clockgeo.frequency import fit_noise, mean_covariance
+from clockgeo.frequency.chain import Chain, find_chains
+from clockgeo.frequency.combination import Combined, Loop, combine, loops_of
+from clockgeo.frequency.comparator import Comparator
+from clockgeo.frequency.exchange import ExchangeFolder, read_exchange, read_output, rows_state_u
 from clockgeo.frequency.record import Record, Source
 
 __all__ = ["read_chain"]
+
+_LIMIT = 3.0
+"""A loop of comparators closes within so many standard uncertainties."""
 
 
 def read_chain(
@@ -41,7 +48,7 @@ def read_chain(
     Returns
     -------
     Record
-        With notes on the chain, on what each path gave, and on the corrections that the headers
+        With notes on the paths, on how their loops close, and on the corrections that the files
         offer and that were not applied.
 
     Raises
@@ -60,8 +67,9 @@ def read_chain(
         )
         for name in names
     }
-    record, counts = chain_record(chains, outputs, name=session.id)
-    record = _within(record, session)
+    _refuse_unknown_noise(source, outputs)
+    combined = combine(chains, outputs, name=session.id, noise=source.noise)
+    record = _within(combined.record, session)
     step = float(chains[0].nominal_ratio / nominal_ratio - 1)
     headers = tuple(
         Source(f"{source.folder}/{name}", sha256_of(folder.path / name))
@@ -72,8 +80,24 @@ def read_chain(
         record,
         y=record.y + step,
         sources=(*headers, *data),
-        notes=(*_path_notes(chains, counts), *_ledger(chains[0]), *record.notes),
+        notes=(
+            *_path_notes(chains, combined),
+            *(_loop_note(loop) for loop in loops_of(chains, outputs)),
+            *(note for name in names for note in _ledger(folder, folder.comparators[name])),
+            *record.notes,
+        ),
     )
+
+
+def _refuse_unknown_noise(source: ChainSource, outputs: Mapping[str, Record]) -> None:
+    unknown = [name for name in source.noise if name not in outputs]
+    if unknown:
+        raise DataError(
+            "the noise of a comparator is stated that no path needs",
+            value=", ".join(unknown),
+            where=source.folder,
+            allowed=f"Comparators {', '.join(outputs)}",
+        )
 
 
 def _within(record: Record, session: Session) -> Record:
@@ -100,37 +124,53 @@ def _within(record: Record, session: Session) -> Record:
     )
 
 
-def _path_notes(chains: list[Chain], counts: list[int]) -> list[str]:
-    return [
-        f"chain {chain.words}: {count} epochs"
-        + ("" if place == 0 else ", where no earlier chain is complete")
-        for place, (chain, count) in enumerate(zip(chains, counts, strict=True))
-        if count or place == 0
+def _path_notes(chains: Sequence[Chain], combined: Combined) -> list[str]:
+    notes = [
+        f"chain {chain.words}: complete at {count} epochs"
+        for chain, count in zip(chains, combined.complete, strict=True)
     ]
-
-
-def _ledger(chain: Chain) -> list[str]:
-    """Say of every correction and uncertainty in the headers that it was not applied, and why."""
-    notes = []
-    for link in chain.links:
-        one = link.comparator
-        redshifts = [
-            f"{name} {value:.6g}"
-            for name, value in (("grsA", one.redshift_a), ("grsB", one.redshift_b))
-            if value is not None
-        ]
-        if redshifts:
-            notes.append(
-                f"{one.name}: {', '.join(redshifts)} not applied: the redshift is what is measured"
-            )
-        stated = [
-            f"{name} {value:.3g}"
-            for name, value in (("uA_sys", one.u_a), ("uB_sys", one.u_b))
-            if value is not None
-        ]
-        if stated:
-            notes.append(
-                f"{one.name}: {', '.join(stated)} not used: the effects of clocks and links in the "
-                "document count, once"
-            )
+    if combined.several:
+        notes.append(
+            f"{combined.several} epochs have several paths, combined by least squares with each "
+            "comparator's noise; what paths share counts once"
+        )
     return notes
+
+
+def _loop_note(loop: Loop) -> str:
+    """Say how a loop of comparators closes, with the statistical u of its mean."""
+    words = " ".join(
+        f"{'+' if sign > 0 else '-'}{name}"
+        for name, sign in zip(loop.names, loop.signs, strict=True)
+    )
+    mean, count = float(loop.series.y.mean()), loop.series.y.size
+    try:
+        noise = fit_noise([loop.series], interval=loop.interval).averaged
+    except DataError:
+        return f"loop {words}: misclosure {mean:.2e} over {count} epochs, too few for u"
+    u = float(mean_covariance(noise, [loop.series], interval=loop.interval)[0, 0]) ** 0.5
+    verdict = "closes" if abs(mean) <= _LIMIT * u else "does not close"
+    return f"loop {words}: misclosure {mean:.2e}, u {u:.2e}, {verdict}"
+
+
+def _ledger(folder: ExchangeFolder, one: Comparator) -> Iterator[str]:
+    """Say of every correction and uncertainty in the files that it was not applied, and why."""
+    redshifts = [
+        f"{name} {value:.6g}"
+        for name, value in (("grsA", one.redshift_a), ("grsB", one.redshift_b))
+        if value is not None
+    ]
+    if redshifts:
+        yield f"{one.name}: {', '.join(redshifts)} not applied: the redshift is what is measured"
+    stated = [
+        f"{name} {value:.3g}"
+        for name, value in (("uA_sys", one.u_a), ("uB_sys", one.u_b))
+        if value is not None
+    ]
+    if rows_state_u(folder, one.name):
+        stated.append("column 4 of the data")
+    if stated:
+        yield (
+            f"{one.name}: {', '.join(stated)} not used: the effects of clocks and links in the "
+            "document count, once"
+        )

@@ -84,6 +84,9 @@ class ChainSource(Table):
     """Oscillator of the denominator clock."""
     experimental: bool = False
     """Whether rows flagged 1, valid but experimental, count beside those flagged 2."""
+    noise: dict[str, Positive] = Field(default_factory=dict)
+    """Comparator -> its own noise relative to the others, where several paths lead from clock to
+    clock; 1 where none is stated."""
 
 
 class Session(Table):

@@ -16,18 +16,10 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 
-import numpy as np
-from numpy.typing import NDArray
-
 from clockgeo.errors import DataError
 from clockgeo.frequency.comparator import Comparator
-from clockgeo.frequency.record import Record
-from clockgeo.times import SECOND_NS
 
-__all__ = ["Chain", "Link", "chain_record", "find_chains", "reduced_ratio"]
-
-_GRID_SLACK = 0.2
-"""Largest distance of a gate from the common grid, in gates."""
+__all__ = ["Chain", "Link", "find_chains", "reduced_ratio"]
 
 
 @dataclass(frozen=True)
@@ -162,113 +154,3 @@ def find_chains(
             allowed=f"Comparators {', '.join(comparators)}",
         )
     return found
-
-
-def chain_record(
-    chains: Sequence[Chain], outputs: Mapping[str, Record], *, name: str
-) -> tuple[Record, list[int]]:
-    """Reduced ratio of two oscillators at every epoch at which some chain is complete.
-
-    Parameters
-    ----------
-    chains : sequence of Chain
-        In order of preference. Each epoch is taken from the first chain whose comparators are all
-        valid then, so that no output counts twice.
-    outputs : mapping of str to Record
-        Outputs of the comparators, epochs at the starts of gates.
-    name : str
-        Of the resulting record.
-
-    Returns
-    -------
-    (Record, list of int)
-        Fractional deviation from the nominal ratio of the first chain, and the number of epochs
-        taken from each chain.
-
-    Raises
-    ------
-    DataError
-        If intervals differ, gates do not lie on one grid, or no epoch is common.
-    """
-    used = {link.comparator.name: outputs[link.comparator.name] for c in chains for link in c.links}
-    interval = _common_interval(used)
-    phase = _phase(next(iter(used.values())), interval)
-    ticks = {key: _common_ticks(record, interval, phase) for key, record in used.items()}
-    first = min(int(tick[0]) for tick in ticks.values())
-    size = max(int(tick[-1]) for tick in ticks.values()) - first + 1
-    y, filled = np.full(size, np.nan), np.zeros(size, dtype=bool)
-    nominal = chains[0].nominal_ratio
-    counts = []
-    for chain in chains:
-        total, valid = np.zeros(size), np.ones(size, dtype=bool)
-        for link, factor in zip(chain.links, chain.coefficients, strict=True):
-            record = used[link.comparator.name]
-            places = ticks[link.comparator.name][record.usable] - first
-            here = np.zeros(size, dtype=bool)
-            here[places] = True
-            valid &= here
-            total[places] += float(factor) * record.y[record.usable]
-        fresh = valid & ~filled
-        # Another chain may have another nominal ratio; the step between them is exact.
-        y[fresh] = total[fresh] + float(chain.nominal_ratio / nominal - 1)
-        filled |= fresh
-        counts.append(int(np.count_nonzero(fresh)))
-    if not filled.any():
-        raise DataError(
-            "the comparators of the chain have no valid epoch in common",
-            value=chains[0].words,
-            where=name,
-        )
-    places = np.flatnonzero(filled)
-    step = round(interval * SECOND_NS)
-    record = Record(
-        name=name,
-        tai_ns=(places + first) * step + phase,
-        y=y[places],
-        usable=np.ones(places.size, dtype=bool),
-        interval=interval,
-        tick=places + first,
-        sources=tuple(source for one in used.values() for source in one.sources),
-        notes=tuple(f"{key}: {note}" for key, one in used.items() for note in one.notes),
-        weighting=next(iter(used.values())).weighting,
-    )
-    return record, counts
-
-
-def _common_interval(records: Mapping[str, Record]) -> float:
-    intervals = {key: record.interval for key, record in records.items()}
-    smallest, largest = min(intervals.values()), max(intervals.values())
-    if largest - smallest > 1e-6 * smallest:
-        raise DataError(
-            "the comparators of a chain have different gate times",
-            value=", ".join(f"{key} {value:g} s" for key, value in intervals.items()),
-            advice="Average the faster ones to the slowest gate first",
-        )
-    return smallest
-
-
-def _phase(record: Record, interval: float) -> int:
-    """Where the gates of a record lie on the line of its interval, ns; rounding averages out."""
-    step = round(interval * SECOND_NS)
-    angles = 2.0 * np.pi * (record.tai_ns % step) / step
-    mean = np.angle(np.mean(np.exp(1j * angles)))
-    return round(float(mean) / (2.0 * np.pi) * step)
-
-
-def _common_ticks(record: Record, interval: float, phase: int) -> NDArray[np.int64]:
-    """Gates as places on the common line; each place at most once."""
-    step = round(interval * SECOND_NS)
-    distance = (record.tai_ns - phase) / step
-    tick = np.rint(distance).astype(np.int64)
-    off = float(np.max(np.abs(distance - tick)))
-    if off > _GRID_SLACK:
-        raise DataError(
-            "gates do not lie on the grid of the other comparators",
-            value=f"off by {off * interval:.3f} s",
-            where=record.name,
-            allowed=f"At most {_GRID_SLACK * interval:g} s",
-            advice="Check lag and interval in the header",
-        )
-    if np.any(np.diff(tick) <= 0):
-        raise DataError("two rows fall on one gate", where=record.name)
-    return tick

@@ -48,7 +48,7 @@ class Comparator:
     nominal_ratio : Fraction
         ρ0 = numrhoBA/denrhoBA.
     scale : Fraction
-        s_B in Hz.
+        s_B in Hz, of either sign.
     nominal_a, nominal_b : Fraction or None
         Nominal frequencies in Hz, where stated.
     redshift_a, redshift_b : float or None
@@ -136,7 +136,7 @@ def comparator_from(entry: Mapping[str, str], *, where: str) -> Comparator:
         a=parts[1],
         b=parts[0],
         nominal_ratio=ratio,
-        scale=_positive(entry["sB"], place),
+        scale=_scale(entry["sB"], place),
         nominal_a=exact("nu0A"),
         nominal_b=exact("nu0B"),
         redshift_a=number("grsA"),
@@ -161,6 +161,13 @@ def _positive(text: str, where: str) -> Fraction:
     value = _exact(text, "a nominal value", where)
     if value <= 0:
         raise DataError("a nominal value must be positive", value=text, where=where)
+    return value
+
+
+def _scale(text: str, where: str) -> Fraction:
+    value = _exact(text, "sB", where)
+    if not value:
+        raise DataError("the scale sB is zero", value=text, where=where)
     return value
 
 

@@ -1,4 +1,4 @@
-"""Reading and writing the open exchange format of fibre-link comparisons.
+"""Reading the open exchange format of fibre-link comparisons; `exchange_writing` writes it.
 
 A folder holds headers (`*.yml`, one or several, the same after concatenation) and, for each
 comparator, a folder of its name with data files whose names sort by time. Columns: MJD (UTC),
@@ -9,24 +9,20 @@ byte by byte.
 
 from __future__ import annotations
 
-import shutil
 from dataclasses import dataclass
 from pathlib import Path
 
-import numpy as np
-
 from clockgeo.errors import DataError
-from clockgeo.files import whole_file, write_text
 from clockgeo.frequency.comparator import Comparator, comparator_from, refuse_contradictions
 from clockgeo.frequency.layout import RecordLayout
 from clockgeo.frequency.reading import read_record
 from clockgeo.frequency.record import Record
 from clockgeo.times import SECOND_NS
 
-__all__ = ["ExchangeFolder", "read_exchange", "read_output", "write_exchange"]
+__all__ = ["ExchangeFolder", "read_exchange", "read_output", "rows_state_u"]
 
 HEADERS = "*.yml"
-MJD_COLUMN, OUTPUT_COLUMN, FLAG_COLUMN = 1, 2, 3
+MJD_COLUMN, OUTPUT_COLUMN, FLAG_COLUMN, U_COLUMN = 1, 2, 3, 4
 VALID_FLAG, EXPERIMENTAL_FLAG = 2, 1
 
 
@@ -165,65 +161,11 @@ def read_output(
     )
 
 
-def write_exchange(
-    folder: ExchangeFolder,
-    target: str | Path,
-    *,
-    outputs: dict[str, Record] | None = None,
-    replace: bool = False,
-) -> list[Path]:
-    """Write a folder of the exchange format.
-
-    Parameters
-    ----------
-    folder : ExchangeFolder
-        Headers are written as they are, data files of comparators without a new output copied.
-    target : path
-        Folder to write to.
-    outputs : dict of str to Record, optional
-        New outputs of comparators, one file each.
-    replace : bool
-        Whether existing files may be replaced.
-
-    Returns
-    -------
-    list of Path
-    """
-    target, written = Path(target), []
-    target.mkdir(parents=True, exist_ok=True)
-    for name, text in folder.headers:
-        write_text(target / name, text, replace=replace)
-        written.append(target / name)
-    for name in folder.comparators:
-        (target / name).mkdir(exist_ok=True)
-        if outputs and name in outputs:
-            record = outputs[name]
-            path = target / name / f"{_first_day(record)}.dat"
-            write_text(path, output_text(folder.comparators[name], record), replace=replace)
-            written.append(path)
-            continue
-        for file in folder.data_files(name):
-            path = target / name / file.name
-            with whole_file(path, replace=replace) as partial:
-                shutil.copyfile(file, partial)
-            written.append(path)
-    return written
-
-
-def _first_day(record: Record) -> int:
-    from clockgeo.times import mjd_utc
-
-    return int(np.floor(mjd_utc(np.array([record.start]))[0]))
-
-
-def output_text(comparator: Comparator, record: Record) -> str:
-    """Text of a data file: MJD with six decimals, output, flag."""
-    from clockgeo.times import mjd_utc
-
-    lag_ns = round(comparator.lag * record.interval * SECOND_NS)
-    mjd = mjd_utc(record.tai_ns + lag_ns)
-    lines = ["# MJD (UTC)\toutput\tflag"]
-    for day, value, usable in zip(mjd, record.y, record.usable, strict=True):
-        shown = f"{value:.12e}" if np.isfinite(value) else "nan"
-        lines.append(f"{day:.6f}\t{shown}\t{VALID_FLAG if usable else 0}")
-    return "\n".join(lines) + "\n"
+def rows_state_u(folder: ExchangeFolder, name: str) -> bool:
+    """Whether the rows of a comparator have a fourth column, their systematic uncertainty."""
+    for file in folder.data_files(name):
+        with file.open(encoding="utf-8", errors="replace") as lines:
+            for line in lines:
+                if line.strip() and not line.lstrip().startswith("#"):
+                    return len(line.split()) >= U_COLUMN
+    return False

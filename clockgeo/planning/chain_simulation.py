@@ -14,7 +14,8 @@ from clockgeo.errors import DataError
 from clockgeo.files import write_text
 from clockgeo.frequency import NoiseModel, Record, draw_noise
 from clockgeo.frequency.chain import find_chains
-from clockgeo.frequency.exchange import output_text, read_exchange
+from clockgeo.frequency.exchange import read_exchange
+from clockgeo.frequency.exchange_writing import output_text
 
 __all__ = ["write_chain"]
 

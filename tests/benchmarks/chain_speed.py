@@ -14,7 +14,8 @@ from pathlib import Path
 import numpy as np
 import polars as pl
 
-from clockgeo.frequency.chain import chain_record, find_chains
+from clockgeo.frequency.chain import find_chains
+from clockgeo.frequency.combination import combine
 from clockgeo.frequency.exchange import read_exchange, read_output
 
 NAMES = ["C_YB-C_L", "C_L-B_L", "B_L-A_L", "A_L-A_M", "A_M-A_SR"]
@@ -60,7 +61,7 @@ def run(days: int) -> None:
         exchange = read_exchange(folder)
         chains = find_chains(exchange.comparators, denominator="A_SR", numerator="C_YB")
         outputs = {name: read_output(exchange, name) for name in NAMES}
-        record, _ = chain_record(chains, outputs, name="chain")
+        record = combine(chains, outputs, name="chain").record
         mean = record.y.mean()
         whole = time.perf_counter() - begin
     memory = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1e6

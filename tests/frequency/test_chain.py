@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from fractions import Fraction
 
 import numpy as np
@@ -12,9 +13,12 @@ from hypothesis import strategies as st
 from checks import assert_published
 from clockgeo.constants import SPEED_OF_LIGHT
 from clockgeo.errors import DataError
-from clockgeo.frequency.chain import Chain, Link, chain_record, find_chains, reduced_ratio
+from clockgeo.frequency.chain import Chain, Link, find_chains, reduced_ratio
+from clockgeo.frequency.combination import combine, loops_of
 from clockgeo.frequency.comparator import comparator_from, refuse_contradictions
-from clockgeo.frequency.exchange import read_exchange, read_output, write_exchange
+from clockgeo.frequency.exchange import read_exchange, read_output, rows_state_u
+from clockgeo.frequency.exchange_writing import write_exchange
+from clockgeo.frequency.record import Record
 
 # Nominal frequencies of an optical clock, a transfer laser and another clock, Hz; outputs scaled by
 # the nominal frequency of the compared oscillator. Exact by rational arithmetic.
@@ -65,7 +69,7 @@ def test_the_printed_chain():
 
 
 @pytest.mark.parametrize("turned", [(False, False), (True, False), (False, True), (True, True)])
-@pytest.mark.parametrize("scale", ["nominal", "1", "-1", "ratio"])
+@pytest.mark.parametrize("scale", ["nominal", "1", "-1", "-2.5e14", "ratio"])
 def test_either_direction_and_any_scale_give_the_same_ratio(turned, scale):
     """Outputs follow from true frequencies; the chain must find their ratio again."""
     true = {
@@ -77,7 +81,7 @@ def test_either_direction_and_any_scale_give_the_same_ratio(turned, scale):
     entries, outputs = [], []
     for (a, b), turn in zip((("WEST_SR", "FIBRE_L"), ("FIBRE_L", "EAST_YB")), turned, strict=True):
         a, b = (b, a) if turn else (a, b)
-        size = {"nominal": nominal[b], "1": "1", "-1": "1", "ratio": nominal[a]}[scale]
+        size = {"nominal": nominal[b], "ratio": nominal[a]}.get(scale, scale)
         entries.append(entry(b, a, nu_b=nominal[b], nu_a=nominal[a], scale=size))
         ratio = Fraction(nominal[b]) / Fraction(nominal[a])
         outputs.append((true[b] - ratio * true[a]) / Fraction(size))
@@ -155,9 +159,9 @@ def test_a_day_of_stamps_loses_and_doubles_nothing(tmp_path, lag):
     folder = written(tmp_path / "net", lag=lag, rows=rows)
     output = read_output(folder, "MID_L-WEST_C")
     chain = find_chains(folder.comparators, denominator="WEST_C", numerator="MID_L")
-    record, counts = chain_record(chain, {"MID_L-WEST_C": output}, name="day")
-    expected = seconds[flags == 2]
-    assert counts == [expected.size] == [len(record)]
+    combined = combine(chain, {"MID_L-WEST_C": output}, name="day")
+    record, expected = combined.record, seconds[flags == 2]
+    assert combined.complete == (expected.size,) == (len(record),)
     from_midnight = record.tick - record.tick[0] + expected[0]
     np.testing.assert_array_equal(from_midnight, expected)
     np.testing.assert_allclose(record.y, expected * 1e-18, rtol=1e-6)
@@ -185,6 +189,47 @@ def test_what_is_not_changed_is_written_byte_by_byte(tmp_path):
             assert other.read_bytes() == path.read_bytes()
 
 
+def test_new_outputs_leave_further_columns_alone(tmp_path):
+    folder = written(tmp_path / "net", rows=[(s, 1e-15 * s, 2 if s % 3 else 1) for s in range(20)])
+    data = tmp_path / "net" / "MID_L-WEST_C" / "day.txt"
+    lines = data.read_text(encoding="utf-8").splitlines()
+    lines[1:] = [f"{line}   3e-18  note-{row}" for row, line in enumerate(lines[1:])]
+    data.write_text("\n".join(lines) + "\n", encoding="utf-8")
+    assert rows_state_u(folder, "MID_L-WEST_C")
+    old = read_output(folder, "MID_L-WEST_C", experimental=True)
+    usable = old.usable.copy()
+    usable[5] = False
+    new = replace(old, y=old.y + 1e-16, usable=usable)
+    write_exchange(folder, tmp_path / "new", outputs={"MID_L-WEST_C": new})
+    again = (tmp_path / "new" / "MID_L-WEST_C" / "day.txt").read_text(encoding="utf-8")
+    for row, (before, after) in enumerate(zip(lines, again.splitlines(), strict=True), start=-1):
+        if row < 0:
+            assert after == before
+            continue
+        one, other = before.split(), after.split()
+        assert [other[0], *other[3:]] == [one[0], *one[3:]]
+        assert float(other[1]) == pytest.approx(float(one[1]) + 1e-16, rel=1e-12)
+        assert other[2] == ("0" if row == 5 else one[2])
+
+
+def test_a_leap_second_neither_loses_nor_doubles_a_tick(tmp_path):
+    """2016-12-31 had 86 401 s; its MJD runs on 86 400 s, so that the last one has no stamp."""
+    folder = tmp_path / "net"
+    (folder / "MID_L-WEST_C").mkdir(parents=True)
+    (folder / "net.yml").write_text(HEADER.format(lag=0, quote=""), encoding="utf-8")
+    seconds = [*range(86_300, 86_400), *range(86_400, 86_500)]
+    lines = [f"{57_753 + second / DAY:.6f} {second * 1e-18!r} 2" for second in seconds]
+    (folder / "MID_L-WEST_C" / "day.txt").write_text("\n".join(lines) + "\n", encoding="utf-8")
+    output = read_output(read_exchange(folder), "MID_L-WEST_C")
+    steps = np.diff(output.tick)
+    assert len(output) == 200
+    # The gate of the leap second is a gap of one; all others follow one another.
+    assert np.flatnonzero(steps != 1).tolist() == [99]
+    assert steps[99] == 2
+    elapsed = (output.tai_ns - output.tai_ns[0]) / 1e9
+    np.testing.assert_allclose(elapsed, output.tick - output.tick[0], atol=0.09)
+
+
 def test_new_outputs_are_read_back(tmp_path):
     folder = written(tmp_path / "net", rows=[(s, 1e-15 * s, 2 if s % 3 else 0) for s in range(50)])
     output = read_output(folder, "MID_L-WEST_C")
@@ -205,15 +250,13 @@ def test_a_chain_is_valid_where_all_its_comparators_are(seconds, data):
     chain = printed_chain(entries)
 
     def output(places, value):
-        from clockgeo.frequency.record import Record
-
         tick = np.array(sorted(places))
         return Record(
             "r", tick * 10**9, np.full(tick.size, value), np.ones(tick.size, bool), 1.0, tick
         )
 
     outputs = {"FIBRE_L-WEST_SR": output(seconds, 2e-15), "EAST_YB-FIBRE_L": output(others, 3e-15)}
-    record, _ = chain_record([chain], outputs, name="both")
+    record = combine([chain], outputs, name="both").record
     np.testing.assert_array_equal(record.tick, sorted(others))
     np.testing.assert_allclose(record.y, 5e-15, rtol=1e-12)
 
@@ -249,38 +292,94 @@ def test_missing_folders_and_data_are_told(tmp_path):
         read_output(folder, "X")
 
 
-def test_a_second_path_fills_what_the_first_leaves_open_and_counts_nothing_twice():
-    from clockgeo.frequency.record import Record
+def constant(name, places, value):
+    tick = np.array(places)
+    y = np.broadcast_to(np.asarray(value, dtype=float), tick.shape).copy()
+    return Record(name, tick * 10**9, y, np.ones(tick.size, bool), 1.0, tick)
 
+
+def triangle():
+    """A direct way, and one over a transfer laser."""
     entries = [
         entry("EAST_YB", "WEST_SR", nu_b=YB, nu_a=SR),
         entry("FIBRE_L", "WEST_SR", nu_b=LASER, nu_a=SR),
         entry("EAST_YB", "FIBRE_L", nu_b=YB, nu_a=LASER),
     ]
     comparators = {one["name"]: comparator_from(one, where="test") for one in entries}
-    chains = find_chains(comparators, denominator="WEST_SR", numerator="EAST_YB")
+    return find_chains(comparators, denominator="WEST_SR", numerator="EAST_YB")
+
+
+def test_several_paths_are_one_estimate():
+    """Alone each path is its sum; together the direct way has weight 2/3: variances 1 and 1 + 1."""
+    chains = triangle()
     assert [len(chain.links) for chain in chains] == [1, 2]
-
-    def output(name, places, value):
-        tick = np.array(places)
-        ones = np.ones(tick.size)
-        return Record(name, tick * 10**9, value * ones, ones > 0, 1.0, tick)
-
     outputs = {
-        "EAST_YB-WEST_SR": output("a", range(10), 1e-15),
-        "FIBRE_L-WEST_SR": output("b", range(5, 20), 2e-15),
-        "EAST_YB-FIBRE_L": output("c", range(5, 15), 3e-15),
+        "EAST_YB-WEST_SR": constant("a", range(10), 1e-15),
+        "FIBRE_L-WEST_SR": constant("b", range(5, 20), 2e-15),
+        "EAST_YB-FIBRE_L": constant("c", range(5, 15), 3e-15),
     }
-    record, counts = chain_record(chains, outputs, name="both")
-    assert counts == [10, 5]
+    combined = combine(chains, outputs, name="both")
+    assert (combined.complete, combined.several) == ((10, 10), 5)
+    record = combined.record
     np.testing.assert_array_equal(record.tick, np.arange(15))
-    np.testing.assert_allclose(record.y[:10], 1e-15, rtol=1e-12)
+    np.testing.assert_allclose(record.y[:5], 1e-15, rtol=1e-12)
+    np.testing.assert_allclose(record.y[5:10], (2 * 1e-15 + 5e-15) / 3, rtol=1e-12)
     np.testing.assert_allclose(record.y[10:], 5e-15, rtol=1e-12)
+    noise = {"EAST_YB-WEST_SR": 2.0, "FIBRE_L-WEST_SR": 3.0}
+    weighted = combine(chains, outputs, name="both", noise=noise).record
+    direct = (1 / 4) / (1 / 4 + 1 / 10)
+    np.testing.assert_allclose(weighted.y[5:10], direct * 1e-15 + (1 - direct) * 5e-15, rtol=1e-12)
+
+
+def test_what_paths_share_counts_once():
+    """Two parallel fibres behind one comb: the shared comparator keeps its full weight."""
+    entries = [
+        entry("WEST_L", "WEST_SR", nu_b=LASER, nu_a=SR),
+        entry("EAST_L", "WEST_L", nu_b=LASER, nu_a=LASER),
+        entry("MID_L", "WEST_L", nu_b=LASER, nu_a=LASER),
+        entry("EAST_L", "MID_L", nu_b=LASER, nu_a=LASER),
+        entry("EAST_YB", "EAST_L", nu_b=YB, nu_a=LASER),
+    ]
+    comparators = {one["name"]: comparator_from(one, where="test") for one in entries}
+    chains = find_chains(comparators, denominator="WEST_SR", numerator="EAST_YB")
+    rng = np.random.default_rng(8)
+    values = {name: 1e-15 * rng.standard_normal(50) for name in comparators}
+    outputs = {name: constant(name, range(50), value) for name, value in values.items()}
+    record = combine(chains, outputs, name="net").record
+    middle = (2.0 * values["EAST_L-WEST_L"] + values["MID_L-WEST_L"] + values["EAST_L-MID_L"]) / 3.0
+    expected = values["WEST_L-WEST_SR"] + middle + values["EAST_YB-EAST_L"]
+    np.testing.assert_allclose(record.y, expected, rtol=1e-9, atol=1e-30)
+
+
+def test_the_combination_is_the_best_linear_unbiased_one():
+    """A second route: dense generalised least squares of one gate with all oscillators unknown."""
+    chains = triangle()
+    noise = {"EAST_YB-WEST_SR": 1.7, "FIBRE_L-WEST_SR": 0.6, "EAST_YB-FIBRE_L": 1.1}
+    z = {"EAST_YB-WEST_SR": 1e-15, "FIBRE_L-WEST_SR": -2e-15, "EAST_YB-FIBRE_L": 4e-15}
+    outputs = {name: constant(name, range(3), value) for name, value in z.items()}
+    record = combine(chains, outputs, name="net", noise=noise).record
+    # Unknowns: offsets of the transfer laser and of the far clock, against the near clock.
+    design = np.array([[0.0, 1.0], [1.0, 0.0], [-1.0, 1.0]])
+    weight = np.diag([noise[name] ** -2.0 for name in z])
+    normal = design.T @ weight @ design
+    estimate = np.linalg.solve(normal, design.T @ weight @ np.array(list(z.values())))
+    np.testing.assert_allclose(record.y, estimate[1], rtol=1e-12)
+
+
+def test_loops_of_comparators_are_found():
+    chains = triangle()
+    outputs = {
+        "EAST_YB-WEST_SR": constant("a", range(10), 1e-15),
+        "FIBRE_L-WEST_SR": constant("b", range(5, 20), 2e-15),
+        "EAST_YB-FIBRE_L": constant("c", range(5, 15), 3e-15),
+    }
+    (loop,) = loops_of(chains, outputs)
+    np.testing.assert_array_equal(loop.series.tick, np.arange(5, 10))
+    np.testing.assert_allclose(np.abs(loop.series.y), 4e-15, rtol=1e-12)
+    assert loops_of(chains[:1], outputs) == []
 
 
 def test_gates_off_the_grid_and_other_intervals_are_refused():
-    from clockgeo.frequency.record import Record
-
     chain = printed_chain(
         [
             entry("FIBRE_L", "WEST_SR", nu_b=LASER, nu_a=SR),
@@ -298,8 +397,8 @@ def test_gates_off_the_grid_and_other_intervals_are_refused():
         }
 
     with pytest.raises(DataError, match=r"gates do not lie on the grid.*off by 0\.4"):
-        chain_record([chain], outputs(400_000_000, 1.0), name="x")
+        combine([chain], outputs(400_000_000, 1.0), name="x")
     with pytest.raises(DataError, match="different gate times"):
-        chain_record([chain], outputs(0, 2.0), name="x")
+        combine([chain], outputs(0, 2.0), name="x")
     with pytest.raises(DataError, match="no valid epoch in common"):
-        chain_record([chain], outputs(100 * 10**9, 1.0), name="x")
+        combine([chain], outputs(100 * 10**9, 1.0), name="x")
