@@ -14,7 +14,7 @@ from clockgeo.frequency import fit_noise, mean_covariance
 from clockgeo.frequency.chain import Chain, find_chains
 from clockgeo.frequency.combination import Combined, Loop, combine, loops_of
 from clockgeo.frequency.comparator import Comparator
-from clockgeo.frequency.exchange import ExchangeFolder, read_exchange, read_output, rows_state_u
+from clockgeo.frequency.exchange import ExchangeFolder, read_exchange, read_outputs, rows_state_u
 from clockgeo.frequency.record import Record, Source
 
 __all__ = ["read_chain"]
@@ -61,12 +61,9 @@ def read_chain(
         folder.comparators, denominator=source.denominator, numerator=source.numerator
     )
     names = dict.fromkeys(link.comparator.name for chain in chains for link in chain.links)
-    outputs = {
-        name: read_output(
-            folder, name, experimental=source.experimental, skip_bad_rows=skip_bad_rows
-        )
-        for name in names
-    }
+    outputs = read_outputs(
+        folder, names, experimental=source.experimental, skip_bad_rows=skip_bad_rows
+    )
     _refuse_unknown_noise(source, outputs)
     combined = combine(chains, outputs, name=session.id, noise=source.noise)
     record = _within(combined.record, session)

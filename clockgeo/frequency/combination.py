@@ -137,6 +137,14 @@ class _Net:
     factors: dict[str, Fraction]
     steps: dict[str, Fraction]
 
+    def reduced(self, key: str) -> NDArray[np.float64]:
+        """Reduced ratio of a comparator at its usable rows."""
+        record = self.outputs[key]
+        output = record.y if record.usable.all() else record.y[record.usable]
+        step = float(self.steps[key])
+        scaled = float(self.factors[key]) * output
+        return scaled + step if step else scaled
+
 
 def _net_of(chains: Sequence[Chain], outputs: Mapping[str, Record]) -> _Net:
     comparators = {link.comparator.name: link.comparator for c in chains for link in c.links}
@@ -214,11 +222,12 @@ def _record(
     name: str,
 ) -> Record:
     total = np.zeros(line.size)
-    for column, (key, record) in enumerate(net.outputs.items()):
+    alone = weights[np.any(weights != 0.0, axis=1)]
+    for column, key in enumerate(net.outputs):
         places = line.places[key]
-        here = weights[:, column][number[places]]
-        reduced = float(net.factors[key]) * record.y[record.usable]
-        total[places] += here * (reduced + float(net.steps[key]))
+        # One chain has one set of weights; gates where it is not complete are left out anyway.
+        here = alone[0, column] if len(alone) == 1 else weights[:, column][number[places]]
+        total[places] += here * net.reduced(key)
     places = np.flatnonzero(usable)
     sources = tuple(source for one in net.outputs.values() for source in one.sources)
     notes = tuple(f"{key}: {note}" for key, one in net.outputs.items() for note in one.notes)
@@ -287,9 +296,8 @@ def _way(
 def _loop(net: _Net, line: GateLine, way: Sequence[tuple[str, int]]) -> Loop | None:
     total, count = np.zeros(line.size), np.zeros(line.size, dtype=np.int64)
     for key, sign in way:
-        record, places = net.outputs[key], line.places[key]
-        reduced = float(net.factors[key]) * record.y[record.usable] + float(net.steps[key])
-        total[places] += sign * reduced
+        places = line.places[key]
+        total[places] += sign * net.reduced(key)
         count[places] += 1
     places = np.flatnonzero(count == len(way))
     if not places.size:

@@ -9,6 +9,7 @@ byte by byte.
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -19,7 +20,7 @@ from clockgeo.frequency.reading import read_record
 from clockgeo.frequency.record import Record
 from clockgeo.times import SECOND_NS
 
-__all__ = ["ExchangeFolder", "read_exchange", "read_output", "rows_state_u"]
+__all__ = ["ExchangeFolder", "read_exchange", "read_output", "read_outputs", "rows_state_u"]
 
 HEADERS = "*.yml"
 MJD_COLUMN, OUTPUT_COLUMN, FLAG_COLUMN, U_COLUMN = 1, 2, 3, 4
@@ -159,6 +160,20 @@ def read_output(
         notes=record.notes,
         weighting=comparator.weighting,  # type: ignore[arg-type]
     )
+
+
+def read_outputs(
+    folder: ExchangeFolder,
+    names: Iterable[str],
+    *,
+    experimental: bool = False,
+    skip_bad_rows: bool = False,
+) -> dict[str, Record]:
+    """Read the outputs of several comparators; otherwise as `read_output`."""
+    return {
+        name: read_output(folder, name, experimental=experimental, skip_bad_rows=skip_bad_rows)
+        for name in names
+    }
 
 
 def rows_state_u(folder: ExchangeFolder, name: str) -> bool:

@@ -79,10 +79,14 @@ def text_rows(
         "value": (table.position(layout.value_column), _value_type(layout, nominal)),
     }
     if layout.flag_column is not None:
-        columns["flag"] = (table.position(layout.flag_column), pl.String())
+        columns["flag"] = (table.position(layout.flag_column), _flag_type(layout))
     if layout.u_column is not None:
         columns["u"] = (table.position(layout.u_column), pl.Float64())
     read = table.columns(columns)
+    if "flag" in columns and read.frame["flag"].null_count():
+        # Words among numbers, or missing flags, are told apart as text.
+        columns["flag"] = (columns["flag"][0], pl.String())
+        read = table.columns(columns)
     frame, lines = read.frame, read.lines
     tai, timed = _times(frame["time"], layout)
     y = _values(frame["value"], layout, nominal)
@@ -117,6 +121,14 @@ def _value_type(layout: RecordLayout, nominal: Fraction | None) -> pl.DataType:
     if layout.value == "ratio" and nominal is not None:
         return pl.Decimal(38, decimal_places(nominal))
     return pl.Float64()
+
+
+def _flag_type(layout: RecordLayout) -> pl.DataType:
+    """Numbers where all stated flags are: they are read in a fraction of the time of words."""
+    import polars as pl
+
+    words = [flag for flag in layout.valid_flags if _number_or_none(str(flag)) is None]
+    return pl.String() if words else pl.Float64()
 
 
 def _times(column: pl.Series, layout: RecordLayout) -> tuple[NDArray[np.int64], NDArray[np.bool_]]:
@@ -195,8 +207,13 @@ def _fractional(
 
 def _allowed(column: pl.Series, layout: RecordLayout) -> NDArray[np.bool_]:
     """Rows whose flag is one of the stated ones, as text or as a number."""
+    import polars as pl
+
     stated = {str(flag) for flag in layout.valid_flags}
-    numbers = {_number_or_none(flag) for flag in stated} - {None}
+    numbers = {number for flag in stated if (number := _number_or_none(flag)) is not None}
+    if column.dtype != pl.String():
+        flags = column.to_numpy()
+        return np.asarray(np.any([flags == float(number) for number in numbers], axis=0))
     good = [
         text
         for text in column.unique().drop_nulls().to_list()

@@ -16,7 +16,7 @@ import polars as pl
 
 from clockgeo.frequency.chain import find_chains
 from clockgeo.frequency.combination import combine
-from clockgeo.frequency.exchange import read_exchange, read_output
+from clockgeo.frequency.exchange import read_exchange, read_outputs
 
 NAMES = ["C_YB-C_L", "C_L-B_L", "B_L-A_L", "A_L-A_M", "A_M-A_SR"]
 
@@ -60,7 +60,7 @@ def run(days: int) -> None:
         begin = time.perf_counter()
         exchange = read_exchange(folder)
         chains = find_chains(exchange.comparators, denominator="A_SR", numerator="C_YB")
-        outputs = {name: read_output(exchange, name) for name in NAMES}
+        outputs = read_outputs(exchange, NAMES)
         record = combine(chains, outputs, name="chain").record
         mean = record.y.mean()
         whole = time.perf_counter() - begin
