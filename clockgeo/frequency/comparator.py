@@ -14,7 +14,13 @@ from fractions import Fraction
 from clockgeo.errors import DataError
 from clockgeo.frequency.ratio import exact_number
 
-__all__ = ["KNOWN_KEYS", "Comparator", "comparator_from", "refuse_contradictions"]
+__all__ = [
+    "KNOWN_KEYS",
+    "Comparator",
+    "comparator_from",
+    "exact_decimal",
+    "refuse_contradictions",
+]
 
 KNOWN_KEYS = (
     "name",
@@ -190,7 +196,9 @@ def refuse_contradictions(comparators: Iterable[Comparator]) -> None:
                 continue
             before = nominal.setdefault(oscillator, (stated, one.name))
             if before[0] != stated:
-                both = [f"{_decimal(f)} Hz in {name}" for f, name in (before, (stated, one.name))]
+                both = [
+                    f"{exact_decimal(f)} Hz in {name}" for f, name in (before, (stated, one.name))
+                ]
                 raise DataError(
                     f"two nominal frequencies of oscillator {oscillator}",
                     value=", ".join(both),
@@ -198,8 +206,8 @@ def refuse_contradictions(comparators: Iterable[Comparator]) -> None:
                 )
 
 
-def _decimal(value: Fraction) -> str:
-    """Write a decimal fraction with all its digits."""
+def exact_decimal(value: Fraction) -> str:
+    """Write a decimal fraction with all its digits, thirty decimals at most."""
     whole, rest = divmod(value.numerator, value.denominator)
     digits = ""
     while rest and len(digits) < 30:

@@ -9,18 +9,60 @@ from pathlib import Path
 import numpy as np
 from numpy.typing import NDArray
 
-from clockgeo.campaign.schema import ChainSource
+from clockgeo.campaign.measuring import nominal_frequency_of
+from clockgeo.campaign.schema import Campaign, ChainSource
 from clockgeo.errors import DataError
 from clockgeo.files import write_text
 from clockgeo.frequency import NoiseModel, Record, draw_noise
 from clockgeo.frequency.chain import find_chains
-from clockgeo.frequency.exchange import read_exchange
+from clockgeo.frequency.comparator import exact_decimal
+from clockgeo.frequency.exchange import HEADERS, read_exchange
 from clockgeo.frequency.exchange_writing import output_text
 
-__all__ = ["write_chain"]
+__all__ = ["write_chain", "write_missing_headers"]
+
+_HEADER = "comparators.yml"
 
 _FLYWHEEL = NoiseModel(white_fm=1e-14, flicker_fm=2e-15)
 """Noise of lasers and masers between the clocks; it drops out of the chain."""
+
+
+def write_missing_headers(campaign: Campaign, *, tables: Path, folder: Path) -> list[Path]:
+    """Write a header for every exchange folder of the document that has none yet.
+
+    Parameters
+    ----------
+    campaign : Campaign
+        Its sessions name the folders and the oscillators of their two clocks.
+    tables : Path
+        Folder that existing headers are found from.
+    folder : Path
+        Folder to write from.
+
+    Returns
+    -------
+    list of Path
+        One header a folder, with one comparator from clock to clock for each pair of oscillators.
+    """
+    missing: dict[Path, dict[str, str]] = {}
+    for session in campaign.sessions:
+        source = session.chain
+        if source is not None and not any((tables / source.folder).glob(HEADERS)):
+            n, d = (
+                exact_decimal(nominal_frequency_of(campaign.clock(place.clock)))
+                for place in session.places
+            )
+            name = f"{source.numerator}-{source.denominator}"
+            interval = campaign.truth.interval if campaign.truth else 1.0
+            entries = missing.setdefault(folder / source.folder / _HEADER, {})
+            entries[name] = (
+                f"- name: {name}\n  numrhoBA: {n}\n  denrhoBA: {d}\n  sB: {n}\n"
+                f"  nu0A: {d}\n  nu0B: {n}\n  interval: {interval:g}\n  lag: 1\n"
+            )
+    for path, entries in missing.items():
+        path.parent.mkdir(parents=True, exist_ok=True)
+        write_text(path, "".join(entries.values()))
+    return list(missing)
 
 
 def write_chain(
@@ -38,13 +80,13 @@ def write_chain(
     Parameters
     ----------
     source : ChainSource
-        Names the exchange folder, whose headers must be there, and the two oscillators.
+        Names the exchange folder and the two oscillators.
     record : Record
         Drawn fractional ratio of the two clocks; its unusable rows get flag 0 everywhere.
     nominal_ratio : Fraction
         That the drawn ratio refers to.
     tables : Path
-        Folder that the exchange folder's headers are found from.
+        Folder that the exchange folder's headers are found from, or else `folder`.
     folder : Path
         Folder to write from.
     rng : numpy.random.Generator
@@ -57,7 +99,8 @@ def write_chain(
     list of Path
         One data file a comparator, and headers where they are not there yet.
     """
-    exchange = read_exchange(tables / source.folder)
+    here = any((tables / source.folder).glob(HEADERS))
+    exchange = read_exchange((tables if here else folder) / source.folder)
     chain = find_chains(
         exchange.comparators, denominator=source.denominator, numerator=source.numerator
     )[0]

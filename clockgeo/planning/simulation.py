@@ -28,7 +28,7 @@ from clockgeo.levelling.session_rows import (
     transfer_difference,
 )
 from clockgeo.levelling.stations import Clock, Link
-from clockgeo.planning.chain_simulation import write_chain
+from clockgeo.planning.chain_simulation import write_chain, write_missing_headers
 from clockgeo.progress import track
 from clockgeo.times import SECOND_NS, tai_from_iso
 
@@ -98,7 +98,7 @@ def simulate_records(
         If the document has no truth, or a session no start, no length, or several files.
     """
     truth = _truth(campaign)
-    written: list[Path] = []
+    written = write_missing_headers(campaign, tables=tables, folder=folder)
     sessions = simulate_sessions(campaign, np.random.default_rng(seed), tables=tables)
     for number, drawn in enumerate(sessions):
         if drawn.session.chain is not None:

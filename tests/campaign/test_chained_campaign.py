@@ -74,6 +74,23 @@ def test_the_example_comes_from_its_seed(example, tmp_path):
         np.testing.assert_allclose(drawn, np.loadtxt(shipped), rtol=1e-9)
 
 
+def test_headers_that_are_missing_are_written_too(example, tmp_path):
+    """The document alone: simulate makes the exchange folder, and level reads it back."""
+    document = tmp_path / "campaign.toml"
+    document.write_text(example.read_text(encoding="utf-8"), encoding="utf-8")
+    assert run("simulate", document, "--seed", 5, "--quiet").exit_code == 0
+    folder = tmp_path / "network"
+    assert "518295836590863.63" in (folder / "comparators.yml").read_text(encoding="utf-8")
+    result = run("level", document, "--out", tmp_path / "out", "--json")
+    assert result.exit_code == 0, result.stderr
+    for one in json.loads(result.stdout)["differences"]:
+        true = TRUTH[one["to"]] - TRUTH[one["from"]]
+        assert abs(one["geopotential_difference"] - true) < 3.5 * one["u"]
+    refused = run("simulate", document, "--seed", 5, "--quiet")
+    assert refused.exit_code == 1
+    assert "exists already" in refused.stderr
+
+
 @pytest.mark.parametrize(
     ("old", "new", "message"),
     [
