@@ -7,6 +7,7 @@ from collections.abc import Iterator, Sequence
 from clockgeo.campaign.results import ClosureResult, CorrelationResult
 from clockgeo.levelling.closures import Closure, closures_of
 from clockgeo.levelling.correlations import correlations_of, single_rows
+from clockgeo.levelling.linear_model import LinearModel
 from clockgeo.levelling.session_rows import NumberOf, SessionMean
 from clockgeo.levelling.solution import Solution
 
@@ -56,9 +57,9 @@ def correlation_results(
             )
 
 
-def closure_results(means: Sequence[SessionMean], solution: Solution) -> Iterator[ClosureResult]:
-    """Loops of clocks with their verdicts."""
-    for one in closures_of(means, solution.model):
+def closure_results(means: Sequence[SessionMean], model: LinearModel) -> Iterator[ClosureResult]:
+    """Loops of clocks with their verdicts, from a model without excess scatter."""
+    for one in closures_of(means, model):
         yield ClosureResult(
             sessions=one.sessions,
             signs=one.signs,

@@ -154,6 +154,8 @@ def level_measured(
     means = [one.mean(campaign) for one in measured]
     statistics = session_statistics(campaign, measured, means)
     model, systematic = _model(campaign, means, statistics.covariance)
+    # A loop is held against what was known before: scatter would be estimated from the loop itself.
+    unscattered, _ = _model(campaign, means, statistics.without_scatter)
     solution = solve(model)
     solved = _solved_sites(campaign, means)
     pairs = site_pairs(campaign, solved)
@@ -192,7 +194,7 @@ def level_measured(
         scatter=statistics.scatter,
         noise=statistics.noise_results(measured),
         correlations=tuple(correlation_results(means, solution, solved, pairs)),
-        closures=tuple(closure_results(means, solution)),
+        closures=tuple(closure_results(means, unscattered)),
         comparison=tuple(compare(campaign, solution, pairs, geodetic)),
         notes=(*notes, *statistics.notes),
         provenance=Provenance(

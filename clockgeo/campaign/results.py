@@ -170,7 +170,7 @@ class ClosureResult(Table):
     misclosure: float
     """m² s⁻²"""
     u: float
-    """With all shared effects."""
+    """With all shared effects, without excess scatter between sessions."""
     normalised: float | None
     """Misclosure over its u; null for an identity."""
     verdict: str

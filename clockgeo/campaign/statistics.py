@@ -51,6 +51,11 @@ class SessionStatistics:
     findings: tuple[tuple[str, ...], ...]
     notes: tuple[str, ...]
 
+    @property
+    def without_scatter(self) -> NDArray[np.float64]:
+        """Statistical covariance of the means without excess scatter."""
+        return self.covariance - np.eye(len(self.covariance)) * self.scatter_u**2
+
     def noise_results(self, measured: Sequence[Measured]) -> tuple[NoiseResult, ...]:
         """The noise models as they stand in the result; zero levels as null."""
         return tuple(

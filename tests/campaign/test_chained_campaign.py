@@ -58,6 +58,26 @@ def test_the_loop_of_three_clocks_closes(told):
     assert abs(closure["misclosure"]) < 3 * closure["u"]
 
 
+def test_a_loop_that_does_not_close_is_told(example, tmp_path):
+    """Excess scatter grows with a misclosure; the verdict must not follow it."""
+    folder = shutil.copytree(example.parent, tmp_path / "copy")
+    path = folder / "campaign.toml"
+    text = path.read_text(encoding="utf-8")
+    old = 'links = ["west fibre", "east fibre"]\n'
+    assert old in text
+    wrong = 'links = ["west fibre", "east fibre", "slip"]\n'
+    slip = '[[link]]\nid = "slip"\neffect = [{ name = "slip", correction = 3e-17, u = 1e-19 }]\n\n'
+    text = text.replace(old, wrong, 1).replace("[[session]]", slip + "[[session]]", 1)
+    path.write_text(text, encoding="utf-8")
+    result = run("level", path, "--out", tmp_path / "out", "--json")
+    assert result.exit_code == 0, result.stderr
+    told = json.loads(result.stdout)
+    assert told["scatter"]["applied"]
+    (closure,) = told["closures"]
+    assert closure["verdict"] == "does not close"
+    assert abs(closure["misclosure"]) == pytest.approx(3e-17 * 299_792_458.0**2, abs=2.0)
+
+
 def test_correlations_name_their_causes(told):
     pairs = {(one["first"], one["second"]): one for one in told["correlations"]}
     pair = pairs["east and west", "middle and west"]
