@@ -5,13 +5,15 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 from clockgeo.campaign.results import CorrelationResult, LevelResult
-from clockgeo.report.numbers import rounded, signed_names
+from clockgeo.report.numbers import rounded, signed_names, typeset
 from clockgeo.report.sheets import Cell, Sheet, measured, plain, words
 
 __all__ = ["closure_sheet", "correlation_sheets"]
 
 _MOST_PAIRS = 200
 _MOST_CAUSES = 4
+_SHOWS = 5e-5
+"""Parts of a coefficient below this would be written as zero."""
 _KINDS = {
     "session": "means of two sessions",
     "geopotential_number": "numbers (and heights) of two sites",
@@ -56,12 +58,13 @@ def _rows(shown: list[CorrelationResult]) -> list[tuple[Cell, ...]]:
 
 
 def _parts(one: CorrelationResult) -> str:
-    """The largest causes with their parts of the coefficient; the rest in one sum."""
-    ordered = sorted(one.parts.items(), key=lambda part: -abs(part[1]))
-    named, rest = ordered[:_MOST_CAUSES], ordered[_MOST_CAUSES:]
-    written = [f"{cause} {part:+.4f}" for cause, part in named]
+    """The causes that show with their parts of the coefficient, the largest first."""
+    shown = {cause: part for cause, part in one.parts.items() if abs(part) >= _SHOWS}
+    ordered = sorted(shown.items(), key=lambda part: -abs(part[1]))
+    written = [f"{cause} {typeset(f'{part:+.4f}')}" for cause, part in ordered[:_MOST_CAUSES]]
+    rest = [part for _, part in ordered[_MOST_CAUSES:]]
     if rest:
-        written.append(f"{len(rest)} more {sum(part for _, part in rest):+.4f}")
+        written.append(f"{len(rest)} more {typeset(f'{sum(rest):+.4f}')}")
     return "; ".join(written)
 
 

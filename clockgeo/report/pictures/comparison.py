@@ -121,7 +121,7 @@ def residual_picture(sessions: Sequence[SessionResult], *, title: str = "") -> F
         )
     axes.plot(place, residual, "o", color=LIGHT["slate"], markerfacecolor=LIGHT["paper"])
     _name_places(axes, [s.id for s in sessions])
-    label_axes(axes, "session", f"observed − adjusted y / {raised(exponent)}", title)
+    label_axes(axes, "session", f"residual / {raised(exponent)}", title)
     figure.legend(loc="outside lower left", ncols=2)
     return figure
 
