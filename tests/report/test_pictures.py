@@ -177,7 +177,7 @@ UNITS = {
     "map": ["11° E", "47° N", "20 km"],
     "timeline": ["time (UTC)"],
     "comparison": ["difference from the geodetic value / m² s⁻²"],
-    "residuals": ["observed − adjusted y / 10⁻¹⁸"],
+    "residuals": ["residual / 10⁻¹⁸"],
     "observations": ["redundancy number / 1", "standardised residual / 1", "line 17"],
     "datums": ["offset of the datum / m", "not determined by the data"],
     "plane": ["plane / m", "50 km", "20 mm"],
