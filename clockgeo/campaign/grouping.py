@@ -11,6 +11,7 @@ from clockgeo.campaign.measuring import Measured
 from clockgeo.campaign.schema import Campaign
 from clockgeo.errors import DataError
 from clockgeo.frequency import NoiseModel, TickSeries, fit_noise
+from clockgeo.levelling.session_rows import SessionMean, same_expectation
 
 __all__ = ["Group", "fitted_groups", "pair_series", "stated_model"]
 
@@ -48,16 +49,22 @@ class Group:
     degrees_of_freedom: float
 
 
-def fitted_groups(campaign: Campaign, measured: Sequence[Measured]) -> tuple[Group, ...]:
+def fitted_groups(
+    campaign: Campaign, measured: Sequence[Measured], means: Sequence[SessionMean]
+) -> tuple[Group, ...]:
     """Group the sessions and fit the noise of every group.
+
+    Where no excess scatter between sessions is estimated, those that measure the same thing share a
+    mean: what they differ by tells of the slow noise.
 
     Raises
     ------
     DataError
         If records are too short for a fit and the document states no instability.
     """
+    alike = same_expectation(means)
     return tuple(
-        _fitted(campaign, name, places, measured)
+        _fitted(campaign, name, places, measured, alike)
         for name, places in _grouped(campaign, measured).items()
     )
 
@@ -94,12 +101,18 @@ def pair_series(one: Measured) -> TickSeries:
 
 
 def _fitted(
-    campaign: Campaign, name: str, places: Sequence[int], measured: Sequence[Measured]
+    campaign: Campaign,
+    name: str,
+    places: Sequence[int],
+    measured: Sequence[Measured],
+    alike: Sequence[int],
 ) -> Group:
+    scatters = campaign.head.scatter == "estimate" and len(measured) >= _SCATTER_FROM
+    owners = list(range(len(places))) if scatters else _renumbered([alike[k] for k in places])
     series = [pair_series(measured[place]) for place in places]
     interval = measured[places[0]].record.interval
     try:
-        fit = fit_noise(series, interval=interval)
+        fit = fit_noise(series, interval=interval, means=owners)
     except DataError:
         stated = stated_model(campaign, measured[places[0]])
         if not np.any(stated.allan_variance([1.0, 1e4]) > 0.0):
@@ -107,7 +120,6 @@ def _fitted(
         return Group(
             name, tuple(places), stated, stated, fitted=False, degrees_of_freedom=float("inf")
         )
-    scatters = campaign.head.scatter == "estimate" and len(measured) >= _SCATTER_FROM
     return Group(
         name,
         tuple(places),
@@ -120,6 +132,11 @@ def _fitted(
         fitted=True,
         degrees_of_freedom=fit.degrees_of_freedom,
     )
+
+
+def _renumbered(numbers: Sequence[int]) -> list[int]:
+    places = {number: place for place, number in enumerate(dict.fromkeys(numbers))}
+    return [places[number] for number in numbers]
 
 
 def _no_less_than_stated(fitted: NoiseModel, stated: NoiseModel) -> NoiseModel:

@@ -98,7 +98,7 @@ def session_statistics(
     campaign: Campaign, measured: Sequence[Measured], means: Sequence[SessionMean]
 ) -> SessionStatistics:
     """Fit the noise of every group, and state the covariance of all session means."""
-    groups = fitted_groups(campaign, measured)
+    groups = fitted_groups(campaign, measured, means)
     span = campaign_span(measured) if len(groups) > 1 else None
     covariance = np.zeros((len(measured), len(measured)))
     for group in groups:

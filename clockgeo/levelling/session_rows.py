@@ -13,7 +13,7 @@ data), r is the error of the nominal ratio of two different transitions, and the
 from __future__ import annotations
 
 from collections.abc import Hashable, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -40,6 +40,7 @@ __all__ = [
     "add_known_number",
     "add_session_rows",
     "ratio_of",
+    "same_expectation",
     "stays_of",
     "systematic_loads",
     "transfer_difference",
@@ -169,6 +170,31 @@ def systematic_loads(
         for key, load in _transfer_loads(site, clock, mean.years).items():
             loads[key] = loads.get(key, 0.0) + sign * load
     return {key: load for key, load in loads.items() if load}
+
+
+def same_expectation(means: Sequence[SessionMean]) -> list[int]:
+    """Number the sessions by what they measure; those that can differ by noise alone share one.
+
+    Such sessions have the same clocks at the same sites (either way round) and the same effects,
+    so that no stay or session has one of its own; tides are corrected and count as alike.
+    """
+    stays = stays_of(means)
+    numbers: dict[tuple[Hashable, ...], int] = {}
+    found = []
+    for mean in means:
+        numerator = (mean.numerator.id, mean.numerator_site.id)
+        denominator = (mean.denominator.id, mean.denominator_site.id)
+        sign = 1.0 if numerator <= denominator else -1.0
+        loads = {
+            (key, sign * load)
+            for key, load in systematic_loads(replace(mean, u_tide=0.0), stays).items()
+        }
+        found.append(
+            numbers.setdefault(
+                (frozenset((numerator, denominator)), frozenset(loads)), len(numbers)
+            )
+        )
+    return found
 
 
 def _placed(mean: SessionMean) -> tuple[tuple[Clock, Site, float], tuple[Clock, Site, float]]:

@@ -18,6 +18,7 @@ from clockgeo.levelling.session_rows import (
     add_known_number,
     add_session_rows,
     ratio_of,
+    same_expectation,
     stays_of,
     systematic_loads,
     transfer_difference,
@@ -155,3 +156,20 @@ def test_an_unknown_ratio_without_calibration_is_refused():
         match=r"do not determine all unknowns: .*ratio 1000/2000, geopotential number of summit",
     ):
         solved([mean("remote", n, SUMMIT, d, VALLEY, start=1)])
+
+
+def test_sessions_alike_are_told_from_those_with_effects_of_their_own():
+    constant, moving = (
+        Effect(name="lattice", u=1e-18),
+        Effect(name="set-up", u=1e-18, renewed="stay"),
+    )
+    far = clock("b")
+    for effect, expected in ((constant, [0, 1, 0, 0]), (moving, [0, 1, 2, 2])):
+        near = clock("a", effect)
+        placed = [(VALLEY, 0), (SUMMIT, 1), (VALLEY, 2), (VALLEY, 3)]
+        means = [
+            mean(f"s{k}", near, site, far, VALLEY, start=k, u_tide=1e-19) for site, k in placed
+        ]
+        # The last one is run the other way round.
+        means[3] = mean("s3", far, VALLEY, near, VALLEY, start=3)
+        assert same_expectation(means) == expected
