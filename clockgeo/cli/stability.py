@@ -200,7 +200,8 @@ def _show(result: RecordStability, dead_time: dict[str, Any] | None) -> None:
             ],
             left=0,
         )
-    show_table("Noise model (deviation at 1 s, or floor)", ["law", "level"], _levels(result))
+    heads = ["law", "level", "u"]
+    show_table("Noise model (deviation at 1 s, or floor)", heads, _levels(result))
     lines = [
         ("mean y", f"{mean.y:.6e}"),
         ("u of the mean", f"{mean.u:.2e}"),
@@ -212,14 +213,16 @@ def _show(result: RecordStability, dead_time: dict[str, Any] | None) -> None:
     _say_the_rest(result)
 
 
-def _levels(result: RecordStability) -> Sequence[tuple[str, str]]:
-    if result.model is None:
-        return [("none fitted", "")]
-    levels = {law: level for law, level in result.model.model_dump().items() if level}
-    return [
-        (law.replace("_", " "), f"{level:.3e}" + (" 1/s" if law == "drift" else ""))
-        for law, level in levels.items()
-    ]
+def _levels(result: RecordStability) -> Sequence[tuple[str, str, str]]:
+    if result.model is None or result.laws is None or result.fit is None:
+        return [("none fitted", "", "")]
+    rows = []
+    for law, level in result.model.model_dump().items():
+        if level:
+            u = result.fit.u_drift if law == "drift" else result.laws.u[law]
+            unit = " 1/s" if law == "drift" else ""
+            rows.append((law.replace("_", " "), f"{level:.3e}{unit}", f"{u:.1e}"))
+    return rows
 
 
 def _say_the_rest(result: RecordStability) -> None:

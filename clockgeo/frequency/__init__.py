@@ -19,6 +19,7 @@ if TYPE_CHECKING:
     from clockgeo.frequency.noise import NoiseModel
     from clockgeo.frequency.noise_fit import NoiseFit, fit_noise
     from clockgeo.frequency.phase_deviations import phase_stability_curve
+    from clockgeo.frequency.power_law_fit import PowerLawFit, fit_power_laws
     from clockgeo.frequency.ratio import exact_number, fractional_frequency, ratio_text
     from clockgeo.frequency.reading import read_record
     from clockgeo.frequency.record import Record, Source
@@ -45,6 +46,8 @@ _HOMES = {
     "TickSeries": "mean",
     "draw_noise": "generator",
     "fit_noise": "noise_fit",
+    "PowerLawFit": "power_law_fit",
+    "fit_power_laws": "power_law_fit",
     "mean_covariance": "mean",
     # records
     "Finding": "diagnosis",
@@ -83,9 +86,11 @@ __all__ = [
     "assess_stability",
     "NoiseFit",
     "NoiseModel",
+    "PowerLawFit",
     "TickSeries",
     "draw_noise",
     "fit_noise",
+    "fit_power_laws",
     "mean_covariance",
     "Finding",
     "Mask",

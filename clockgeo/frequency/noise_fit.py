@@ -12,7 +12,7 @@ from scipy import linalg, optimize, stats
 from clockgeo.errors import DataError
 from clockgeo.frequency.mean import TickSeries, block_kernel
 from clockgeo.frequency.noise import NoiseModel
-from clockgeo.frequency.noise_doubt import reference_prior, student_of_mixture
+from clockgeo.frequency.noise_doubt import reference_prior, schwarz_penalty, student_of_mixture
 from clockgeo.frequency.session_blocks import (
     SessionBlocks,
     difference,
@@ -49,8 +49,8 @@ class NoiseFit:
     degrees_of_freedom : float
         Of the uncertainty of a difference of session means (of the halves of a single session).
     information : dict of str to float
-        Corrected Akaike criterion of each candidate, smaller is better: `white_fm` alone, and
-        white with each of the slower laws.
+        Schwarz's criterion of each candidate, smaller is better: `white_fm` alone, and white with
+        each of the slower laws.
     flicker_limit : float
         Upper end of the one-sided 95 % profile interval of the flicker floor (beside white noise).
     block_seconds : float
@@ -133,9 +133,9 @@ def _fitted(blocks: SessionBlocks, contrasts: NDArray[np.float64], interval: flo
     freedom = contrasts.shape[1]
     fits = {law: _two_laws(law, blocks, contrasts) for law in _LAWS}
     white_alone = fits["flicker_fm"].white_alone
-    information = {"white_fm": white_alone.minus_two_log + _penalty(1, freedom)}
+    information = {"white_fm": white_alone.minus_two_log + schwarz_penalty(1, freedom)}
     for law, fit in fits.items():
-        information[law] = fit.best.minus_two_log + _penalty(2, freedom)
+        information[law] = fit.best.minus_two_log + schwarz_penalty(2, freedom)
     winner = min(information, key=lambda law: information[law])
     chosen = white_alone if winner == "white_fm" else fits[winner].best
     levels = {"white_fm": float(np.sqrt(chosen.white * interval))}
@@ -177,12 +177,6 @@ class _Fit:
     kernel: NDArray[np.float64]
     seen: NDArray[np.float64]
     """Variance of each eigencontrast under the slow law alone, in units of that of white noise."""
-
-
-def _penalty(parameters: int, freedom: int) -> float:
-    """Akaike's penalty with the correction for few data (Hurvich and Tsai 1989)."""
-    k = parameters
-    return 2.0 * k + 2.0 * k * (k + 1) / max(freedom - k - 1, 1)
 
 
 def _two_laws(law: str, blocks: SessionBlocks, contrasts: NDArray[np.float64]) -> _Fit:

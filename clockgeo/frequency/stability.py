@@ -14,6 +14,7 @@ from clockgeo.frequency.diagnosis import Finding, diagnose
 from clockgeo.frequency.mean import TickSeries, mean_covariance
 from clockgeo.frequency.noise import NoiseModel
 from clockgeo.frequency.noise_fit import NoiseFit, fit_noise
+from clockgeo.frequency.power_law_fit import PowerLawFit, fit_power_laws
 from clockgeo.frequency.record import Record
 
 __all__ = ["RecordMean", "RecordStability", "assess_stability"]
@@ -56,7 +57,10 @@ class RecordStability:
     curves : tuple of StabilityCurve
         One for each statistic asked for.
     fit : NoiseFit or None
-        Fitted noise; None where there are too few valid rows.
+        Noise of long averages, which u of the mean follows from; None where there are too few
+        valid rows.
+    laws : PowerLawFit or None
+        Levels of all power laws, from single rows to the whole record.
     mean : RecordMean
     tick : int64 array, shape (V,)
         Places of the rows that counted.
@@ -69,6 +73,7 @@ class RecordStability:
     record: Record
     curves: tuple[StabilityCurve, ...]
     fit: NoiseFit | None
+    laws: PowerLawFit | None
     mean: RecordMean
     tick: NDArray[np.int64]
     findings: tuple[Finding, ...]
@@ -76,8 +81,10 @@ class RecordStability:
 
     @property
     def model(self) -> NoiseModel | None:
-        """The fitted noise model."""
-        return None if self.fit is None else self.fit.model
+        """The fitted power laws with the drift; None where there are too few valid rows."""
+        if self.fit is None or self.laws is None:
+            return None
+        return self.laws.model.model_copy(update={"drift": self.fit.model.drift})
 
 
 def assess_stability(
@@ -130,7 +137,7 @@ def assess_stability(
             advice=error.advice,
         ) from None
     findings = diagnose(record, valid=counted)
-    fit, fit_note = _fitted(series, record.interval)
+    fit, laws, fit_note = _fitted(series, record.interval)
     mean = _mean(record, series, fit, findings)
     notes = [*record.notes, *dict.fromkeys(note for curve in curves for note in curve.notes)]
     notes += [note for note in (fit_note, _weighting_note(record)) if note]
@@ -138,6 +145,7 @@ def assess_stability(
         record=record,
         curves=curves,
         fit=fit,
+        laws=laws,
         mean=mean,
         tick=series.tick,
         findings=findings,
@@ -145,11 +153,29 @@ def assess_stability(
     )
 
 
-def _fitted(series: TickSeries, interval: float) -> tuple[NoiseFit | None, str | None]:
+def _fitted(
+    series: TickSeries, interval: float
+) -> tuple[NoiseFit | None, PowerLawFit | None, str | None]:
     try:
-        return fit_noise([series], interval=interval), None
+        fit = fit_noise([series], interval=interval)
+        laws = fit_power_laws([_undrifted(series, fit.model.drift * interval)], interval=interval)
     except DataError as error:
-        return None, f"no noise model was fitted: {error.what}; u of the mean is for white noise"
+        note = f"no noise model was fitted: {error.what}; u of the mean is for white noise"
+        return None, None, note
+    return fit, laws, None if laws.short_times else _short_note(laws)
+
+
+def _undrifted(series: TickSeries, drift: float) -> TickSeries:
+    if not drift:
+        return series
+    return TickSeries(series.tick, series.y - drift * (series.tick - series.tick[0]))
+
+
+def _short_note(laws: PowerLawFit) -> str:
+    return (
+        "short averages follow no power law together with the long ones, as behind a servo: the "
+        f"noise model holds from {laws.from_seconds:.3g} s"
+    )
 
 
 def _mean(

@@ -14,6 +14,7 @@ from clockgeo.errors import DataError, OutputError
 from clockgeo.files import json_text, netcdf_file, whole_file, write_text
 from clockgeo.frequency.deviations import StabilityCurve
 from clockgeo.frequency.noise import NoiseModel
+from clockgeo.frequency.power_law_fit import PowerLawFit
 from clockgeo.frequency.stability import RecordStability
 from clockgeo.frequency.stability_statistics import find_statistic
 from clockgeo.times import iso_utc
@@ -98,6 +99,7 @@ def _one(result: RecordStability) -> dict[str, Any]:
         "weighting": record.weighting,
         "curves": [_curve(curve) for curve in result.curves],
         "noise_model": _model(result.model),
+        "noise_laws": _laws(result.laws),
         "noise_fit": None
         if result.fit is None
         else {name: value for name, value in vars(result.fit).items() if name not in ("model",)},
@@ -134,6 +136,20 @@ def _model(model: NoiseModel | None) -> dict[str, float | None]:
     """Levels of the laws; None where a law is absent."""
     names = NoiseModel.model_fields
     return {name: (getattr(model, name) or None) if model else None for name in names}
+
+
+def _laws(laws: PowerLawFit | None) -> dict[str, Any] | None:
+    """How well the levels of the noise model are known, and what else was tried."""
+    if laws is None:
+        return None
+    return {
+        "u": laws.u,
+        "order": laws.laws,
+        "covariance_of_squares": laws.covariance.tolist(),
+        "information": laws.information,
+        "short_times": laws.short_times,
+        "from_seconds": laws.from_seconds,
+    }
 
 
 def write_stability(

@@ -54,7 +54,7 @@ def test_the_likelihood_is_that_of_contrasts(rng):
         return float(-2.0 * logpdf - 59 * np.log(2.0 * np.pi))
 
     grid = [loss(w, s) for w in np.linspace(0.4, 2.0, 41) for s in np.linspace(0.0, 2.0, 41)]
-    penalty = 4.0 + 12.0 / (59 - 3)
+    penalty = 2.0 * np.log(59)
     assert fit.information["flicker_fm"] == pytest.approx(min(grid) + penalty, abs=0.05)
 
 
