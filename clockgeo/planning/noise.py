@@ -75,9 +75,9 @@ def noise_parts(campaign: Campaign, sessions: Sequence[Session]) -> dict[str, ND
     Notes
     -----
     The sum is what `frequency.mean_covariance` gives for records with these windows and uptimes.
-    As in levelling, slow noise of a clock is one process through all its sessions, and sessions
-    that share a clock at the same time share its white noise: σ² T_overlap/(T1 T2), which does not
-    depend on the uptimes where the gaps are independent.
+    As in levelling, slow noise of a clock or link is one process through all its sessions, and
+    sessions that share one at the same time share its white noise: σ² T_overlap/(T1 T2), which does
+    not depend on the uptimes where the gaps are independent.
     """
     interval = _interval(sessions)
     gapped = [_series(one, interval, one.uptime) for one in sessions]
@@ -93,13 +93,14 @@ def noise_parts(campaign: Campaign, sessions: Sequence[Session]) -> dict[str, ND
         )
         fast, slow = _fast_and_slow(clock.instability)
         full = _block(fast, whole, signs, interval)
-        parts[STATISTICS] += full + _overlaps(clock.instability, whole, signs, interval)
-        parts[DEAD_TIME] += _block(fast, gapped, signs, interval) - full
+        parts[STATISTICS] += full
+        parts[DEAD_TIME] += _added_by_gaps(full, _block(fast, gapped, signs, interval))
         parts[FLICKER] += _block(slow, gapped, signs, interval)
     for link in campaign.links:
         signs = np.array([float(link.id in one.links) for one in sessions])
         fast, slow = _fast_and_slow(link.instability)
-        parts[LINK] += _block(fast, gapped, signs, interval)
+        full = _block(fast, whole, signs, interval)
+        parts[LINK] += full + _added_by_gaps(full, _block(fast, gapped, signs, interval))
         parts[LINK_FLOOR] += _block(slow, gapped, signs, interval)
     return parts
 
@@ -121,17 +122,9 @@ def _block(
     return block
 
 
-def _overlaps(
-    model: NoiseModel, series: Sequence[TickSeries], signs: NDArray[np.float64], interval: float
-) -> NDArray[np.float64]:
-    """Covariance from white noise of sessions without gaps that run at the same time."""
-    start = np.array([int(one.tick[0]) for one in series])
-    count = np.array([one.tick.size for one in series])
-    stop = start + count
-    common = np.minimum.outer(stop, stop) - np.maximum.outer(start, start)
-    shared = np.maximum(common, 0) / (np.outer(count, count) * interval)
-    np.fill_diagonal(shared, 0.0)
-    return np.asarray(np.outer(signs, signs) * model.white_fm**2 * shared)
+def _added_by_gaps(whole: NDArray[np.float64], gapped: NDArray[np.float64]) -> NDArray[np.float64]:
+    """What gaps add to variances; covariances of overlapping sessions do not depend on them."""
+    return np.diag(np.diag(gapped) - np.diag(whole))
 
 
 def _interval(sessions: Sequence[Session]) -> float:
