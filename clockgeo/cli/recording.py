@@ -39,6 +39,7 @@ class ValueKind(StrEnum):
     fractional = "fractional"
     ratio = "ratio"
     offset = "offset"
+    time_error = "time_error"
 
 
 class StampKind(StrEnum):
@@ -188,7 +189,7 @@ _OPTIONS: dict[str, tuple[Any, Any]] = {
         "Column of the times, by number from 1 or name.  [default: 1]",
     ),
     "value": _option(
-        ValueKind, ValueKind.fractional, "--value", "Fractional, full ratio, or offset in Hz."
+        ValueKind, ValueKind.fractional, "--value", "Fractional, full ratio, offset in Hz, or time error in s."
     ),
     "value_column": _option(
         str | None, None, "--value-column", "Column of the values.  [default: 2]"

@@ -25,8 +25,9 @@ class RecordLayout(Table):
     """How times are written: Modified Julian Date (UTC) or ISO 8601."""
     time_column: Column = 1
     """Column, or netCDF variable, of the times."""
-    value: Literal["fractional", "ratio", "offset"] = "fractional"
-    """Fractional deviation, full ratio against the nominal one, or offset in Hz of a carrier."""
+    value: Literal["fractional", "ratio", "offset", "time_error"] = "fractional"
+    """Fractional deviation, full ratio against the nominal one, offset in Hz of a carrier, or time
+    error in s at the instant of its stamp."""
     value_column: Column = 2
     """Column, or netCDF variable, of the values."""
     flag_column: Column | None = None
@@ -46,6 +47,9 @@ class RecordLayout(Table):
     def _flags_stated(self) -> RecordLayout:
         if (self.flag_column is None) != (not self.valid_flags):
             message = "flag_column and valid_flags belong together: say which flags may be used"
+            raise ValueError(message)
+        if self.value == "time_error" and (self.u_column is not None or self.stamp != "start"):
+            message = "time errors belong to the instant of their stamp: no stamp, no u_column"
             raise ValueError(message)
         if not self.files:
             message = "no file is named"

@@ -17,6 +17,7 @@ from clockgeo.frequency.ordering import in_order
 from clockgeo.frequency.record import Record, Source
 from clockgeo.frequency.rows import BadRows, Rows
 from clockgeo.frequency.sampling import Sampling, sample_ticks
+from clockgeo.frequency.time_error import frequency_of_time_errors
 from clockgeo.times import SECOND_NS, iso_utc
 
 __all__ = ["read_record"]
@@ -85,10 +86,10 @@ def read_record(
     read = sum(table.y.size for table in tables) + len(bad.places)
     notes = [bad.settle("cannot be used", read, skip=skip_bad_rows)]
     rows, ordering = in_order(tables, skip_bad_rows=skip_bad_rows)
-    _check_rows(rows, layout, name, latest_ns)
+    _check_rows(rows, name, latest_ns)
     sampling = sample_ticks(rows.tai_ns, interval=layout.interval)
     shift = {"start": 0.0, "middle": 0.5, "end": 1.0}[layout.stamp]
-    return Record(
+    record = Record(
         name=name,
         tai_ns=rows.tai_ns - round(shift * sampling.interval * SECOND_NS),
         y=rows.y,
@@ -100,6 +101,10 @@ def read_record(
         notes=tuple(note for note in [*notes, *ordering, *_about(sampling)] if note),
         weighting=layout.weighting,
     )
+    if layout.value == "time_error":
+        record = frequency_of_time_errors(record)
+    _refuse_far_values(record, layout)
+    return record
 
 
 def _reference(
@@ -118,7 +123,7 @@ def _reference(
             where=name,
             advice="Name the carrier's transition, or give its frequency in Hz as decimal text",
         )
-    reference = {"ratio": nominal_ratio, "offset": carrier, "fractional": None}[layout.value]
+    reference = {"ratio": nominal_ratio, "offset": carrier}.get(layout.value)
     if reference is not None and reference <= 0:
         raise DataError("a nominal value must be positive", value=str(reference), where=name)
     return reference
@@ -177,8 +182,8 @@ def _rows(
     return text_rows(path, content, layout, nominal=nominal, where=shown, bad=bad)
 
 
-def _check_rows(rows: Rows, layout: RecordLayout, name: str, latest_ns: int | None) -> None:
-    """Refuse records without a usable value, with values of another kind, or from the future."""
+def _check_rows(rows: Rows, name: str, latest_ns: int | None) -> None:
+    """Refuse records without a usable value, or from the future."""
     if not np.any(rows.usable):
         raise DataError(
             "no row is usable: every value is nan or flagged",
@@ -195,18 +200,22 @@ def _check_rows(rows: Rows, layout: RecordLayout, name: str, latest_ns: int | No
             allowed=f"Stamps up to {iso_utc(latest_ns)}",
             advice="Check which column holds the time, and its unit",
         )
-    usable = rows.y[rows.usable]
+
+
+def _refuse_far_values(record: Record, layout: RecordLayout) -> None:
+    usable = record.y[record.usable]
     typical = float(np.median(np.abs(usable[:: usable.size // _ENOUGH_ROWS + 1])))
     if typical > _LARGEST_TYPICAL_Y:
         raise DataError(
             "the values are far from what they should be close to",
             value=f"typical fractional frequency {typical:.3g}",
-            where=name,
+            where=record.name,
             allowed=f"Typical values up to {_LARGEST_TYPICAL_Y:g}",
             advice={
                 "ratio": "Check the nominal ratio: is it the right pair, and the right way up?",
                 "offset": "Check the carrier, and that the column holds its offset in Hz",
                 "fractional": "Check value_column, and whether it holds ratios or offsets in Hz",
+                "time_error": "Check value_column, and that it holds time errors in s",
             }[layout.value],
         )
 

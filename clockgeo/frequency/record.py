@@ -9,6 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from clockgeo.errors import DataError
+from clockgeo.frequency.mean import TickSeries
 from clockgeo.times import SECOND_NS
 
 __all__ = ["Record", "Source"]
@@ -49,6 +50,9 @@ class Record:
         What reading found worth telling.
     weighting : "pi", "lambda" or None
         Weighting of the counter that averaged each row, where it is known.
+    time_error : TickSeries or None
+        Time errors in s that the frequencies are differences of, where such were recorded; ticks as
+        those of the rows they start.
     """
 
     name: str
@@ -61,6 +65,7 @@ class Record:
     sources: tuple[Source, ...] = ()
     notes: tuple[str, ...] = ()
     weighting: Literal["pi", "lambda"] | None = None
+    time_error: TickSeries | None = None
 
     def __post_init__(self) -> None:
         columns = [self.tai_ns, self.y, self.usable, self.tick]

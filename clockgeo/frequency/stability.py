@@ -14,6 +14,7 @@ from clockgeo.frequency.diagnosis import Finding, diagnose
 from clockgeo.frequency.mean import TickSeries, mean_covariance
 from clockgeo.frequency.noise import NoiseModel
 from clockgeo.frequency.noise_fit import NoiseFit, fit_noise
+from clockgeo.frequency.phase_deviations import phase_stability_curve
 from clockgeo.frequency.power_law_fit import PowerLawFit, fit_power_laws
 from clockgeo.frequency.record import Record
 
@@ -125,8 +126,7 @@ def assess_stability(
     series = TickSeries(record.tick[counted], record.y[counted])
     try:
         curves = tuple(
-            stability_curve(series, name, interval=record.interval, tau=tau, level=level)
-            for name in statistics
+            _curve(record, series, name, tau, level, whole=valid is None) for name in statistics
         )
     except DataError as error:
         raise DataError(
@@ -151,6 +151,23 @@ def assess_stability(
         findings=findings,
         notes=tuple(notes),
     )
+
+
+def _curve(
+    record: Record,
+    series: TickSeries,
+    statistic: str,
+    tau: str | Sequence[float],
+    level: float,
+    *,
+    whole: bool,
+) -> StabilityCurve:
+    """One curve; of the time errors themselves where they were recorded and all count."""
+    if record.time_error is not None and whole:
+        return phase_stability_curve(
+            record.time_error, statistic, interval=record.interval, tau=tau, level=level
+        )
+    return stability_curve(series, statistic, interval=record.interval, tau=tau, level=level)
 
 
 def _fitted(

@@ -88,6 +88,12 @@ def write_record(
     if stamps.shape != values.shape or stamps.ndim != 1 or not stamps.size:
         shapes = f"{stamps.shape} and {values.shape}"
         raise DataError("times and values need one common length, at least 1", value=shapes)
+    if layout.value == "time_error":
+        raise DataError(
+            "time errors are read, not written",
+            value=str(path),
+            advice="Write fractional frequencies, or state value = 'fractional' for this record",
+        )
     if np.any(np.isinf(values)):
         raise DataError("a fractional frequency is infinite", allowed="Finite values, or NaN")
     flags = np.isfinite(values) if usable is None else np.asarray(usable, dtype=bool)

@@ -219,3 +219,54 @@ def test_help_names_every_option(monkeypatch):
     for option in ("--statistic", "--tau", "--confidence", "--flywheel", "--picture", "--out"):
         assert option in told
     assert len(STATISTICS) == 10
+
+
+def time_errors(folder, x, missing=()):
+    """A file with one time error a second, in s with all digits."""
+    kept = np.setdiff1d(np.arange(len(x)), missing)
+    path = folder / "time-errors.txt"
+    days = [f"{61_500 + int(k) / 86_400:.9f} {x[k]!r}" for k in kept]
+    path.write_text("\n".join(days) + "\n", encoding="utf-8")
+    return path
+
+
+def test_time_errors_give_the_published_digits(tmp_path):
+    x = np.concatenate(([0.0], np.cumsum(thousand() * 1e-15))).tolist()
+    path = time_errors(tmp_path, x)
+    names = ",".join(OF_THOUSAND)
+    told = json.loads(
+        run(
+            path, "--value", "time_error", "--statistic", names, "--tau", "1,10,100", "--json"
+        ).stdout
+    )
+    for curve in told["curves"]:
+        for point, text in zip(curve["points"], OF_THOUSAND[curve["statistic"]], strict=True):
+            assert_close(point["deviation"] * 1e15 / float(text), 1.0, tolerance=2e-6)
+
+
+def test_time_errors_go_on_through_a_gap(tmp_path):
+    """Second route: squares of every complete triple of time errors, gap or no gap between."""
+    rng = np.random.default_rng(3)
+    x = np.cumsum(1e-15 * rng.standard_normal(2_000)).tolist()
+    missing = np.arange(900, 950)
+    path = time_errors(tmp_path, x, missing)
+    result = run(path, "--value", "time_error", "--tau", "64", "--json")
+    assert result.exit_code == 0, result.output
+    told = json.loads(result.stdout)
+    kept = np.array(x)
+    kept[missing] = np.nan
+    second = kept[128:] - 2.0 * kept[64:-64] + kept[:-128]
+    expected = np.sqrt(np.nanmean(second**2) / 2.0) / 64.0
+    (point,) = told["curves"][0]["points"]
+    assert point["deviation"] == pytest.approx(expected, rel=1e-9)
+    assert point["count"] == np.count_nonzero(~np.isnan(second))
+
+
+def test_time_errors_far_apart_or_with_a_place_in_the_gate_are_refused(tmp_path):
+    path = time_errors(tmp_path, [0.0] * 40, np.arange(1, 40, 2))
+    told = run(path, "--value", "time_error", "--interval", "1")
+    assert told.exit_code == 1
+    assert "no two time errors are one interval apart" in told.stderr
+    told = run(path, "--value", "time_error", "--stamp", "end")
+    assert told.exit_code == 2
+    assert "time errors belong to the instant" in told.stderr.replace("\n", " ")

@@ -316,3 +316,9 @@ def test_a_damaged_netcdf_is_refused(tmp_path, content):
     (tmp_path / "f.nc").write_bytes(content)
     with pytest.raises(DataError, match="not netCDF, or is damaged"):
         read_record(RecordLayout(**FOREIGN), base=tmp_path, name="lab")
+
+
+def test_time_errors_are_not_written(tmp_path):
+    layout = RecordLayout(file="x.txt", value="time_error")
+    with pytest.raises(DataError, match="time errors are read, not written"):
+        write_record(tmp_path / "x.txt", np.arange(3) * 10**9, np.zeros(3), layout=layout)
