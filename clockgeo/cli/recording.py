@@ -189,7 +189,10 @@ _OPTIONS: dict[str, tuple[Any, Any]] = {
         "Column of the times, by number from 1 or name.  [default: 1]",
     ),
     "value": _option(
-        ValueKind, ValueKind.fractional, "--value", "Fractional, full ratio, offset in Hz, or time error in s."
+        ValueKind,
+        ValueKind.fractional,
+        "--value",
+        "Fractional, full ratio, offset in Hz, or time error in s.",
     ),
     "value_column": _option(
         str | None, None, "--value-column", "Column of the values.  [default: 2]"
