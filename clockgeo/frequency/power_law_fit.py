@@ -55,8 +55,9 @@ class PowerLawFit:
         Schwarz's criterion of every set of laws that was tried (joined by " + "); the smaller the
         better.
     short_times : bool
-        Whether single samples took part. They do not where they fall under no power law together
-        with the long averages, as behind a servo; the levels then hold beyond `from_seconds`.
+        Whether single samples took part. They do not where they are no plain averages, or fall
+        under no power law together with the long ones, as behind a servo; the levels then hold
+        beyond `from_seconds`.
     from_seconds : float
         Averaging time from which on the model holds.
     """
@@ -70,7 +71,9 @@ class PowerLawFit:
     from_seconds: float
 
 
-def fit_power_laws(series: Sequence[TickSeries], *, interval: float) -> PowerLawFit:
+def fit_power_laws(
+    series: Sequence[TickSeries], *, interval: float, single_samples: bool = True
+) -> PowerLawFit:
     """Fit white and flicker PM, white, flicker and random-walk FM to gapped sessions.
 
     Parameters
@@ -79,6 +82,9 @@ def fit_power_laws(series: Sequence[TickSeries], *, interval: float) -> PowerLaw
         Sessions of one process on one time line, each with a mean of its own.
     interval : float
         Length of a tick in s.
+    single_samples : bool
+        Whether samples are plain averages over their ticks. Those of a Λ counter are not, and tell
+        nothing of power laws one by one; only means of many are taken then.
 
     Raises
     ------
@@ -93,7 +99,7 @@ def fit_power_laws(series: Sequence[TickSeries], *, interval: float) -> PowerLaw
     likelier by far at other levels, single samples follow no power law with them and are left out.
     """
     ticks = sum(int(one.tick[-1] - one.tick[0]) + 1 for one in series)
-    number = ticks if ticks <= _WHOLE else _BLOCKS
+    number = ticks if ticks <= _WHOLE and single_samples else _BLOCKS
     blocks = session_blocks(series, interval, blocks=number, means=None)
     contrasts = mean_contrasts(blocks)
     if contrasts.shape[1] < _FEWEST_CONTRASTS:
@@ -104,8 +110,9 @@ def fit_power_laws(series: Sequence[TickSeries], *, interval: float) -> PowerLaw
         )
     width = round(blocks.width / interval)
     between = _between(series, blocks, contrasts, width, interval)
-    within = list(_within(series, blocks, width, interval)) if width > 1 else []
-    short = bool(within) or width == 1
+    take = single_samples and width > 1
+    within = list(_within(series, blocks, width, interval)) if take else []
+    short = single_samples and (bool(within) or width == 1)
     with threadpool_limits(limits=1, user_api="blas"):
         # The matrices are so small that threads would only wait for each other.
         chosen, information = _chosen([between, *within], LAWS if short else _SLOW)

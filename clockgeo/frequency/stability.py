@@ -137,7 +137,7 @@ def assess_stability(
             advice=error.advice,
         ) from None
     findings = diagnose(record, valid=counted)
-    fit, laws, fit_note = _fitted(series, record.interval)
+    fit, laws, fit_note = _fitted(series, record)
     mean = _mean(record, series, fit, findings)
     notes = [*record.notes, *dict.fromkeys(note for curve in curves for note in curve.notes)]
     notes += [note for note in (fit_note, _weighting_note(record)) if note]
@@ -171,15 +171,17 @@ def _curve(
 
 
 def _fitted(
-    series: TickSeries, interval: float
+    series: TickSeries, record: Record
 ) -> tuple[NoiseFit | None, PowerLawFit | None, str | None]:
+    interval, plain = record.interval, record.weighting != "lambda"
     try:
         fit = fit_noise([series], interval=interval)
-        laws = fit_power_laws([_undrifted(series, fit.model.drift * interval)], interval=interval)
+        undrifted = _undrifted(series, fit.model.drift * interval)
+        laws = fit_power_laws([undrifted], interval=interval, single_samples=plain)
     except DataError as error:
         note = f"no noise model was fitted: {error.what}; u of the mean is for white noise"
         return None, None, note
-    return fit, laws, None if laws.short_times else _short_note(laws)
+    return fit, laws, _short_note(laws) if plain and not laws.short_times else None
 
 
 def _undrifted(series: TickSeries, drift: float) -> TickSeries:
@@ -220,5 +222,5 @@ def _weighting_note(record: Record) -> str | None:
     return (
         "the counter weights each row by a triangle (Λ): up to about "
         f"{_SHORT * record.interval:g} s plain deviations lie below those of unweighted averages "
-        "and fall like the modified one; the noise model rests on longer averages"
+        "and fall like the modified one; the noise model rests on means of many rows"
     )

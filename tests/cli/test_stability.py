@@ -161,6 +161,7 @@ def test_flywheel_adds_the_u_of_dead_time(tmp_path, rng):
 def test_lambda_weighting_is_told(gapped):
     told = json.loads(run(gapped, "--weighting", "lambda", "--json").stdout)
     assert told["weighting"] == "lambda"
+    assert told["noise_laws"]["short_times"] is False
     assert any("triangle (Λ)" in note for note in told["notes"])
     plain = json.loads(run(gapped, "--json").stdout)
     assert plain["weighting"] is None

@@ -145,3 +145,18 @@ def test_scale_does_as_it_must(rng):
 def test_too_few_samples_are_refused():
     with pytest.raises(DataError, match=r"too few valid samples to fit power laws.*4 blocks"):
         fit_power_laws([TickSeries(np.arange(4), np.arange(4.0))], interval=1.0)
+
+
+def test_rows_of_a_lambda_counter_do_not_count_one_by_one():
+    """Triangular weights over two gates keep the mean; a third of the white variance is gone."""
+    rng = np.random.default_rng(12)
+    fine = rng.standard_normal((20_001, 40))
+    rising, falling = (np.arange(40) + 0.5) / 40.0, (39.5 - np.arange(40)) / 40.0
+    rows = fine[:-1] @ rising / 40.0 + fine[1:] @ falling / 40.0
+    series = [TickSeries(np.arange(rows.size), rows)]
+    true = 1.0 / np.sqrt(40.0)
+    assert np.std(rows) == pytest.approx(true * np.sqrt(2.0 / 3.0), rel=0.05)
+    fit = fit_power_laws(series, interval=1.0, single_samples=False)
+    assert not fit.short_times
+    assert fit.model.white_fm == pytest.approx(true, abs=3.0 * fit.u["white_fm"])
+    assert fit.model.white_pm == fit.model.flicker_pm == 0.0
