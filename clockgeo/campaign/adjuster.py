@@ -91,7 +91,7 @@ def _result(assembled: Assembled, adjustment: Adjustment, reliability: Reliabili
         notes.append(f"sites without a number from these observations: {', '.join(left)}")
     solution = adjustment.solution_for([NumberOf(name) for name in solved])
     pairs = site_pairs(campaign, solved)
-    scatter_u = statistics.scatter_u if statistics else 0.0
+    scatter = statistics.scatter_covariance if statistics else None
     search = find_blunders(reliability)
     groups = dict(rows.groups)
     if sessions.measured:
@@ -127,7 +127,7 @@ def _result(assembled: Assembled, adjustment: Adjustment, reliability: Reliabili
         sites=tuple(site_results(campaign, solution, solved)),
         differences=tuple(differences(campaign, solution, pairs, statistics)),
         covariance=covariance_of(solution, solved),
-        effects=tuple(budget(campaign, solution, pairs, scatter_u)),
+        effects=tuple(budget(campaign, solution, pairs, scatter)),
         fit=FitResult(
             chi_squared=adjustment.fit.chi_squared,
             degrees_of_freedom=adjustment.fit.degrees_of_freedom,

@@ -107,7 +107,7 @@ def _fitted(
     measured: Sequence[Measured],
     alike: Sequence[int],
 ) -> Group:
-    scatters = campaign.head.scatter == "estimate" and len(measured) >= _SCATTER_FROM
+    scatters = campaign.head.scatter != "none" and len(measured) >= _SCATTER_FROM
     owners = list(range(len(places))) if scatters else _renumbered([alike[k] for k in places])
     series = [pair_series(measured[place]) for place in places]
     interval = measured[places[0]].record.interval

@@ -185,7 +185,7 @@ def level_measured(
         sites=tuple(site_results(campaign, solution, solved)),
         differences=tuple(differences(campaign, solution, pairs, statistics)),
         covariance=covariance_of(solution, solved),
-        effects=tuple(budget(campaign, solution, pairs, statistics.scatter_u)),
+        effects=tuple(budget(campaign, solution, pairs, statistics.scatter_covariance)),
         fit=FitResult(
             chi_squared=solution.fit.chi_squared,
             degrees_of_freedom=solution.fit.degrees_of_freedom,

@@ -67,8 +67,9 @@ class Head(Table):
     """Whether the time-variable solid-Earth tide is removed epoch by epoch."""
     pole_coordinates: str | None = None
     """File with observed coordinates of the rotation pole; adds the pole tide."""
-    scatter: Literal["estimate", "none"] = "estimate"
-    """Whether excess scatter between sessions is estimated and added to u."""
+    scatter: Literal["estimate", "by_stay", "none"] = "estimate"
+    """Whether excess scatter is estimated and added to u: of each session, of each configuration
+    (sessions for which both clocks stay where they are share one offset), or not at all."""
     screening: ScreeningRules = ScreeningRules()
     """How epochs of all records are flagged."""
 

@@ -24,7 +24,7 @@ from clockgeo.frequency import (
 )
 from clockgeo.levelling.linear_model import ModelBuilder
 from clockgeo.levelling.redshift import potential_from_shift
-from clockgeo.levelling.session_rows import SessionMean, add_session_rows
+from clockgeo.levelling.session_rows import SessionMean, add_session_rows, stays_of
 
 __all__ = ["SessionStatistics", "session_statistics"]
 
@@ -38,7 +38,9 @@ class SessionStatistics:
     covariance : float array, shape (K, K)
         Statistical covariance of the means, excess scatter included, fractional squared.
     scatter_u : float
-        Excess scatter that is included, fractional.
+        Excess scatter of a session that is included, fractional.
+    scatter_covariance : float array, shape (K, K)
+        The same for all sessions together, fractional squared.
     freedom : float
         Degrees of freedom of the statistical u of the means, excess scatter included.
     """
@@ -47,6 +49,7 @@ class SessionStatistics:
     groups: tuple[Group, ...]
     scatter: ScatterResult | None
     scatter_u: float
+    scatter_covariance: NDArray[np.float64]
     freedom: float
     findings: tuple[tuple[str, ...], ...]
     notes: tuple[str, ...]
@@ -54,7 +57,7 @@ class SessionStatistics:
     @property
     def without_scatter(self) -> NDArray[np.float64]:
         """Statistical covariance of the means without excess scatter."""
-        return self.covariance - np.eye(len(self.covariance)) * self.scatter_u**2
+        return self.covariance - self.scatter_covariance
 
     def noise_results(self, measured: Sequence[Measured]) -> tuple[NoiseResult, ...]:
         """The noise models as they stand in the result; zero levels as null."""
@@ -117,16 +120,16 @@ def session_statistics(
         for one, added in zip(measured, dead_time, strict=True)
         if added > 0.0
     ]
-    excess = _excess(campaign, covariance, means)
-    applied = excess is not None and excess.standard_deviation > 0.0
-    scatter_u = excess.standard_deviation if applied and excess is not None else 0.0
-    if applied and excess is not None:
-        covariance = covariance + np.eye(len(measured)) * scatter_u**2
+    sharing = _sharing(campaign, means)
+    excess = _excess(campaign, covariance, means, sharing)
+    scatter_u = excess.standard_deviation if excess is not None else 0.0
+    scattered = sharing * scatter_u**2
     return SessionStatistics(
-        covariance=covariance,
+        covariance=covariance + scattered,
         groups=groups,
-        scatter=_scatter_result(excess, applied=applied),
+        scatter=_scatter_result(excess),
         scatter_u=scatter_u,
+        scatter_covariance=scattered,
         freedom=min(
             *(group.degrees_of_freedom for group in groups),
             excess.effective_freedom if excess else float("inf"),
@@ -165,8 +168,30 @@ def _dead_time(campaign: Campaign, one: Measured) -> float:
     return sum(dead_time_variance(flywheel, windows, total) for flywheel in flywheels)
 
 
+def _sharing(campaign: Campaign, means: Sequence[SessionMean]) -> NDArray[np.float64]:
+    """1 where two sessions have the same offset: each its own, or one a configuration.
+
+    An offset is that of the pair of clocks; run the other way round it has the other sign.
+    """
+    if campaign.head.scatter != "by_stay":
+        return np.eye(len(means))
+    stays = stays_of(means)
+    numbers: dict[frozenset[tuple[str, str]], int] = {}
+    rows = np.zeros((len(means), len(means)))
+    for place, mean in enumerate(means):
+        ends = [
+            (clock.id, stays[clock.id, mean.id]) for clock in (mean.numerator, mean.denominator)
+        ]
+        column = numbers.setdefault(frozenset(ends), len(numbers))
+        rows[place, column] = 1.0 if ends[0] <= ends[1] else -1.0
+    return np.asarray(rows @ rows.T)
+
+
 def _excess(
-    campaign: Campaign, covariance: NDArray[np.float64], means: Sequence[SessionMean]
+    campaign: Campaign,
+    covariance: NDArray[np.float64],
+    means: Sequence[SessionMean],
+    sharing: NDArray[np.float64],
 ) -> ExcessScatter | None:
     """Excess scatter of the sessions about the solution, given all that is stated."""
     if campaign.head.scatter == "none":
@@ -176,11 +201,14 @@ def _excess(
     model = builder.build()
     scale = potential_from_shift(1.0)
     return excess_scatter(
-        model.values / scale, model.covariance() / scale**2, model.design.toarray()
+        model.values / scale,
+        model.covariance() / scale**2,
+        model.design.toarray(),
+        sharing=sharing,
     )
 
 
-def _scatter_result(excess: ExcessScatter | None, *, applied: bool) -> ScatterResult | None:
+def _scatter_result(excess: ExcessScatter | None) -> ScatterResult | None:
     if excess is None or excess.degrees_of_freedom == 0:
         return None
     return ScatterResult(
@@ -188,5 +216,5 @@ def _scatter_result(excess: ExcessScatter | None, *, applied: bool) -> ScatterRe
         lower=excess.lower,
         upper=excess.upper if np.isfinite(excess.upper) else None,
         birge_ratio=excess.birge_ratio,
-        applied=applied,
+        applied=excess.standard_deviation > 0.0,
     )

@@ -6,6 +6,7 @@ from collections.abc import Iterable, Iterator, Mapping, Sequence
 from itertools import combinations
 
 import numpy as np
+from numpy.typing import NDArray
 from scipy import stats
 
 from clockgeo.campaign.results import (
@@ -125,7 +126,7 @@ def differences(
         in_height = {NumberOf(second): high_slope, NumberOf(first): -low_slope}
         effective = float("inf")
         if statistics is not None:
-            scatter, noise = statistical_parts(solution, combination, statistics.scatter_u)
+            scatter, noise = statistical_parts(solution, combination, statistics.scatter_covariance)
             statistical = float(np.hypot(noise, scatter))
             effective = effective_freedom(u, [(statistical, statistics.freedom)])
         finite = effective if np.isfinite(effective) else 1e9
@@ -154,7 +155,7 @@ def covariance_of(solution: Solution, solved: Sequence[str]) -> CovarianceTable:
 
 
 def statistical_parts(
-    solution: Solution, combination: Combination, scatter_u: float
+    solution: Solution, combination: Combination, scatter: NDArray[np.float64] | None
 ) -> tuple[float, float]:
     """Parts of u from excess scatter and from noise, in m² s⁻².
 
@@ -163,21 +164,22 @@ def statistical_parts(
     solution : Solution
     combination : mapping
         Unknown -> coefficient.
-    scatter_u : float
-        Excess scatter of each session that is part of the rows' noise, fractional.
+    scatter : float array, shape (K, K), or None
+        Excess scatter of the sessions that is part of the rows' noise, fractional squared.
     """
     weights = solution.weights(combination) @ solution.gain
-    clock_rows = np.array(solution.model.kinds) == "clock"
-    scatter = potential_from_shift(scatter_u) * float(np.linalg.norm(weights[clock_rows]))
-    noise = solution.noise_u(combination, "clock") ** 2 - scatter**2
-    return scatter, max(noise, 0.0) ** 0.5
+    of_sessions = weights[np.array(solution.model.kinds) == "clock"]
+    variance = 0.0 if scatter is None else float(of_sessions @ scatter @ of_sessions)
+    of_scatter = potential_from_shift(max(variance, 0.0) ** 0.5)
+    noise = solution.noise_u(combination, "clock") ** 2 - of_scatter**2
+    return of_scatter, max(noise, 0.0) ** 0.5
 
 
 def budget(
     campaign: Campaign,
     solution: Solution,
     pairs: Sequence[tuple[str, str]],
-    scatter_u: float,
+    scatter_covariance: NDArray[np.float64] | None,
 ) -> Iterator[EffectLine]:
     """Split the u of every pair by cause; the squares of the lines add up to u squared.
 
@@ -187,13 +189,13 @@ def budget(
         What was solved.
     pairs : sequence of (str, str)
         Which differences.
-    scatter_u : float
-        Excess scatter of each session that is part of the rows' noise, fractional.
+    scatter_covariance : float array, shape (K, K), or None
+        Excess scatter of the sessions that is part of the rows' noise, fractional squared.
     """
     for first, second in pairs:
         combination = {NumberOf(second): 1.0, NumberOf(first): -1.0}
         gravity = campaign.site(second).gravity or 9.81
-        scatter, noise = statistical_parts(solution, combination, scatter_u)
+        scatter, noise = statistical_parts(solution, combination, scatter_covariance)
         lines = [
             ("noise of clocks and links", "statistics", noise),
             ("excess scatter between sessions", "scatter", scatter),

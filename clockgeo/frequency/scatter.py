@@ -15,6 +15,8 @@ __all__ = ["HIDDEN", "ExcessScatter", "excess_scatter"]
 
 HIDDEN = 3.0
 """Factor on the freedom where no excess is found."""
+_BLIND = 1e-9
+"""Share of the largest below which a contrast sees nothing of the offsets."""
 
 
 @dataclass(frozen=True)
@@ -30,7 +32,7 @@ class ExcessScatter:
     birge_ratio : float or None
         Square root of chi squared over its degrees of freedom, a diagnostic only.
     degrees_of_freedom : int
-        Number of values minus the rank of the design.
+        Number of values, or groups, minus what the design takes up.
     p_value : float or None
         Probability of a larger chi squared without any excess.
     """
@@ -57,9 +59,13 @@ class ExcessScatter:
 
 
 def excess_scatter(
-    values: ArrayLike, covariance: ArrayLike, design: ArrayLike | None = None
+    values: ArrayLike,
+    covariance: ArrayLike,
+    design: ArrayLike | None = None,
+    *,
+    sharing: ArrayLike | None = None,
 ) -> ExcessScatter:
-    """Estimate a random offset of each value beyond its stated covariance.
+    """Estimate a random offset of each value, or of each group, beyond the stated covariance.
 
     Parameters
     ----------
@@ -69,6 +75,8 @@ def excess_scatter(
         Their covariance without excess, positive definite.
     design : array, shape (K, p), optional
         What the values have in common; a constant if absent.
+    sharing : array, shape (K, K), optional
+        1 where two values have the same offset, else 0; each has its own if absent.
 
     Raises
     ------
@@ -77,8 +85,9 @@ def excess_scatter(
 
     Notes
     -----
-    Maximises the restricted likelihood of V + s² I over s² >= 0 (Patterson and Thompson 1971,
-    Biometrika 58:545). With no degree of freedom left nothing can be said: s = 0, upper = inf.
+    Maximises the restricted likelihood of V + s² R over s² >= 0, R the sharing (Patterson and
+    Thompson 1971, Biometrika 58:545). With no degree of freedom left nothing can be said: s = 0,
+    upper = inf. Degrees of freedom are those of the offsets that contrasts see.
     """
     y = np.asarray(values, dtype=np.float64)
     V = np.asarray(covariance, dtype=np.float64)
@@ -95,26 +104,30 @@ def excess_scatter(
     # Contrasts see nothing of the common part; simultaneous diagonalisation makes s^2 a scalar.
     scale = float(np.mean(np.diag(V)))
     inner = contrasts.T @ (V / scale) @ contrasts
-    levels, turn = linalg.eigh(inner)
-    if levels[0] <= 0.0:
-        raise DataError("the covariance of the values is not positive definite", value=levels[0])
+    R = np.eye(y.size) if sharing is None else np.asarray(sharing, dtype=np.float64)
+    try:
+        shares, turn = linalg.eigh(contrasts.T @ R @ contrasts, inner)
+    except linalg.LinAlgError:
+        raise DataError("the covariance of the values is not positive definite") from None
+    shares = np.where(shares > _BLIND * shares[-1], shares, 0.0)
     squares = (turn.T @ (contrasts.T @ y)) ** 2 / scale
+    seen = int(np.count_nonzero(shares))
 
     def minus_two_log(excess: float) -> float:
-        total = levels + excess
+        total = 1.0 + excess * shares
         return float(np.sum(np.log(total) + squares / total))
 
-    ceiling = 10.0 * (float(np.sum(squares)) + float(levels[-1]))
+    ceiling = 10.0 * (float(np.sum(squares)) + 1.0) / float(shares[shares > 0.0].min())
     best = _minimum(minus_two_log, ceiling)
     lower, upper = _profile(minus_two_log, best, ceiling)
-    chi = float(np.sum(squares / levels))
+    chi = float(np.sum(squares))
     root = np.sqrt(scale)
     return ExcessScatter(
         standard_deviation=float(root * np.sqrt(best)),
         lower=float(root * np.sqrt(lower)),
         upper=float(root * np.sqrt(upper)),
         birge_ratio=float(np.sqrt(chi / freedom)),
-        degrees_of_freedom=freedom,
+        degrees_of_freedom=seen,
         p_value=float(stats.chi2.sf(chi, freedom)),
     )
 

@@ -122,7 +122,7 @@ def plan(document: Document, *, confirm_runs: int = 0, seed: int = 1) -> Planned
 
 
 def _scatter_note(document: Document, runs: int) -> Iterator[str]:
-    if runs and document.campaign.head.scatter == "estimate":
+    if runs and document.campaign.head.scatter != "none":
         yield (
             "levelling the simulated campaigns estimates excess scatter from a few sessions, which "
             'makes results scatter more than a plan can foresee; scatter = "none" leaves it out'

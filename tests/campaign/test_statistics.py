@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 
@@ -38,12 +40,12 @@ def campaign(sessions, links=(), *, clocks="abc", floor=0.0, sites=("home",)):
             "link": list(links),
             "session": [
                 {
-                    "id": f"{n}{d}",
+                    "id": f"{n}{d} {k}",
                     "numerator": {"clock": n, "site": "home"},
                     "denominator": {"clock": d, "site": "home"},
                     "links": [link["id"] for link in links],
                 }
-                for n, d in sessions
+                for k, (n, d) in enumerate(sessions)
             ],
         }
     )
@@ -151,6 +153,33 @@ def test_numbers_and_differences_are_correlated_too(rng, tmp_path):
     assert {one.first for one in differences} == {"near - home", "far - home"}
     for one in result.correlations:
         assert sum(one.parts.values()) == pytest.approx(one.coefficient, abs=1e-12)
+
+
+def test_scatter_by_stay_is_shared_within_a_configuration(rng, tmp_path):
+    """Two sessions at each of three stays: offsets of stays show, and do not average within one."""
+    document = campaign([("a", "c")] * 6, sites=("home", "near"))
+    head = document.head.model_copy(update={"scatter": "by_stay"})
+    sites = ["home", "home", "near", "near", "home", "home"]
+    placed = [
+        one.model_copy(
+            update={"numerator": one.numerator.model_copy(update={"site": site})},
+        )
+        for one, site in zip(document.sessions, sites, strict=True)
+    ]
+    document = document.model_copy(update={"head": head, "sessions": tuple(placed)})
+    records = [record(rng, range(9000 * k, 9000 * k + 4000)) for k in range(6)]
+    offsets = np.repeat([4e-17, 0.0, -4e-17], 2)
+    records = [replace(one, y=one.y + shift) for one, shift in zip(records, offsets, strict=True)]
+    result = solved(document, records, tmp_path)
+    scatter = result.scatter.standard_deviation
+    # Of two stays at home the sample deviation: 8e-17/√2, less some 1e-17 of noise.
+    assert scatter == pytest.approx(8e-17 / 2**0.5, rel=0.1)
+    alike = [one for one in result.correlations if one.coefficient > 0.9]
+    together = {one.second for one in alike if one.first == "ac 0"}
+    assert together == {"ac 1"}
+    # One degree of freedom is left, and the difference of the sites carries √1.5 of the offset.
+    (difference,) = result.differences
+    assert difference.u / 299_792_458.0**2 == pytest.approx(1.5**0.5 * scatter, rel=0.1)
 
 
 def test_a_flywheel_over_the_downtime_adds_its_dead_time(rng, tmp_path):

@@ -87,3 +87,36 @@ def test_bad_input_is_refused():
         excess_scatter([1.0, 2.0], np.eye(3))
     with pytest.raises(DataError, match="not positive definite"):
         excess_scatter([1.0, 2.0, 4.0], np.array([[1.0, 2, 0], [2, 1, 0], [0, 0, 1]]))
+
+
+def test_offsets_of_groups_against_a_search_of_the_likelihood(rng):
+    """Second route for shared offsets: three configurations of three sessions each."""
+    groups = np.kron(np.eye(3), np.ones((3, 3)))
+    values = 0.5 * rng.standard_normal(9) + np.repeat(4.0 * rng.standard_normal(3), 3)
+    found = excess_scatter(values, 0.25 * np.eye(9), sharing=groups)
+    assert found.degrees_of_freedom == 2
+    contrasts = np.linalg.svd(np.ones((1, 9)))[2][1:]
+    seen = contrasts @ values
+    grid = np.linspace(0.0, 30.0, 3001)
+    logs = [
+        stats.multivariate_normal.logpdf(
+            seen, cov=contrasts @ (0.25 * np.eye(9) + s**2 * groups) @ contrasts.T
+        )
+        for s in grid
+    ]
+    assert found.standard_deviation == pytest.approx(grid[int(np.argmax(logs))], abs=0.011)
+
+
+def test_scatter_of_groups_is_the_textbook_one():
+    """Balanced groups: variance of the group means less what their values bring in."""
+    values = np.array([5.0, 7.0, -4.0, -2.0, 1.0, 3.0])
+    groups = np.kron(np.eye(3), np.ones((2, 2)))
+    found = excess_scatter(values, np.eye(6), sharing=groups)
+    assert found.standard_deviation**2 == pytest.approx(
+        np.var([6.0, -3.0, 2.0], ddof=1) - 0.5, rel=1e-5
+    )
+
+
+def test_singular_covariances_are_refused():
+    with pytest.raises(DataError, match="not positive definite"):
+        excess_scatter([1.0, 2.0, 3.0], np.ones((3, 3)))
