@@ -38,7 +38,7 @@ class Group:
     fitted : bool
         False where the records are too short and the document's model is used.
     degrees_of_freedom : float
-        Of the fitted white level; infinite for a stated model.
+        Of the u that `model` gives a mean; infinite for a stated model.
     """
 
     name: str
@@ -130,7 +130,7 @@ def _fitted(
         ),
         fit.model,
         fitted=True,
-        degrees_of_freedom=fit.degrees_of_freedom,
+        degrees_of_freedom=float(fit.contrasts) if scatters else fit.degrees_of_freedom,
     )
 
 

@@ -55,6 +55,9 @@ class NoiseFit:
         Upper end of the one-sided 95 % profile interval of the flicker floor (beside white noise).
     block_seconds : float
         Length of the blocks that were averaged first.
+    contrasts : int
+        Contrasts between blocks that were fitted: the degrees of freedom of the white level of
+        `model`, if no slow noise is hidden.
     u_drift : float or None
         Standard uncertainty of the model's linear drift in 1/s under the averaged noise; the model
         holds a drift only where it is beyond three times that.
@@ -66,6 +69,7 @@ class NoiseFit:
     information: dict[str, float]
     flicker_limit: float
     block_seconds: float
+    contrasts: int
     u_drift: float | None = None
 
 
@@ -153,6 +157,7 @@ def _fitted(blocks: SessionBlocks, contrasts: NDArray[np.float64], interval: flo
         information=information,
         flicker_limit=float(np.sqrt(fits["flicker_fm"].upper_slow)),
         block_seconds=blocks.width,
+        contrasts=freedom,
     )
 
 

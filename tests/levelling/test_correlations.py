@@ -31,8 +31,8 @@ def clock(name, transition="87Sr"):
     return Clock(id=name, transition=transition, effect=effects)
 
 
-def model_of(pairs, values, *, statistics=0.0):
-    means = [
+def means_of(pairs, values):
+    return [
         SessionMean(
             id=f"{n}/{d}",
             numerator=clock(n),
@@ -45,8 +45,12 @@ def model_of(pairs, values, *, statistics=0.0):
         )
         for k, ((n, d), y) in enumerate(zip(pairs, values, strict=True))
     ]
+
+
+def model_of(pairs, values, *, statistics=0.0, noise=None):
+    means = means_of(pairs, values)
     builder = ModelBuilder()
-    covariance = np.eye(len(means)) * statistics**2
+    covariance = np.eye(len(means)) * statistics**2 if noise is None else noise
     add_session_rows(builder, means, covariance, tide_system=TideSystem.ZERO_TIDE)
     return means, builder.build()
 
@@ -135,32 +139,15 @@ def test_repeated_sessions_close_with_each_other():
 
 def test_loops_made_of_the_same_data_are_told_by_rank():
     """Two ways round the same ratio: each has a variance, together they have one."""
-    pairs = [("A", "B"), ("B", "C"), ("A", "C")]
-    builder, means = ModelBuilder(), []
-    twice = [*pairs, ("C", "A")]
-    for k, (n, d) in enumerate(twice):
-        means.append(
-            SessionMean(
-                id=f"s{k}",
-                numerator=clock(n),
-                numerator_site=SITE,
-                denominator=clock(d),
-                denominator_site=SITE,
-                links=(),
-                start_ns=k * 10**12,
-                y=[7e-18, -3e-18, 5e-18, -5e-18][k],
-            )
-        )
+    pairs = [("A", "B"), ("B", "C"), ("A", "C"), ("C", "A")]
     # The last session is the third one, turned: the same noise with the other sign.
-    noise = np.diag([1.0, 1.0, 1.0, 1.0]) * 1e-36
+    noise = np.eye(4) * 1e-36
     noise[2, 3] = noise[3, 2] = -1e-36
-    add_session_rows(builder, means, noise, tide_system=TideSystem.ZERO_TIDE)
-    first, second = closures_of(means, builder.build())
-    assert not first.identity
-    assert second.identity
+    means, model = model_of(pairs, [7e-18, -3e-18, 5e-18, -5e-18], noise=noise)
+    assert [one.identity for one in closures_of(means, model)] == [False, True]
     # Seen the other way round, a loop that repeats another's sum is one as well.
     turned = [means[k] for k in (0, 1, 3, 2)]
-    assert [one.identity for one in closures_of(turned, builder.build())] == [False, True]
+    assert [one.identity for one in closures_of(turned, model)] == [False, True]
 
 
 def test_a_tree_of_sessions_has_no_loop():
