@@ -100,19 +100,27 @@ def longest_factor(statistic: Statistic, record: TimeLine) -> int:
 
 
 def total_points(
-    statistic: Statistic, record: TimeLine, factors: Sequence[int], interval: float
+    statistic: Statistic, stretches: Sequence[TimeLine], factors: Sequence[int]
 ) -> CurvePoints:
-    """Points of the total family, of a record without gaps, bias taken off."""
-    del interval
+    """Points of the total family, bias taken off, of stretches without gaps.
+
+    Each stretch that is long enough for an averaging time counts by the squares it adds.
+    """
     modified = statistic.kind == "modified-total"
     variance, edf, noise, count = [], [], [], []
     exponent = 0
     for m in track(factors, statistic.name):
-        raw, number = total_variance(record.y, m, order=statistic.order, modified=modified)
-        exponent = _exponent(record, m, exponent)
-        bias = total_bias(exponent, m, record.size, order=statistic.order, modified=modified)
-        variance.append(raw / bias)
-        edf.append(freedom_of(statistic, exponent, m, record.size))
+        long = [one for one in stretches if longest_factor(statistic, one) >= m]
+        exponent = _exponent(long[0], m, exponent)
+        squares, freedom, number = 0.0, 0.0, 0
+        for one in long:
+            raw, here = total_variance(one.y, m, order=statistic.order, modified=modified)
+            bias = total_bias(exponent, m, one.size, order=statistic.order, modified=modified)
+            squares += raw / bias * here
+            freedom += freedom_of(statistic, exponent, m, one.size)
+            number += here
+        variance.append(squares / number)
+        edf.append(freedom)
         noise.append(LAW_OF_ALPHA[exponent])
         count.append(number)
     return CurvePoints(

@@ -28,6 +28,12 @@ from clockgeo.frequency.stability_statistics import find_statistic
 __all__ = ["StabilityCurve", "stability_curve"]
 
 
+_MOST_STRETCHES = 300
+"""Complete stretches that count in total statistics; the longest tell nearly all."""
+_SHORTEST = 4
+"""Samples of the shortest stretch that counts."""
+
+
 @dataclass(frozen=True, eq=False)
 class StabilityCurve:
     """A deviation against averaging time; arrays of one length K.
@@ -96,20 +102,24 @@ def stability_curve(
 
     Notes
     -----
-    Estimators as in IEEE Std 1139 and NIST SP 1065. The total family needs a record without gaps
-    and takes its longest complete stretch, which a note says.
+    Estimators as in IEEE Std 1139 and NIST SP 1065. The total family needs a record without gaps:
+    of one with gaps it takes every complete stretch that is long enough, which a note says.
     """
     found = find_statistic(statistic)
     _refuse_unfit(series, interval)
     notes: tuple[str, ...] = ()
-    if found.total:
-        series, notes = _longest_stretch(series)
     if found.order == 3:  # blind to a drift, which would pass for noise in its identification
         series = _without_drift(series)
-    record = TimeLine.of(series)
-    factors = averaging_factors(tau, interval=interval, largest=longest_factor(found, record))
-    estimator = total_points if found.total else window_points
-    points = estimator(found, record, factors, interval)
+    if found.total:
+        stretches, notes = _complete_stretches(series)
+        longest = longest_factor(found, stretches[0])
+        factors = averaging_factors(tau, interval=interval, largest=longest)
+        points = total_points(found, stretches, factors)
+    else:
+        record = TimeLine.of(series)
+        longest = longest_factor(found, record)
+        factors = averaging_factors(tau, interval=interval, largest=longest)
+        points = window_points(found, record, factors, interval)
     left = [m for m in factors if m not in points.factors]
     if left:
         told = ", ".join(f"{m * interval:g}" for m in left)
@@ -171,23 +181,29 @@ def _refuse_unfit(series: TickSeries, interval: float) -> None:
         )
 
 
-def _longest_stretch(series: TickSeries) -> tuple[TickSeries, tuple[str, ...]]:
+def _complete_stretches(series: TickSeries) -> tuple[list[TimeLine], tuple[str, ...]]:
+    """Stretches without a gap, the longest first; those too short for any statistic left out."""
     edges = np.flatnonzero(np.diff(series.tick) > 1) + 1
     if not edges.size:
-        return series, ()
+        return [TimeLine.of(series)], ()
     starts = np.concatenate(([0], edges))
     stops = np.concatenate((edges, [series.tick.size]))
-    longest = int(np.argmax(stops - starts))
-    part = slice(starts[longest], stops[longest])
-    note = (
-        f"total statistics need a record without gaps; the longest complete stretch of "
-        f"{stops[longest] - starts[longest]} of {series.tick.size} samples was used"
-    )
-    stretch = TickSeries(series.tick[part], series.y[part])
-    if stretch.y.size < 3 or np.ptp(stretch.y) == 0.0:
+    order = np.argsort(starts - stops, kind="stable")[:_MOST_STRETCHES]
+    parts = [slice(starts[k], stops[k]) for k in order if stops[k] - starts[k] >= _SHORTEST]
+    kept = [
+        TimeLine.of(TickSeries(series.tick[part], series.y[part]))
+        for part in parts
+        if np.ptp(series.y[part]) > 0.0
+    ]
+    if not kept:
         raise DataError(
             "no complete stretch is long enough for a total statistic",
-            value=f"{stretch.y.size} samples",
+            value=f"{int(np.max(stops - starts))} samples",
             advice="Use overlapping-allan or overlapping-hadamard, which respect gaps",
         )
-    return stretch, (note,)
+    used = sum(one.size for one in kept)
+    note = (
+        f"total statistics need a record without gaps; {len(kept)} complete stretches with "
+        f"{used} of {series.tick.size} samples were used, the longest of {kept[0].size}"
+    )
+    return kept, (note,)

@@ -32,7 +32,7 @@ def record(seed, *, gaps):
 
 def deviation(tick, y, statistic):
     series = TickSeries(np.asarray(tick, dtype=np.int64), np.asarray(y))
-    # The total family takes the longest complete stretch, here a dozen samples or more.
+    # The total family takes complete stretches, here of a dozen samples or more.
     tau = [1.0, 2.0] if STATISTICS[statistic].total else [1.0, 4.0, 16.0]
     return stability_curve(series, statistic, interval=1.0, tau=tau).deviation
 
