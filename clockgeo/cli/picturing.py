@@ -76,6 +76,7 @@ def draw_stability(
             result.curves,
             model=None if in_seconds else result.model,
             model_name="noise model, Allan deviation",
+            model_from=result.laws.from_seconds if result.laws else 0.0,
             title=result.record.name,
         )
         save_picture(figure, path, replace=replace)

@@ -37,3 +37,12 @@ def test_variances_of_independent_parts_add(a, b, c, d, e, tau):
 def test_negative_levels_are_refused(law):
     with pytest.raises(ValidationError, match="greater than or equal to 0"):
         NoiseModel(**{law: -1e-15})
+
+
+def test_flicker_phase_falls_by_its_structure_function():
+    """σ²(m) = (4 S(m) - S(2m))/(2 m²) with S(n) as Σ 1/(2j - 1), j = 1 to n, summed here."""
+    model = NoiseModel(flicker_pm=1.0)
+    for m in (1, 4, 32, 1_000):
+        change = np.cumsum(1.0 / (2.0 * np.arange(1, 2 * m + 1) - 1.0))
+        exact = (4.0 * change[m - 1] - change[2 * m - 1]) / (8.0 / 3.0) / m**2
+        assert model.allan_variance(m) == pytest.approx(exact, rel=0.03)

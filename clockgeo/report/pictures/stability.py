@@ -48,6 +48,7 @@ def stability_picture(
     model: NoiseModel | None = None,
     names: Sequence[str] = (),
     model_name: str = "noise model",
+    model_from: float = 0.0,
     title: str = "",
 ) -> Figure:
     """Draw deviations with their intervals on logarithmic axes.
@@ -62,6 +63,8 @@ def stability_picture(
         What to call the curves; their statistic if not given.
     model_name : str
         What to call the model.
+    model_from : float
+        Averaging time in s from which on it holds, and is drawn.
     title : str
     """
     figure, axes = blank(7.0, 3.9)
@@ -70,7 +73,8 @@ def stability_picture(
         _draw_curve(axes, curve, place, name)
     if model is not None:
         reach = np.concatenate([np.asarray(curve.tau, dtype=np.float64) for curve in curves])
-        _draw_model(axes, model, float(reach.min()), float(reach.max()), model_name)
+        shortest = min(max(float(reach.min()), model_from), float(reach.max()))
+        _draw_model(axes, model, shortest, float(reach.max()), model_name)
     logarithmic(axes, "x")
     logarithmic(axes, "y")
     axes.grid(visible=True, which="major", axis="both")
