@@ -9,6 +9,7 @@ byte by byte.
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterable
 from dataclasses import dataclass
 from pathlib import Path
@@ -23,6 +24,7 @@ from clockgeo.times import SECOND_NS
 __all__ = ["ExchangeFolder", "read_exchange", "read_output", "read_outputs", "rows_state_u"]
 
 HEADERS = "*.yml"
+_SEPARATORS = re.compile(r"[\s,;]+")
 MJD_COLUMN, OUTPUT_COLUMN, FLAG_COLUMN, U_COLUMN = 1, 2, 3, 4
 VALID_FLAG, EXPERIMENTAL_FLAG = 2, 1
 
@@ -182,5 +184,5 @@ def rows_state_u(folder: ExchangeFolder, name: str) -> bool:
         with file.open(encoding="utf-8", errors="replace") as lines:
             for line in lines:
                 if line.strip() and not line.lstrip().startswith("#"):
-                    return len(line.split()) >= U_COLUMN
+                    return len(_SEPARATORS.split(line.strip())) >= U_COLUMN
     return False
