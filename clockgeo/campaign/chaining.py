@@ -3,9 +3,11 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import replace
+from dataclasses import dataclass, replace
 from fractions import Fraction
 from pathlib import Path
+
+import numpy as np
 
 from clockgeo.campaign.schema import ChainSource, Session
 from clockgeo.errors import DataError
@@ -16,11 +18,13 @@ from clockgeo.frequency.combination import Combined, Loop, combine, loops_of
 from clockgeo.frequency.comparator import Comparator
 from clockgeo.frequency.exchange import ExchangeFolder, read_exchange, read_outputs, rows_state_u
 from clockgeo.frequency.record import Record, Source
+from clockgeo.levelling.closures import signed_names
 
 __all__ = ["read_chain"]
 
 _LIMIT = 3.0
 """A loop of comparators closes within so many standard uncertainties."""
+_ROUNDING = 1e-21
 
 
 def read_chain(
@@ -60,13 +64,13 @@ def read_chain(
     chains = find_chains(
         folder.comparators, denominator=source.denominator, numerator=source.numerator
     )
-    names = dict.fromkeys(link.comparator.name for chain in chains for link in chain.links)
     outputs = read_outputs(
-        folder, names, experimental=source.experimental, skip_bad_rows=skip_bad_rows
+        folder, _names(chains), experimental=source.experimental, skip_bad_rows=skip_bad_rows
     )
     _refuse_unknown_noise(source, outputs)
+    outputs, chains = _within(outputs, chains, session)
     combined = combine(chains, outputs, name=session.id, noise=source.noise)
-    record = _within(combined.record, session)
+    record, loops = combined.record, [_closed(loop) for loop in loops_of(chains, outputs)]
     step = float(chains[0].nominal_ratio / nominal_ratio - 1)
     headers = tuple(
         Source(f"{source.folder}/{name}", sha256_of(folder.path / name))
@@ -79,11 +83,22 @@ def read_chain(
         sources=(*headers, *data),
         notes=(
             *_path_notes(chains, combined),
-            *(_loop_note(loop) for loop in loops_of(chains, outputs)),
-            *(note for name in names for note in _ledger(folder, folder.comparators[name])),
+            *(loop.words for loop in loops),
+            *(note for name in outputs for note in _ledger(folder, folder.comparators[name])),
             *record.notes,
         ),
+        doubts=tuple(
+            f"paths of comparators contradict each other: {loop.words}; the ratio is an average of "
+            "both, find out which is right and leave the other out"
+            for loop in loops
+            if not loop.closes
+        ),
     )
+
+
+def _names(chains: Sequence[Chain]) -> list[str]:
+    """Comparators of any chain, each once."""
+    return list(dict.fromkeys(link.comparator.name for c in chains for link in c.links))
 
 
 def _refuse_unknown_noise(source: ChainSource, outputs: Mapping[str, Record]) -> None:
@@ -97,21 +112,34 @@ def _refuse_unknown_noise(source: ChainSource, outputs: Mapping[str, Record]) ->
         )
 
 
-def _within(record: Record, session: Session) -> Record:
-    """Part of a record between the session's stated times."""
-    from clockgeo.times import tai_from_iso
-
-    keep = record.usable.copy()
-    if session.start is not None:
-        keep &= record.tai_ns >= tai_from_iso(session.start.isoformat())
-    if session.planned_stop is not None:
-        keep &= record.tai_ns < tai_from_iso(session.planned_stop.isoformat())
-    if not keep.any():
+def _within(
+    outputs: Mapping[str, Record], chains: Sequence[Chain], session: Session
+) -> tuple[dict[str, Record], list[Chain]]:
+    """Outputs between the session's stated times, and the chains that have any then."""
+    parts = {name: _part(record, session) for name, record in outputs.items()}
+    left = {name: part for name, part in parts.items() if part is not None}
+    whole = [chain for chain in chains if all(link.comparator.name in left for link in chain.links)]
+    if not whole:
         raise DataError(
             "the chain has no valid epoch within the session's times",
             where=f"session {session.id}",
             advice="Compare its start and stop with the data files",
         )
+    return {name: left[name] for name in _names(whole)}, whole
+
+
+def _part(record: Record, session: Session) -> Record | None:
+    from clockgeo.times import tai_from_iso
+
+    keep = np.ones(len(record), dtype=bool)
+    if session.start is not None:
+        keep &= record.tai_ns >= tai_from_iso(session.start.isoformat())
+    if session.planned_stop is not None:
+        keep &= record.tai_ns < tai_from_iso(session.planned_stop.isoformat())
+    if keep.all():
+        return record
+    if not np.any(keep & record.usable):
+        return None
     return replace(
         record,
         tai_ns=record.tai_ns[keep],
@@ -134,20 +162,28 @@ def _path_notes(chains: Sequence[Chain], combined: Combined) -> list[str]:
     return notes
 
 
-def _loop_note(loop: Loop) -> str:
-    """Say how a loop of comparators closes, with the statistical u of its mean."""
-    words = " ".join(
-        f"{'+' if sign > 0 else '-'}{name}"
-        for name, sign in zip(loop.names, loop.signs, strict=True)
-    )
+@dataclass(frozen=True)
+class _ClosedLoop:
+    """What is said of a loop of comparators."""
+
+    words: str
+    closes: bool
+
+
+def _closed(loop: Loop) -> _ClosedLoop:
+    """How a loop of comparators closes, with the statistical u of its mean."""
+    words = f"loop {signed_names(loop.names, loop.signs)}"
     mean, count = float(loop.series.y.mean()), loop.series.y.size
     try:
         noise = fit_noise([loop.series], interval=loop.interval).averaged
     except DataError:
-        return f"loop {words}: misclosure {mean:.2e} over {count} epochs, too few for u"
+        text = f"{words}: misclosure {mean:.2e} over {count} epochs, too few for u"
+        return _ClosedLoop(text, closes=True)
     u = float(mean_covariance(noise, [loop.series], interval=loop.interval)[0, 0]) ** 0.5
-    verdict = "closes" if abs(mean) <= _LIMIT * u else "does not close"
-    return f"loop {words}: misclosure {mean:.2e}, u {u:.2e}, {verdict}"
+    # Outputs that repeat each other leave rounding, which is no misclosure.
+    closes = abs(mean) <= _LIMIT * max(u, _ROUNDING)
+    verdict = "closes" if closes else "does not close"
+    return _ClosedLoop(f"{words}: misclosure {mean:.2e}, u {u:.2e}, {verdict}", closes)
 
 
 def _ledger(folder: ExchangeFolder, one: Comparator) -> Iterator[str]:

@@ -40,6 +40,8 @@ class CheckReport:
     sessions : list of SessionState
     notes : list of str
         What is legal but worth a look.
+    doubts : list of str
+        What must be looked at before anything is made of the records.
     problems : list of str
         What must be mended, each with its place and what to do.
     """
@@ -47,6 +49,7 @@ class CheckReport:
     name: str
     sessions: list[SessionState] = field(default_factory=list)
     notes: list[str] = field(default_factory=list)
+    doubts: list[str] = field(default_factory=list)
     problems: list[str] = field(default_factory=list)
 
 
@@ -115,4 +118,6 @@ def _check_session(
     report.sessions.append(
         SessionState(session.id, n, d, "measured", valid, valid / one.record.span)
     )
-    report.notes.extend(f"[[session]] {session.id!r}: {note}" for note in one.record.notes)
+    place = f"[[session]] {session.id!r}"
+    report.notes.extend(f"{place}: {note}" for note in one.record.notes)
+    report.doubts.extend(f"{place}: {doubt}" for doubt in one.record.doubts)

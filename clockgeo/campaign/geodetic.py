@@ -124,13 +124,19 @@ def geodetic_numbers(
         sites=tuple(site.id for site in placed),
         values=values,
         covariance=np.outer(slopes, slopes) * (errors + own),
-        source=f"ellipsoidal heights and {source.grid}{_fit(model)}",
+        source=f"ellipsoidal heights and {source.grid}{_fit(model)}{_converted(model, campaign)}",
     )
 
 
 def _fit(model: GeoidModel) -> str:
     """Say it where a model owes its values to levelling: it then speaks for that datum."""
     return f", fitted to {model.fitted_to}" if model.hybrid and model.fitted_to else ""
+
+
+def _converted(model: GeoidModel, campaign: Campaign) -> str:
+    """Say it where the model's own conventions are not the campaign's."""
+    own, wanted = model.tide_system, campaign.head.tide_system
+    return "" if own == wanted else f", converted from {own.value} to {wanted.value}"
 
 
 def _number(

@@ -49,7 +49,7 @@ from clockgeo.levelling.solution import Solution, solve
 from clockgeo.times import iso_utc
 from clockgeo.version import __version__
 
-__all__ = ["Levelled", "level", "level_measured", "session_results"]
+__all__ = ["Levelled", "doubts_of", "level", "level_measured", "session_results"]
 
 _SIGN = (
     "y = (f_n/f_d)/(f_n/f_d)_nominal - 1; positive y: the numerator clock is higher. "
@@ -116,6 +116,16 @@ def level(
     return level_measured(
         campaign, measured, folder=document.folder, notes=notes, path=document.path
     )
+
+
+def doubts_of(measured: Sequence[Measured]) -> list[str]:
+    """What must be looked at before anything is made of the sessions."""
+    return [f"session {one.session.id}: {doubt}" for one in measured for doubt in one.record.doubts]
+
+
+def _left_out(campaign: Campaign, solved: Collection[str]) -> list[str]:
+    absent = [site.id for site in campaign.sites if site.id not in solved]
+    return [f"no session reaches {', '.join(absent)}: no number is given there"] if absent else []
 
 
 def _refuse_unknown(names: Collection[str], campaign: Campaign) -> None:
@@ -196,7 +206,7 @@ def level_measured(
         correlations=tuple(correlation_results(means, solution, solved, pairs)),
         closures=tuple(closure_results(means, unscattered)),
         comparison=tuple(compare(campaign, solution, pairs, geodetic)),
-        notes=(*notes, *statistics.notes),
+        notes=(*doubts_of(measured), *notes, *_left_out(campaign, solved), *statistics.notes),
         provenance=Provenance(
             version=__version__, inputs=tuple(sorted(inputs, key=lambda one: one.path))
         ),

@@ -80,9 +80,13 @@ def command(
         )
         for note in report.notes:
             say(f"note: {note}")
+        for doubt in report.doubts:
+            say(f"doubt: {doubt}")
         for problem in report.problems:
             say(f"problem: {problem}")
-        say("The document and its records are in order." if not report.problems else "")
+        if not report.problems:
+            doubts = ", but look at the doubts above first" if report.doubts else ""
+            say(f"The document and its records are in order{doubts}.")
     if report.problems:
         raise typer.Exit(1)
 

@@ -63,7 +63,8 @@ def command(
 def _tell(result: LevelResult, *, verbose: bool) -> None:
     """Print the answer, the sessions, the comparison and, if asked, the whole budget."""
     from clockgeo.cli.terminal import say, show_table
-    from clockgeo.report.numbers import in_units_of, signed_names, with_uncertainty
+    from clockgeo.levelling.closures import signed_names
+    from clockgeo.report.numbers import in_units_of, with_uncertainty
 
     conventions = result.conventions
     say(f"{result.name}")

@@ -107,11 +107,12 @@ def total_points(
     Each stretch that is long enough for an averaging time counts by the squares it adds.
     """
     modified = statistic.kind == "modified-total"
-    variance, edf, noise, count = [], [], [], []
-    exponent = 0
+    variance, edf, count = [], [], []
+    exponents: list[int] = []
     for m in track(factors, statistic.name):
         long = [one for one in stretches if longest_factor(statistic, one) >= m]
-        exponent = _exponent(long[0], m, exponent)
+        exponent = _next_exponent(long[0], m, exponents)
+        exponents.append(exponent)
         squares, freedom, number = 0.0, 0.0, 0
         for one in long:
             raw, here = total_variance(one.y, m, order=statistic.order, modified=modified)
@@ -121,13 +122,12 @@ def total_points(
             number += here
         variance.append(squares / number)
         edf.append(freedom)
-        noise.append(LAW_OF_ALPHA[exponent])
         count.append(number)
     return CurvePoints(
         list(factors),
         np.array(variance),
         np.array(edf),
-        noise,
+        [LAW_OF_ALPHA[exponent] for exponent in exponents],
         np.array(count, dtype=np.int64),
         np.zeros(len(factors), dtype=bool),
     )
@@ -165,12 +165,20 @@ def _r(record: TimeLine, m: int) -> float | None:
 
 
 def exponents_of(record: TimeLine, factors: Sequence[int]) -> list[int]:
-    """Ruling exponents at all averaging times."""
-    exponents, exponent = [], 0
+    """Ruling exponents at all averaging times, which must increase.
+
+    Phase noise falls faster than any frequency noise: once that rules it is not followed by phase
+    noise, whatever few long averages look like.
+    """
+    exponents: list[int] = []
     for m in factors:
-        exponent = _exponent(record, m, exponent)
-        exponents.append(exponent)
+        exponents.append(_next_exponent(record, m, exponents))
     return exponents
+
+
+def _next_exponent(record: TimeLine, m: int, before: Sequence[int]) -> int:
+    exponent = _exponent(record, m, before[-1] if before else 0)
+    return 0 if exponent > 0 and any(one <= 0 for one in before) else exponent
 
 
 def window_points(

@@ -65,6 +65,12 @@ def read_exchange(path: str | Path) -> ExchangeFolder:
     """
     folder = Path(path)
     files = sorted(folder.glob(HEADERS))
+    if not folder.is_dir():
+        raise DataError(
+            "the folder of the exchange format does not exist",
+            value=folder,
+            advice="Its name is relative to the document; clockgeo simulate draws one from [truth]",
+        )
     if not files:
         raise DataError(
             "no header of the exchange format",

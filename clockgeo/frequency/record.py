@@ -48,6 +48,8 @@ class Record:
         The files it was read from.
     notes : tuple of str
         What reading found worth telling.
+    doubts : tuple of str
+        What must be looked at before anything is made of the record.
     weighting : "pi", "lambda" or None
         Weighting of the counter that averaged each row, where it is known.
     time_error : TickSeries or None
@@ -66,6 +68,7 @@ class Record:
     notes: tuple[str, ...] = ()
     weighting: Literal["pi", "lambda"] | None = None
     time_error: TickSeries | None = None
+    doubts: tuple[str, ...] = ()
 
     def __post_init__(self) -> None:
         columns = [self.tai_ns, self.y, self.usable, self.tick]

@@ -17,7 +17,7 @@ from numpy.typing import NDArray
 from clockgeo.levelling.linear_model import LinearModel
 from clockgeo.levelling.session_rows import SessionMean
 
-__all__ = ["Closure", "closures_of"]
+__all__ = ["Closure", "closures_of", "signed_names"]
 
 _NOTHING = 1e-9
 """Share of the variances of its sessions below which what a loop adds counts as none."""
@@ -51,6 +51,17 @@ class Closure:
     def normalised(self) -> float | None:
         """Misclosure over its u; None for an identity."""
         return None if self.identity else self.misclosure / self.u
+
+
+def signed_names(names: Sequence[str], signs: Sequence[int]) -> str:
+    """Write a signed sum of named things, such as a loop of sessions.
+
+    >>> signed_names(["there", "back"], [1, -1])
+    '+there −back'
+    """
+    return " ".join(
+        f"{'+' if sign > 0 else '−'}{name}" for name, sign in zip(names, signs, strict=True)
+    )
 
 
 def closures_of(means: Sequence[SessionMean], model: LinearModel) -> list[Closure]:

@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 from clockgeo.campaign.adjust_results import AdjustResult, ObservationResult
-from clockgeo.report.numbers import rounded, signed_names
+from clockgeo.levelling.closures import signed_names
+from clockgeo.report.numbers import rounded
 from clockgeo.report.sheets import Cell, Sheet, count, measured, plain, words
 
 __all__ = [

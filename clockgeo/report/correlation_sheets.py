@@ -5,7 +5,8 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 from clockgeo.campaign.results import CorrelationResult, LevelResult
-from clockgeo.report.numbers import rounded, signed_names, typeset
+from clockgeo.levelling.closures import signed_names
+from clockgeo.report.numbers import rounded, typeset
 from clockgeo.report.sheets import Cell, Sheet, measured, plain, words
 
 __all__ = ["closure_sheet", "correlation_sheets"]

@@ -11,7 +11,6 @@ zeros at its end.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from decimal import ROUND_HALF_EVEN, Context, Decimal
 from itertools import pairwise
 
@@ -25,7 +24,6 @@ __all__ = [
     "percentage",
     "raised",
     "rounded",
-    "signed_names",
     "typeset",
     "with_uncertainty",
 ]
@@ -128,17 +126,6 @@ def duration(seconds: float | None) -> str:
             whole, rest = divmod(parts, size // part)
             return f"{whole}\u00a0{large}" + (f" {rest}\u00a0{small}" if rest else "")
     return _joined(_plain_or_power(_decimal(seconds), 3, keep_zeros=False), "s")
-
-
-def signed_names(names: Sequence[str], signs: Sequence[int]) -> str:
-    """Write a signed sum of named things, such as a loop of sessions.
-
-    >>> signed_names(["there", "back"], [1, -1])
-    '+there −back'
-    """
-    return " ".join(
-        f"{'+' if sign > 0 else '−'}{name}" for name, sign in zip(names, signs, strict=True)
-    )
 
 
 def raised(exponent: int) -> str:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import shutil
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -11,6 +12,10 @@ from typer.testing import CliRunner
 
 from clockgeo.campaign import Campaign, level_measured, measure_record, read_document
 from clockgeo.cli import app
+from clockgeo.frequency.chain import find_chains
+from clockgeo.frequency.combination import combine
+from clockgeo.frequency.exchange import read_exchange, read_outputs
+from clockgeo.frequency.exchange_writing import output_text
 from clockgeo.planning import simulate_sessions
 
 TRUTH = {"westrun": 712.40, "middle": 3498.65, "eastrun": 410.77}
@@ -94,6 +99,71 @@ def test_the_example_comes_from_its_seed(example, tmp_path):
         np.testing.assert_allclose(drawn, np.loadtxt(shipped), rtol=1e-9)
 
 
+DIRECT = """- name: EASTRUN_SR-WESTRUN_SR
+  numrhoBA: '1'
+  denrhoBA: '1'
+  sB: '429228004229872.99'
+  nu0A: '429228004229872.99'
+  nu0B: '429228004229872.99'
+  interval: '60'
+  lag: 1
+"""
+
+
+@pytest.fixture
+def with_a_second_path(example, tmp_path):
+    """The example with a direct comparator of the outer clocks, off by a stated amount."""
+
+    def made(offset):
+        folder = shutil.copytree(example.parent, tmp_path / f"off by {offset}")
+        network = read_exchange(folder / "network")
+        chain = find_chains(network.comparators, denominator="WESTRUN_SR", numerator="EASTRUN_SR")[
+            0
+        ]
+        names = [link.comparator.name for link in chain.links]
+        record = combine([chain], read_outputs(network, names), name="direct").record
+        # The first session's day only; a third of it missing.
+        day = (record.tick - record.tick[0]) * 60 < 86_400
+        usable = record.usable & day & (np.arange(len(record)) % 3 > 0)
+        direct = replace(record, y=record.y + offset, usable=usable)
+        (folder / "network" / "direct.yml").write_text(DIRECT, encoding="utf-8")
+        one = read_exchange(folder / "network").comparators["EASTRUN_SR-WESTRUN_SR"]
+        (folder / "network" / one.name).mkdir()
+        path = folder / "network" / one.name / "day.dat"
+        path.write_text(output_text(one, direct), encoding="utf-8")
+        return folder / "campaign.toml"
+
+    return made
+
+
+def test_paths_that_agree_are_combined_and_counted_within_their_session(
+    with_a_second_path, tmp_path
+):
+    document = with_a_second_path(0.0)
+    result = run("level", document, "--out", tmp_path / "out", "--json")
+    assert result.exit_code == 0, result.stderr
+    told = json.loads(result.stdout)
+    notes = {session["id"]: " ".join(session["notes"]) for session in told["sessions"]}
+    assert "epochs have several paths" in notes["east and west"]
+    assert "closes" in notes["east and west"]
+    for other in ("middle and west", "east and middle"):
+        assert "several paths" not in notes[other]
+        assert "loop" not in notes[other]
+    assert told["notes"] == []
+
+
+def test_paths_that_contradict_each_other_are_a_doubt(with_a_second_path, tmp_path):
+    document = with_a_second_path(1e-16)
+    result = run("level", document, "--out", tmp_path / "out")
+    assert result.exit_code == 0, result.stderr
+    told = result.stdout.replace("\n", " ")
+    assert "session east and west: paths of comparators contradict each other" in told
+    assert "does not close" in told
+    checked = run("check", document)
+    assert checked.exit_code == 0
+    assert "in order, but look at the doubts above first" in checked.stdout.replace("\n", " ")
+
+
 def test_headers_that_are_missing_are_written_too(example, tmp_path):
     """The document alone: simulate makes the exchange folder, and level reads it back."""
     document = tmp_path / "campaign.toml"
@@ -114,7 +184,11 @@ def test_headers_that_are_missing_are_written_too(example, tmp_path):
 @pytest.mark.parametrize(
     ("old", "new", "message"),
     [
-        ('folder = "network"', 'folder = "nowhere"', "no header of the exchange format"),
+        (
+            'folder = "network"',
+            'folder = "nowhere"',
+            "the folder of the exchange format does not exist",
+        ),
         ('numerator = "EASTRUN_SR"', 'numerator = "EASTRUN_CA"', "no comparator has such an"),
         ("2027-09-06T00", "2027-08-06T00", "no valid epoch within the session's times"),
     ],

@@ -207,3 +207,20 @@ def test_a_disk_that_fills_up_leaves_no_half_file(saddle, tmp_path, kilobytes):
 def test_wrong_usage_has_its_own_exit_code(saddle):
     assert run(saddle).exit_code == 2
     assert run(saddle, "--out", "x", "--frobnicate").exit_code == 2
+
+
+def test_a_site_that_no_session_reaches_is_told(saddle, tmp_path):
+    words = [word for name in ("saddle 1", "saddle 2", "saddle 3") for word in ("--without", name)]
+    result = run(saddle, *words, "--out", tmp_path / "out")
+    assert result.exit_code == 0, result.stderr
+    assert "no session reaches kesselin" in result.stdout.replace("\n", " ")
+
+
+def test_a_geoid_in_another_tide_system_is_converted_and_told(saddle, tmp_path):
+    text = saddle.read_text(encoding="utf-8")
+    assert 'tide_system = "zero_tide"' in text
+    other = text.replace('tide_system = "zero_tide"', 'tide_system = "mean_tide"', 1)
+    saddle.write_text(other, encoding="utf-8")
+    told = json.loads(run(saddle, "--out", tmp_path / "out", "--json").stdout)
+    (line,) = told["comparison"]
+    assert line["source"].endswith("converted from zero_tide to mean_tide")

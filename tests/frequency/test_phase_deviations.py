@@ -50,3 +50,17 @@ def test_bad_time_errors_are_refused():
         phase_stability_curve(
             TickSeries(np.array([0, 1, 5, 6, 20]), np.arange(5.0) ** 2), interval=1.0, tau=[3.0]
         )
+
+
+def test_phase_noise_does_not_come_back_at_long_times():
+    """White PM and white FM with gaps: few long averages may look like anything."""
+    rng = np.random.default_rng(117)
+    count = 40_000
+    x = 3e-15 / np.sqrt(3.0) * rng.standard_normal(count) + np.cumsum(
+        1e-15 * rng.standard_normal(count)
+    )
+    kept = np.flatnonzero(np.repeat(rng.random(count // 400) < 0.87, 400))
+    curve = phase_stability_curve(TickSeries(kept, x[kept]), interval=1.0)
+    laws = list(curve.noise)
+    first = next(k for k, law in enumerate(laws) if law.endswith("_fm"))
+    assert not any(law.endswith("_pm") for law in laws[first:])
