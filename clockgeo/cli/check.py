@@ -4,11 +4,14 @@ from __future__ import annotations
 
 from enum import StrEnum
 from pathlib import Path
-from typing import Annotated, Any
+from typing import TYPE_CHECKING, Annotated, Any
 
 import typer
 
 from clockgeo.cli.options import Json, Quiet
+
+if TYPE_CHECKING:
+    from clockgeo.campaign.checking import CheckReport
 
 Campaign = Annotated[
     Path | None, typer.Argument(help="Campaign document (TOML).", show_default=False)
@@ -46,7 +49,7 @@ def command(
     Example: clockgeo check examples/saddle/campaign.toml
     """
     from clockgeo.campaign import campaign_schema, check_campaign
-    from clockgeo.cli.terminal import print_json, progress_shown, say, show_table
+    from clockgeo.cli.terminal import print_json, progress_shown, say
 
     if schema:
         print_json(campaign_schema())
@@ -62,22 +65,8 @@ def command(
     if json:
         print_json({"schema": "clockgeo/check/1", **vars(report)})
     elif not quiet:
-        show_table(
-            report.name,
-            ["session", "numerator", "denominator", "record", "valid / s", "uptime"],
-            [
-                (
-                    s.id,
-                    s.numerator,
-                    s.denominator,
-                    s.state,
-                    "" if s.valid_seconds is None else f"{s.valid_seconds:.0f}",
-                    "" if s.uptime is None else f"{100 * s.uptime:.0f} %",
-                )
-                for s in report.sessions
-            ],
-            left=4,
-        )
+        if report.sessions:
+            _show_sessions(report)
         for note in report.notes:
             say(f"note: {note}")
         for doubt in report.doubts:
@@ -89,6 +78,27 @@ def command(
             say(f"The document and its records are in order{doubts}.")
     if report.problems:
         raise typer.Exit(1)
+
+
+def _show_sessions(report: CheckReport) -> None:
+    from clockgeo.cli.terminal import show_table
+
+    show_table(
+        report.name,
+        ["session", "numerator", "denominator", "record", "valid / s", "uptime"],
+        [
+            (
+                s.id,
+                s.numerator,
+                s.denominator,
+                s.state,
+                "" if s.valid_seconds is None else f"{s.valid_seconds:.0f}",
+                "" if s.uptime is None else f"{100 * s.uptime:.0f} %",
+            )
+            for s in report.sessions
+        ],
+        left=4,
+    )
 
 
 def _schema_of(kind: ResultKind) -> dict[str, Any]:

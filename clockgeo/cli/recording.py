@@ -147,10 +147,14 @@ def layout_from_options(
         )
     except ValidationError as error:
         told = "; ".join(
-            f"{'.'.join(map(str, problem['loc']))} {problem['msg']}".strip()
+            f"{'.'.join(map(str, problem['loc']))} {_plainly(problem['msg'])}".strip()
             for problem in error.errors()
         )
         raise typer.BadParameter(told) from None
+
+
+def _plainly(message: str) -> str:
+    return message.removeprefix("Value error, ")
 
 
 def _exact(text: str | None, option: str) -> Fraction | None:

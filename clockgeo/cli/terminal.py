@@ -31,12 +31,14 @@ def show_table(
     title: str, columns: Sequence[str], rows: Iterable[Sequence[str]], *, left: int = 1
 ) -> None:
     """Print a table; the first `left` columns are words, the others numbers aligned right."""
-    table = Table(title=title, title_justify="left", title_style="bold", box=None, pad_edge=False)
+    table = Table(box=None, pad_edge=False)
     for position, name in enumerate(columns):
         table.add_column(name, justify="left" if position < left else "right", overflow="fold")
     for row in rows:
         table.add_row(*row)
     console = Console(highlight=False, markup=False, width=None if sys.stdout.isatty() else 110)
+    # A title of the table's own would break at the table's width.
+    console.print(title, style="bold", soft_wrap=True)
     console.print(table)
     console.print()
 
