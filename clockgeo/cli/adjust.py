@@ -76,7 +76,8 @@ def _tell(result: AdjustResult, *, verbose: bool) -> None:
         f"zero level: {conventions.zero_level}, tide system: {conventions.tide_system.value}; "
         f"it hangs on {result.zero_definition}\n"
     )
-    _tell_datums(result)
+    if result.datums:
+        _tell_datums(result)
     for gap in result.identifiability.gaps:
         say(f"not determined: {gap}")
     _tell_tests(result)

@@ -29,7 +29,7 @@ _ENOUGH_ROWS = 20_000
 """Rows that settle a median or a first guess."""
 _LARGEST_DRIFT = 0.1
 """Largest drift, in intervals over the record, for which an interval is given fewer digits; the
-jitter of one stamp comes on top."""
+jitter of the stamps at the ends of its stretches comes on top."""
 _LARGEST_WANDER = 0.01
 """Largest part of its length that a record may wander against the estimated interval."""
 _DECIMAL_DAYS_NS = (86_400_000, 864_000_000)
@@ -120,7 +120,18 @@ def _interval(tai_ns: NDArray[np.int64], whole: NDArray[np.int64], width: float)
     """Interval in s, with the fewest digits that length and jitter of the record allow."""
     mean, intervals = _mean_width(tai_ns, whole, width)
     jitter = _jitter(tai_ns, whole, mean)
-    return _plainest(mean, (_LARGEST_DRIFT * mean + jitter) / intervals) / SECOND_NS
+    long = np.flatnonzero(whole > _ANEW_AFTER)
+    # Each stretch between long gaps has two ends with the jitter of a stamp; two deviations of it.
+    doubt = 2.0 * jitter * float(np.sqrt(long.size + 1))
+    if long.size:
+        gaps = (tai_ns[long + 1] - tai_ns[long]) / mean
+        ticks = np.rint(gaps)
+        allowed = 6.0 * jitter / mean + 2.0 * gaps * doubt / (intervals * mean)
+        if np.all(np.abs(gaps - ticks) < np.minimum(allowed, _COARSE)):
+            # No gap leaves the grid: the whole length then tells of the interval.
+            intervals += int(np.sum(ticks))
+            mean, doubt = float(tai_ns[-1] - tai_ns[0]) / intervals, 2.0 * jitter
+    return _plainest(mean, (_LARGEST_DRIFT * mean + doubt) / intervals) / SECOND_NS
 
 
 def _first_guess(tai_ns: NDArray[np.int64]) -> float:

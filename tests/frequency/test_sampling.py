@@ -57,6 +57,18 @@ def test_missing_rows_and_jumps_keep_their_ticks(data, interval):
     np.testing.assert_array_equal(np.diff(sampling.tick), steps)
 
 
+def test_jitter_at_the_ends_of_many_stretches_does_not_cost_digits():
+    """Found by the test above: six stretches whose ends made 0.9999 s of 1 s."""
+    rng = np.random.default_rng(1126)
+    kept = np.flatnonzero(rng.random(4_000) >= 0.24466235455369303)
+    for jump in rng.integers(2, 1_000, 5):
+        kept[int(rng.integers(1, kept.size)) :] += jump
+    tai, steps = stamps(1.0, kept)
+    sampling = sample_ticks(tai)
+    assert sampling.interval == 1.0
+    np.testing.assert_array_equal(np.diff(sampling.tick), steps)
+
+
 def test_restarts_off_the_grid_neither_lose_nor_double_a_tick():
     kept = np.arange(6_000)
     shift = np.zeros(6_000, dtype=np.int64)
